@@ -1,0 +1,231 @@
+"""What ``observatory.toml`` says: the site, the telescope, the camera, the filters, the limits.
+
+Each field carries its unit, its range and a line of help; the reference page is made from them.
+Names are fixed by the file's contract: add keys freely, rename none.
+"""
+
+from __future__ import annotations
+
+import math
+from typing import Annotated, Any, Literal, Self
+from zoneinfo import ZoneInfo
+
+from pydantic import AfterValidator, BaseModel, ConfigDict, Field, field_validator, model_validator
+
+from engine.logbook.text import clean_name
+
+ARCSEC_PER_RADIAN = 206264.806247
+
+Name = Annotated[str, AfterValidator(clean_name)]
+
+
+def key(help_text: str, *, unit: str = "", **limits: Any) -> Any:
+    """Declare a key of a file: its help, its unit, and pydantic's own limits."""
+    return Field(description=help_text, json_schema_extra={"unit": unit}, **limits)
+
+
+class FileModel(BaseModel):
+    """A table in a logbook file: nothing is converted silently, nothing unknown is accepted."""
+
+    model_config = ConfigDict(
+        strict=True, frozen=True, extra="forbid", populate_by_name=True, allow_inf_nan=False
+    )
+
+
+class Site(FileModel):
+    """Where the telescope stands."""
+
+    name: Name = key("the site's name, as it goes into the log")
+    latitude_deg: float = key("geodetic latitude, north positive", unit="deg", ge=-90, le=90)
+    longitude_deg: float = key("longitude, east positive", unit="deg", ge=-180, le=360)
+    elevation_m: float = key("height above the sea", unit="m", ge=-450, le=9000)
+    timezone: str = key("IANA time zone; a night is named by the local date of its evening")
+    horizon: Annotated[tuple[tuple[float, float], ...], Field(strict=False)] = key(
+        "the skyline as [azimuth_deg, altitude_deg] pairs by rising azimuth; closes on itself",
+        unit="deg",
+        default=(),
+    )
+
+    @field_validator("timezone")
+    @classmethod
+    def _known_timezone(cls, value: str) -> str:
+        try:
+            ZoneInfo(value)
+        except (KeyError, ValueError, OSError):
+            raise ValueError("expected an IANA time zone such as 'Europe/Madrid'") from None
+        return value
+
+    @field_validator("horizon", mode="before")
+    @classmethod
+    def _pairs(cls, value: object) -> object:
+        if isinstance(value, list):
+            return tuple(tuple(pair) if isinstance(pair, list) else pair for pair in value)
+        return value
+
+    @field_validator("horizon")
+    @classmethod
+    def _ordered_horizon(
+        cls, value: tuple[tuple[float, float], ...]
+    ) -> tuple[tuple[float, float], ...]:
+        before = -1.0
+        for azimuth_deg, altitude_deg in value:
+            if not (math.isfinite(azimuth_deg) and 0 <= azimuth_deg < 360):
+                raise ValueError(f"azimuth {azimuth_deg:g}, expected 0 or more and less than 360")
+            if not (math.isfinite(altitude_deg) and 0 <= altitude_deg <= 90):
+                raise ValueError(f"altitude {altitude_deg:g}, expected 0 to 90")
+            if azimuth_deg <= before:
+                raise ValueError(
+                    f"azimuth {azimuth_deg:g} after {before:g}, expected azimuths that rise"
+                )
+            before = azimuth_deg
+        return value
+
+
+class Telescope(FileModel):
+    """The telescope: its optics, its mount and where it can't go."""
+
+    name: Name = key("the telescope's name, as it goes into the log")
+    aperture_m: float = key("diameter of the entrance pupil", unit="m", gt=0, le=50)
+    obstruction: float = key("central obstruction as a fraction of the diameter", ge=0, lt=0.95)
+    focal_length_m: float = key("effective focal length", unit="m", gt=0, le=500)
+    mount: Literal["german", "fork", "altazimuth"] = key("how it is mounted")
+    minimum_altitude_deg: float = key("lowest altitude to point at", unit="deg", ge=0, lt=90)
+    maximum_altitude_deg: float = key(
+        "highest altitude it can track", unit="deg", gt=0, le=90, default=90.0
+    )
+    hour_angle_limits_h: Annotated[tuple[float, float], Field(strict=False)] = key(
+        "least and greatest hour angle", unit="h", default=(-12.0, 12.0)
+    )
+    slew_deg_per_s: float = key("slewing speed of each axis", unit="deg/s", gt=0, le=90)
+    settle_s: float = key("time to settle after a slew", unit="s", ge=0, le=3600)
+    optics_fwhm_arcsec: float = key("blur of the optics, as a FWHM", unit="arcsec", ge=0, le=30)
+    tracking_fwhm_arcsec: float = key(
+        "blur of tracking and guiding, as a FWHM", unit="arcsec", ge=0, le=30
+    )
+
+    @field_validator("hour_angle_limits_h")
+    @classmethod
+    def _ordered_limits(cls, value: tuple[float, float]) -> tuple[float, float]:
+        low, high = value
+        if not (-12 <= low < high <= 12):
+            raise ValueError(f"{low:g} to {high:g}, expected a rising pair within -12 to 12")
+        return value
+
+    @model_validator(mode="after")
+    def _room_between_altitudes(self) -> Self:
+        if self.minimum_altitude_deg >= self.maximum_altitude_deg:
+            raise ValueError(
+                f"minimum_altitude_deg {self.minimum_altitude_deg:g} is not below "
+                f"maximum_altitude_deg {self.maximum_altitude_deg:g}, expected room between them"
+            )
+        return self
+
+    @property
+    def collecting_area_m2(self) -> float:
+        """Clear area of the pupil, π/4 D² (1 - obstruction²), in square metres."""
+        return math.pi / 4.0 * self.aperture_m**2 * (1.0 - self.obstruction**2)
+
+
+class Camera(FileModel):
+    """The detector."""
+
+    pixel_um: float = key("pixel size", unit="um", gt=0, le=100)
+    columns: int = key("columns of the detector", ge=1, le=200_000)
+    rows: int = key("rows of the detector", ge=1, le=200_000)
+    readout_s: float = key("time to read one exposure out", unit="s", ge=0, le=3600)
+    read_noise_e: float = key("read noise", unit="electron", ge=0, le=1000)
+    dark_e_per_s: float = key(
+        "dark current per pixel", unit="electron/s", ge=0, le=10_000, default=0.0
+    )
+    gain_e_per_adu: float = key("electrons per count", unit="electron/adu", gt=0, le=1000)
+    saturation_adu: int = key("count at which a pixel is no longer linear", unit="adu", gt=0)
+
+
+class Filter(FileModel):
+    """One filter in the wheel, and the sky and zero point that belong to it."""
+
+    name: Name = key("the name, as plans and the log use it")
+    wavelength_nm: float = key("effective wavelength", unit="nm", ge=300, le=1100)
+    width_nm: float = key("width at half transmission", unit="nm", gt=0, le=800)
+    extinction_mag: float = key("extinction per airmass", unit="mag", ge=0, le=5)
+    zero_point_mag: float = key(
+        "magnitude that gives 1 electron per second outside the atmosphere",
+        unit="mag",
+        ge=0,
+        le=40,
+    )
+    dark_sky_mag: float = key(
+        "moonless zenith sky per square arcsecond", unit="mag/arcsec2", ge=10, le=30
+    )
+    change_s: float = key("time to turn this filter in", unit="s", ge=0, le=3600, default=0.0)
+
+
+class Seeing(FileModel):
+    """The site's seeing, used until something is measured."""
+
+    typical_arcsec: float = key(
+        "usual seeing at the zenith and 500 nm, as a FWHM", unit="arcsec", ge=0.1, le=20
+    )
+    outer_scale_m: float | None = key(
+        "outer scale of the turbulence; leave out for a Kolmogorov atmosphere",
+        unit="m",
+        gt=0,
+        le=10_000,
+        default=None,
+    )
+
+
+class Caution(FileModel):
+    """When to warn. Advice on the screen only: the observatory's own rules decide."""
+
+    humidity_percent: float = key("warn above", unit="%", gt=0, le=100, default=85.0)
+    wind_m_per_s: float = key("warn above", unit="m/s", gt=0, le=100, default=12.0)
+    dew_margin_c: float = key(
+        "warn when air is this close to the dew point", unit="deg C", ge=0, le=30, default=2.5
+    )
+    sun_separation_deg: float = key(
+        "never advise pointing this close to the Sun while it is up",
+        unit="deg",
+        ge=0,
+        le=180,
+        default=30.0,
+    )
+
+
+class Observatory(FileModel):
+    """The whole of ``observatory.toml``."""
+
+    site: Site
+    telescope: Telescope
+    camera: Camera
+    filters: Annotated[tuple[Filter, ...], Field(strict=False, min_length=1)] = Field(
+        alias="filter", description="the filters in the wheel"
+    )
+    seeing: Seeing
+    caution: Caution = Caution()
+
+    @field_validator("filters")
+    @classmethod
+    def _one_of_each(cls, value: tuple[Filter, ...]) -> tuple[Filter, ...]:
+        seen: set[str] = set()
+        for each in value:
+            if each.name in seen:
+                raise ValueError(f"two filters are called {each.name!r}, expected each name once")
+            seen.add(each.name)
+        return value
+
+    @property
+    def pixel_arcsec(self) -> float:
+        """Angular size of one pixel on the sky, p / f, in arcsec."""
+        return self.camera.pixel_um * 1e-6 / self.telescope.focal_length_m * ARCSEC_PER_RADIAN
+
+    def filter_named(self, name: str) -> Filter:
+        """Return the filter of that name; KeyError when it is not in the wheel."""
+        return self.filters[self.filter_index(name)]
+
+    def filter_index(self, name: str) -> int:
+        """Return the place of a filter in the wheel; KeyError when it is not there."""
+        for index, each in enumerate(self.filters):
+            if each.name == name:
+                return index
+        raise KeyError(name)
