@@ -158,6 +158,13 @@ class Filter(FileModel):
         "moonless zenith sky per square arcsecond", unit="mag/arcsec2", ge=10, le=30
     )
     change_s: float = key("time to turn this filter in", unit="s", ge=0, le=3600, default=0.0)
+    maximum_sun_altitude_deg: float = key(
+        "the Sun must be at least this low; common practice, no source",
+        unit="deg",
+        ge=-18,
+        le=0,
+        default=-12.0,
+    )
 
 
 class Seeing(FileModel):
