@@ -37,7 +37,8 @@ def limit_bits(night: Night) -> Bits:
         "daylight": ~np.array([_any_filter_dark(night, each) for each in targets]).reshape(
             seen_deg.shape
         ),
-        "skyline": seen_deg < skyline_altitude_deg(observatory.site.horizon, night.where.azimuth_deg),
+        "skyline": seen_deg
+        < skyline_altitude_deg(observatory.site.horizon, night.where.azimuth_deg),
         "too_low": seen_deg < telescope.minimum_altitude_deg,
         "too_high": seen_deg > telescope.maximum_altitude_deg,
         "hour_angle": (hour_angle_h < least_h) | (hour_angle_h > greatest_h),
