@@ -107,6 +107,8 @@ class Image:
             high = np.where(outside, 1.6 * high, high)
             root = np.sqrt(high)
             f_high = np.where(outside, self.at(root * cosine, root * sine) - half, f_high)
+        # A sharp core in a wide halo (outer scale below 2 m) may still be bright there: end here.
+        f_high = np.minimum(f_high, -1e-9 * half)
         trial = high
         for _ in range(STEPS):
             last, trial = trial, low + (high - low) * f_low / (f_low - f_high)
@@ -192,6 +194,6 @@ def sizes_and_peaks(blur: Blur, dispersion_arcsec: Floats) -> tuple[Floats, Floa
     far = np.maximum(dispersion_arcsec / limit, 1.0)
     near = np.minimum(np.arange(dispersion_arcsec.size), max(computed.size - 2, 0))
     if computed.size > 1 and computed[-1] > limit:
-        growth = (sizes[-1] ** 2 - sizes[-2] ** 2) / 0.25
+        growth = max(sizes[-1] ** 2 - sizes[-2] ** 2, 0.0) / 0.25
         return np.sqrt(sizes[near] ** 2 + growth * (far - 1.0)), peaks[near] / far
     return sizes, peaks

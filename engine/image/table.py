@@ -135,12 +135,11 @@ def look_up(surface: Floats, row: Position, column: Position) -> Floats:
 
 
 def column_at(surface: Floats, airmass: float) -> Floats:
-    """Return one column of the surface, at a single airmass, that never falls with seeing."""
+    """Return one column (SEEING_ROWS,) of the surface, at a single airmass."""
     position = airmass_position(np.asarray(airmass))
     rows = Position(np.arange(SEEING_ROWS - 1), np.zeros(SEEING_ROWS - 1))
     last = Position(np.array([SEEING_ROWS - 2]), np.ones(1))
-    column = np.concatenate([look_up(surface, each, position) for each in (rows, last)])
-    return np.asarray(np.maximum.accumulate(column))
+    return np.concatenate([look_up(surface, each, position) for each in (rows, last)])
 
 
 def seeing_at_row(row: float) -> float:
