@@ -1,0 +1,89 @@
+"""The night on disk, and the state of the night as a fold over it.
+
+``NightLog.open`` locks and recovers a log, ``LogWorker`` appends to it off the clock's path,
+``read_log`` reads any log and changes none, ``fold`` turns events into a `NightState`.
+"""
+
+from engine.log.disk import Disk
+from engine.log.events import (
+    KINDS,
+    Amendment,
+    Calibration,
+    ClockStep,
+    Close,
+    Conditions,
+    Event,
+    Exposure,
+    ExposureStart,
+    Focus,
+    Foreign,
+    LostTime,
+    Note,
+    OrderProposed,
+    Override,
+    Pointing,
+    Recovery,
+    RunStart,
+    RunStop,
+)
+from engine.log.header import Header
+from engine.log.reader import LogReading, audit, night_logs, read_log
+from engine.log.state import (
+    Latest,
+    Lost,
+    Measured,
+    NightState,
+    OpenExposure,
+    Run,
+    RunStep,
+    fold,
+    last_undoable,
+)
+from engine.log.titles import title
+from engine.log.vocabulary import LOST_CAUSES, OUTCOMES, OVERRIDES, Word
+from engine.log.worker import LogWorker
+from engine.log.writer import NightLog
+
+__all__ = [
+    "KINDS",
+    "LOST_CAUSES",
+    "OUTCOMES",
+    "OVERRIDES",
+    "Amendment",
+    "Calibration",
+    "ClockStep",
+    "Close",
+    "Conditions",
+    "Disk",
+    "Event",
+    "Exposure",
+    "ExposureStart",
+    "Focus",
+    "Foreign",
+    "Header",
+    "Latest",
+    "LogReading",
+    "LogWorker",
+    "Lost",
+    "LostTime",
+    "Measured",
+    "NightLog",
+    "NightState",
+    "Note",
+    "OpenExposure",
+    "OrderProposed",
+    "Override",
+    "Pointing",
+    "Recovery",
+    "Run",
+    "RunStart",
+    "RunStep",
+    "RunStop",
+    "Word",
+    "audit",
+    "fold",
+    "last_undoable",
+    "night_logs",
+    "read_log",
+    "title",
+]

@@ -24,6 +24,7 @@ from engine.positions import (
     Body,
     Horizontal,
     Moon,
+    Places,
     airmass,
     almanac,
     apparent_altitude_deg,
@@ -55,6 +56,7 @@ class Night:
     almanac: Almanac
     air: Air
     mjd: Floats
+    places: Places
     where: Horizontal
     apparent_altitude_deg: Floats
     airmass: Floats
@@ -134,6 +136,7 @@ def tables(
         almanac=times,
         air=air,
         mjd=mjd,
+        places=places,
         where=where,
         apparent_altitude_deg=seen_deg,
         airmass=airmass(seen_deg),

@@ -1,0 +1,110 @@
+"""The full record of one exposure, written when it ends, so that it can be reduced next year."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from engine.image import ImageModel
+from engine.light import MoonLight, Reference, credit, sky_mag_arcsec2
+from engine.log import Exposure, OpenExposure
+from engine.night import Night
+from engine.positions import (
+    airmass,
+    apparent_altitude_deg,
+    effective_airmass,
+    horizontal,
+    moon,
+    separation_deg,
+    sun,
+)
+from engine.times import SECONDS_PER_DAY
+
+
+@dataclass(frozen=True, slots=True)
+class Ending:
+    """How an exposure ended: when (UTC MJD), with which outcome, and why, in words."""
+
+    end_mjd: float
+    outcome: str
+    why: str | None = None
+
+
+def exposure_record(
+    night: Night, model: ImageModel, began: OpenExposure, ending: Ending, seeing_arcsec: float
+) -> Exposure:
+    """Return the record of an exposure: where, how high, how soft, how bright a sky, what worth.
+
+    Everything is worked out afresh at its start, middle and end, not read from the minute grid.
+    ``seeing_arcsec`` is the seeing in force, zenith and 500 nm.
+    """
+    site = night.observatory.site
+    index = night.target_index(began.target)
+    place = night.observatory.filter_index(began.filter)
+    filter_ = night.observatory.filters[place]
+    middle_mjd = 0.5 * (began.start_mjd + ending.end_mjd)
+    mjd = np.array([began.start_mjd, middle_mjd, ending.end_mjd])
+
+    where = horizontal(night.places.only(index), mjd, site)
+    masses = airmass(apparent_altitude_deg(where.altitude_deg[0], night.air))
+    the_moon = moon(mjd, site)
+    from_moon_deg = float(
+        separation_deg(
+            night.places.ra_deg[index],
+            night.places.dec_deg[index],
+            the_moon.ra_deg[1],
+            the_moon.dec_deg[1],
+        )
+    )
+    sky = float(
+        sky_mag_arcsec2(
+            filter_,
+            altitude_deg=where.altitude_deg[0, 1],
+            sun_altitude_deg=sun(mjd, site).altitude_deg[1],
+            moon=MoonLight(
+                altitude_deg=the_moon.altitude_deg[1],
+                separation_deg=from_moon_deg,
+                phase_angle_deg=the_moon.phase_angle_deg[1],
+            ),
+        )
+    )
+    image = model.breakdown(place, seeing_arcsec, float(masses[1]))
+    exposed_s = (ending.end_mjd - began.start_mjd) * SECONDS_PER_DAY
+    reference = Reference.of(night.observatory, model, place)
+    worth = float(credit(image.size_arcsec, sky, float(masses[1]), filter_, reference))
+    return Exposure(
+        of=began.n,
+        run=began.run,
+        target=began.target,
+        programme=began.programme,
+        filter=began.filter,
+        seconds=began.seconds,
+        exposed_s=round(exposed_s, 3),
+        start_mjd=began.start_mjd,
+        mid_mjd=middle_mjd,
+        end_mjd=ending.end_mjd,
+        airmass_start=float(masses[0]),
+        airmass_mid=float(masses[1]),
+        airmass_end=float(masses[2]),
+        airmass_effective=float(effective_airmass(*masses)),
+        altitude_deg=float(where.altitude_deg[0, 1]),
+        azimuth_deg=float(where.azimuth_deg[0, 1]),
+        hour_angle_h=float(where.hour_angle_h[0, 1]),
+        moon_separation_deg=from_moon_deg,
+        moon_altitude_deg=float(the_moon.altitude_deg[1]),
+        moon_illumination=float(the_moon.illumination[1]),
+        image_size_arcsec=image.size_arcsec,
+        image_atmosphere_arcsec=image.terms.atmosphere,
+        image_diffraction_arcsec=image.terms.diffraction,
+        image_optics_arcsec=image.terms.optics,
+        image_tracking_arcsec=image.terms.tracking,
+        image_dispersion_arcsec=image.terms.dispersion,
+        image_sampling_arcsec=image.terms.sampling,
+        sky_mag_arcsec2=sky,
+        seeing_arcsec=seeing_arcsec,
+        frame=began.frame,
+        outcome=ending.outcome,
+        credit=worth * min(exposed_s / began.seconds, 1.0),
+        why=ending.why,
+    )

@@ -1,0 +1,74 @@
+"""The commands: one registry that the parser, the help and the tests read.
+
+A command's module is imported only when it is asked for, so that each starts as quickly as its own
+work allows. It has one function, ``run(arguments) -> int``, that returns the exit status.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+from typing import Any
+
+
+@dataclass(frozen=True, slots=True)
+class Option:
+    """One option of one command, as argparse takes it."""
+
+    flag: str
+    help: str
+    settings: dict[str, Any] = field(default_factory=dict)
+
+
+@dataclass(frozen=True, slots=True)
+class Command:
+    """One printing command."""
+
+    name: str
+    help: str
+    takes_moment: bool = False
+    takes_night: bool = False
+    takes_json: bool = True
+    options: tuple[Option, ...] = ()
+
+    @property
+    def module(self) -> str:
+        """The module that runs it."""
+        return f"tui.commands.{self.name}"
+
+
+COMMANDS: tuple[Command, ...] = (
+    Command(
+        "demo",
+        "play an invented night on a copy of the sample logbook",
+        takes_night=True,
+        takes_json=False,
+        options=(
+            Option("--pace", "seconds of the night in one second", {"type": float, "default": 60}),
+            Option("--drive", "decide yourself instead of watching", {"action": "store_true"}),
+            Option(
+                "--unwatched",
+                "play the whole night at once, without the console",
+                {"action": "store_true"},
+            ),
+            Option("--seed", "which invented weather", {"type": int, "default": 7}),
+        ),
+    ),
+    Command("check", "print every fault in the logbook, or what it holds"),
+    Command("almanac", "print the night's Sun, twilight and Moon times", takes_night=True),
+    Command(
+        "sky",
+        "print every target at one moment: where, how soft, may it be observed",
+        takes_moment=True,
+        options=(Option("--seeing", "zenith seeing, arcsec at 500 nm", {"type": float}),),
+    ),
+    Command(
+        "order",
+        "print the proposed order for the rest of the night",
+        takes_moment=True,
+        takes_night=True,
+        options=(
+            Option("--seeing", "zenith seeing, arcsec at 500 nm", {"type": float}),
+            Option("--bound", "compute a proven upper limit too", {"action": "store_true"}),
+        ),
+    ),
+)

@@ -1,0 +1,82 @@
+"""What the observer can do: one frozen table that feeds keys, footer, palette and help.
+
+An action's ``name`` is the stable id; the console runs ``action_<name>``. Nothing else in the
+console mentions a key, so that a key is changed in this one place.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+
+@dataclass(frozen=True, slots=True)
+class Action:
+    """One thing the observer can do: its id, its keys, a word for the footer, a sentence."""
+
+    name: str
+    keys: tuple[str, ...]
+    label: str
+    sentence: str
+    group: str
+    in_footer: bool = False
+
+
+GROUPS = ("the common round", "exposures", "conditions", "the night", "the screen")
+
+ACTIONS: tuple[Action, ...] = (
+    Action(
+        "go_on",
+        ("space",),
+        "go on",
+        "Do the next thing: accept the proposal, say 'on target', start the run.",
+        GROUPS[0],
+        in_footer=True,
+    ),
+    Action(
+        "choose",
+        ("enter",),
+        "choose",
+        "Take the target under the cursor instead of the proposed one.",
+        GROUPS[0],
+        in_footer=True,
+    ),
+    Action(
+        "measure",
+        ("f",),
+        "FWHM",
+        "Type the FWHM measured on the last frame; the zenith seeing follows from it.",
+        GROUPS[0],
+        in_footer=True,
+    ),
+    Action("stop", ("s",), "stop", "End the exposure and the run now.", GROUPS[1], in_footer=True),
+    Action("reject", ("x",), "reject", "Reject the last exposure; it comes back on the plan.", GROUPS[1], in_footer=True),
+    Action("repeat", ("r",), "repeat", "Take the last exposure once more.", GROUPS[1]),
+    Action("one_filter", ("o",), "one filter", "Start a run in one chosen filter of the plan.", GROUPS[1]),
+    Action("keep_cut_off", ("K",), "keep it", "Keep the exposure that was cut off: it was completed.", GROUPS[1]),
+    Action("lose_cut_off", ("L",), "it is lost", "Log the exposure that was cut off as lost.", GROUPS[1]),
+    Action("seeing", ("z",), "seeing", "Type the zenith seeing at 500 nm.", GROUPS[2]),
+    Action("conditions", ("c",), "conditions", "Type cloud, wind, humidity, temperature, dew point or pressure.", GROUPS[2], in_footer=True),
+    Action("lost", ("l",), "lost time", "Begin lost time with its cause, or end it.", GROUPS[3], in_footer=True),
+    Action("note", ("n",), "note", "Write a note into the log.", GROUPS[3], in_footer=True),
+    Action("undo", ("u",), "undo", "Withdraw the last entry; the log keeps both.", GROUPS[3], in_footer=True),
+    Action("next_panel", ("tab",), "panel", "Show the next panel: target, order, log.", GROUPS[4], in_footer=True),
+    Action("find", ("slash",), "find", "Show only targets whose name or programme holds a text.", GROUPS[4]),
+    Action("next_look", ("v",), "look", "Change the colours: night, red, day, mono.", GROUPS[4]),
+    Action("help", ("question_mark", "f1"), "help", "Show every key.", GROUPS[4], in_footer=True),
+    Action("leave", ("q",), "leave", "Leave the console; the log keeps the night.", GROUPS[4]),
+)
+
+_BY_NAME = {action.name: action for action in ACTIONS}
+
+# Textual's names of keys, as a person reads them on the keyboard.
+_CAPS = {"question_mark": "?", "slash": "/", "space": "space", "enter": "enter", "f1": "F1"}
+
+
+def action_named(name: str) -> Action:
+    """Return the action with a name; KeyError for an unknown one."""
+    return _BY_NAME[name]
+
+
+def cap(key: str) -> str:
+    """Return what is printed on a key."""
+    return _CAPS.get(key, key)
