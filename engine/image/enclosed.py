@@ -7,32 +7,12 @@ import math
 import numpy as np
 
 from engine.image.contour import LEAST_CONTRAST
+from engine.image.diffraction import bessel_j1
 from engine.image.transfer import Blur, Floats
 
 MOST_CYCLES = 500.0
 """Most cycles of the highest frequency across circle and image; finer detail is left out, which
 blurs the circle's edge by less than half a percent of its radius."""
-
-
-def bessel_j1(x: Floats) -> Floats:
-    """Return the Bessel function J₁ for x of 0 or more.
-
-    Polynomials of Abramowitz & Stegun 9.4.4 and 9.4.6, right to 1e-7 or better.
-    """
-    near = np.square(np.minimum(x, 3.0) / 3.0)
-    small = x * np.polynomial.polynomial.polyval(
-        near, [0.5, -0.56249985, 0.21093573, -0.03954289, 0.00443319, -0.00031761, 0.00001109]
-    )
-    safe = np.maximum(x, 3.0)
-    size = np.polynomial.polynomial.polyval(
-        3.0 / safe,
-        [0.79788456, 0.00000156, 0.01659667, 0.00017105, -0.00249511, 0.00113653, -0.00020033],
-    )
-    phase = safe + np.polynomial.polynomial.polyval(
-        3.0 / safe,
-        [-2.35619449, 0.12499612, 0.00005650, -0.00637879, 0.00074348, 0.00079824, -0.00029166],
-    )
-    return np.asarray(np.where(x < 3.0, small, size * np.cos(phase) / np.sqrt(safe)))
 
 
 def _panels(count: int) -> tuple[Floats, Floats]:

@@ -8,6 +8,7 @@ from dataclasses import astuple, dataclass, fields
 import numpy as np
 
 from engine.image.contour import elongation, size_arcsec, size_without
+from engine.image.diffraction import diffraction_fwhm_arcsec
 from engine.image.transfer import Blur, Floats
 
 LEAST_PIXELS = 2.0
@@ -78,13 +79,6 @@ def atmosphere_fwhm_arcsec(blur: Blur) -> float:
             atmosphere_arcsec=blur.atmosphere_arcsec,
             outer_scale_m=blur.outer_scale_m,
         )
-    )
-
-
-def diffraction_fwhm_arcsec(wavelength_nm: float, aperture_m: float, obstruction: float) -> float:
-    """Return the FWHM (arcsec) of an aperture's diffraction pattern; 1.029 λ/D unobstructed."""
-    return size_arcsec(
-        Blur(wavelength_nm=wavelength_nm, aperture_m=aperture_m, obstruction=obstruction)
     )
 
 

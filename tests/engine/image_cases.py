@@ -141,7 +141,7 @@ def galsim_size_arcsec(blur: Blur, expected_arcsec: float, pixel_angle_deg: floa
     ``expected_arcsec`` only sets the scale of the drawing.
     """
     scale = expected_arcsec / 30.0
-    extent = 2.0 * (blur.dispersion_arcsec + 1.2 * blur.pixel_arcsec + expected_arcsec)
+    extent = 1.2 * (blur.dispersion_arcsec + math.sqrt(2.0) * blur.pixel_arcsec + expected_arcsec)
     across = max(int(extent / scale) | 1, 65)
     drawn = galsim_profile(blur, pixel_angle_deg).drawImage(
         nx=across, ny=across, scale=scale, method="no_pixel", dtype=float
