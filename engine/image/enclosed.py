@@ -37,7 +37,7 @@ def enclosed_share(blur: Blur, radius_arcsec: float) -> float:
         return 1.0
     sides = blur.pixel_arcsec + blur.dispersion_arcsec
     top = min(blur.highest_frequency(LEAST_CONTRAST), MOST_CYCLES / (sides + radius_arcsec))
-    unit, weight = _panels(2 + math.ceil(0.12 * top * (sides + radius_arcsec)))
+    unit, weight = _panels(2 + math.ceil(0.3 * top * (sides + radius_arcsec)))
     # Cubed nodes crowd towards frequency zero, where turbulence has its f^(5/3) cusp.
     frequency = top * unit**3
     weight = weight * top * 3.0 * unit**2

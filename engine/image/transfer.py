@@ -101,9 +101,9 @@ def von_karman(
 
 
 def _lens_area(distance: Floats, radius1: float, radius2: float) -> Floats:
-    """Return the area common to two circles; any units, plane geometry."""
+    """Return the area common to two circles, lengths in pupil diameters; 0 for a mere point."""
     small = min(radius1, radius2)
-    if small == 0.0:
+    if small < 1e-6:
         return np.zeros_like(distance)
     d = np.clip(distance, abs(radius1 - radius2), radius1 + radius2)
     d = np.maximum(d, 1e-12 * small)

@@ -34,9 +34,7 @@ class Reference:
     def of(cls, observatory: Observatory, model: ImageModel, filter_index: int) -> Reference:
         """Return a filter's reference: the site's typical seeing, dark sky, airmass 1.2."""
         filter_ = observatory.filters[filter_index]
-        size = model.size_arcsec(
-            filter_index, observatory.seeing.typical_arcsec, REFERENCE_AIRMASS
-        )
+        size = model.size_arcsec(filter_index, observatory.seeing.typical_arcsec, REFERENCE_AIRMASS)
         return cls(float(size), filter_.dark_sky_mag, REFERENCE_AIRMASS)
 
 

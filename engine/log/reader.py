@@ -59,7 +59,9 @@ def read_log_bytes(path: Path, data: bytes) -> LogReading:
     tail = len(data) - sound_end if data[sound_end:].strip() else 0
     if tail:
         line = data[:sound_end].count(b"\n") + 1
-        findings.append(_fault(path, line, "", f"{tail} bytes at the end are torn: {_raw(data[sound_end:])}"))
+        findings.append(
+            _fault(path, line, "", f"{tail} bytes at the end are torn: {_raw(data[sound_end:])}")
+        )
     events, found = _events(path, kept)
     return LogReading(path, header, tuple(events), tuple(findings + found), sound_end, tail)
 
@@ -91,7 +93,9 @@ def _events(path: Path, blocks: list[Block]) -> tuple[list[Event], list[Fault]]:
             findings.append(_fault(path, block.line, key, what))
             continue
         if event.n < before:
-            findings.append(_fault(path, block.line, key, f"it stands behind entry {before}; moved"))
+            findings.append(
+                _fault(path, block.line, key, f"it stands behind entry {before}; moved")
+            )
         seen[event.n] = block.line
         before = max(before, event.n)
         events.append(event)

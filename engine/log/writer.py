@@ -43,9 +43,7 @@ class NightLog:
         self._end = os.fstat(fd).st_size
 
     @classmethod
-    def open(
-        cls, folder: Path, header: Header, now_mjd: float, disk: Disk | None = None
-    ) -> Self:
+    def open(cls, folder: Path, header: Header, now_mjd: float, disk: Disk | None = None) -> Self:
         """Open a night's log, making it if there is none.
 
         Takes the lock, sets a torn tail aside, and goes on behind the last sound entry. LogError

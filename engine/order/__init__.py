@@ -1,0 +1,20 @@
+"""The order: what to point at next and after that, what it is worth, and why.
+
+``build_problem`` makes the rest of a night ready, ``propose`` searches, `Rules` are what the
+observer has decided. The merit is in `engine.order.merit`, and nowhere else.
+"""
+
+from engine.order.order import LeftOut, Order, PlacedExposures, Rules, Visit
+from engine.order.problem import Problem, build_problem
+from engine.order.propose import propose
+
+__all__ = [
+    "LeftOut",
+    "Order",
+    "PlacedExposures",
+    "Problem",
+    "Rules",
+    "Visit",
+    "build_problem",
+    "propose",
+]

@@ -106,7 +106,11 @@ def _site_cirs_km(mjd: Floats, site: Site) -> Floats:
     turn = rotation_angle_rad(mjd) + longitude
     across = (curve + height_km) * cos_p
     return np.stack(
-        [across * np.cos(turn), across * np.sin(turn), np.full_like(turn, (flat * curve + height_km) * sin_p)],
+        [
+            across * np.cos(turn),
+            across * np.sin(turn),
+            np.full_like(turn, (flat * curve + height_km) * sin_p),
+        ],
         axis=-1,
     )
 

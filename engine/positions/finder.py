@@ -58,7 +58,9 @@ def spans_above(
     """Return the spans (begin, end) between two moments in which a quantity is positive."""
     found = crossings(quantity, begin_mjd, end_mjd, step_days)
     edges = [crossing.mjd for crossing in found]
-    starts_above = found[0].rising is False if found else bool(quantity(np.array([begin_mjd]))[0] > 0)
+    starts_above = (
+        found[0].rising is False if found else bool(quantity(np.array([begin_mjd]))[0] > 0)
+    )
     if starts_above:
         edges.insert(0, begin_mjd)
     if len(edges) % 2:

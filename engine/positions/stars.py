@@ -143,5 +143,7 @@ def separation_deg(
     ra_1_deg: ArrayLike, dec_1_deg: ArrayLike, ra_2_deg: ArrayLike, dec_2_deg: ArrayLike
 ) -> Floats:
     """Return the angle (deg) between directions; shapes broadcast. Good at any angle (ERFA seps)."""
-    angles = (np.deg2rad(np.asarray(a, dtype=float)) for a in (ra_1_deg, dec_1_deg, ra_2_deg, dec_2_deg))
+    angles = (
+        np.deg2rad(np.asarray(a, dtype=float)) for a in (ra_1_deg, dec_1_deg, ra_2_deg, dec_2_deg)
+    )
     return np.asarray(np.rad2deg(erfa.seps(*angles)))

@@ -6,7 +6,6 @@ from dataclasses import dataclass
 
 from engine.log import NightState
 from engine.logbook import Caution
-from engine.times import MINUTES_PER_DAY
 
 # How long a typed value is taken to hold before the observer is asked for a new one.
 # Common practice, no source.

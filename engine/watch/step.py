@@ -65,6 +65,4 @@ def next_in_run(state: NightState) -> RunStep | None:
 
 def run_for(plan: tuple[Progress, ...], only: str | None = None) -> tuple[Progress, ...]:
     """Return the lines of a plan that a run would take now, or those of one filter only."""
-    return tuple(
-        line for line in plan if line.remaining and (only is None or line.filter == only)
-    )
+    return tuple(line for line in plan if line.remaining and (only is None or line.filter == only))

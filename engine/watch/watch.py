@@ -8,27 +8,23 @@ count-down.
 
 from __future__ import annotations
 
-from collections.abc import Callable
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 
 from engine.clock import Clock
 from engine.errors import WarmroomError
 from engine.log import (
     Close,
     Event,
-    Exposure,
     ExposureStart,
     LogWorker,
     NightState,
-    OrderProposed,
     RunStop,
     fold,
 )
 from engine.night import Plans, TargetNow, targets_at
 from engine.times import SECONDS_PER_DAY
 from engine.watch.planning import Plan, Planner
-from engine.watch.record import Ending, exposure_record
-from engine.watch.rules import rules_from
+from engine.watch.record import Ending
 from engine.watch.step import Stage, next_in_run, stage
 
 

@@ -5,8 +5,8 @@ from __future__ import annotations
 import argparse
 
 from engine.errors import Fault, LogbookFaults
-from engine.logbook import describe, load_logbook
 from engine.log import audit
+from engine.logbook import describe, load_logbook
 from tui.commands.output import print_json
 
 
