@@ -11,7 +11,7 @@ from engine.image.diffraction import bessel_j1
 from engine.image.transfer import Blur, Floats
 
 MOST_CYCLES = 500.0
-"""Most cycles of the highest frequency across circle and image; finer detail is left out, which
+"""Most cycles of the highest frequency across circle and image; finer detail is smoothed, which
 blurs the circle's edge by less than half a percent of its radius."""
 
 
@@ -36,11 +36,13 @@ def enclosed_share(blur: Blur, radius_arcsec: float) -> float:
     if math.isinf(radius_arcsec):
         return 1.0
     sides = blur.pixel_arcsec + blur.dispersion_arcsec
-    top = min(blur.highest_frequency(LEAST_CONTRAST), MOST_CYCLES / (sides + radius_arcsec))
+    finest, top = blur.highest_frequency(LEAST_CONTRAST), MOST_CYCLES / (sides + radius_arcsec)
+    softening = math.log(LEAST_CONTRAST) if top < finest else 0.0
+    top = min(top, finest)
     unit, weight = _panels(2 + math.ceil(0.3 * top * (sides + radius_arcsec)))
     # Cubed nodes crowd towards frequency zero, where turbulence has its f^(5/3) cusp.
     frequency = top * unit**3
-    weight = weight * top * 3.0 * unit**2
+    weight = weight * top * 3.0 * unit**2 * np.exp(softening * unit**6)
     directions = 8 + math.ceil(2.0 * top * sides)
     angle = (np.arange(directions) + 0.5) * (0.5 * math.pi / directions)
     fx, fy = np.outer(frequency, np.cos(angle)), np.outer(frequency, np.sin(angle))

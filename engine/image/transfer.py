@@ -55,7 +55,7 @@ def kolmogorov(frequency: Floats, fwhm_arcsec: float) -> Floats:
 @cache
 def _von_karman_table() -> tuple[Floats, Floats]:
     """Tabulate ln of the saturation against ln x: see `von_karman_saturation`."""
-    log_x = np.linspace(math.log(1e-8), math.log(1e3), 801)
+    log_x = np.linspace(math.log(1e-10), math.log(1e3), 931)
     power = 5.0 / 6.0
     log_s = np.arange(-90.0, 4.5, 0.125)
     weight = np.exp(power * log_s - np.exp(log_s)) * 0.125

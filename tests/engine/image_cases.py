@@ -117,7 +117,7 @@ def random_case(rng: np.random.Generator) -> Case:
 
 def galsim_profile(blur: Blur, pixel_angle_deg: float = 0.0) -> Any:
     """Return GalSim's convolution of all blurs, the smear along x."""
-    wide = galsim.GSParams(maximum_fft_size=16384, folding_threshold=2e-3, maxk_threshold=1e-4)
+    wide = galsim.GSParams(maximum_fft_size=16384)
     if blur.outer_scale_m is None:
         parts = [galsim.Kolmogorov(fwhm=blur.atmosphere_arcsec)]
     else:
