@@ -65,7 +65,7 @@ class ImageModel:
 
     def prepare(self, airmass: ArrayLike, filters: Sequence[int] | None = None) -> Prepared:
         """Place airmasses (any shape, such as (N, T)) in the tables, to be read for any seeing."""
-        return Prepared([self._table(index) for index in self._wanted(filters)], airmass)
+        return Prepared([self.table(index) for index in self._wanted(filters)], airmass)
 
     def sizes_arcsec(
         self,
@@ -80,7 +80,7 @@ class ImageModel:
         seeing = np.asarray(seeing_arcsec, dtype=np.float64)
         row = seeing_position(seeing)
         column = airmass_position(np.asarray(airmass, dtype=np.float64))
-        surfaces = [self._table(index).size_arcsec for index in self._wanted(filters)]
+        surfaces = [self.table(index).size_arcsec for index in self._wanted(filters)]
         return np.asarray(
             np.stack([look_up(surface, row, column) for surface in surfaces]) * beyond(seeing)
         )
@@ -113,7 +113,7 @@ class ImageModel:
         """
         self._refuse_nonsense("measured image size", measured_fwhm_arcsec)
         self._refuse_nonsense("airmass", airmass)
-        sizes = column_at(self._table(filter_index).size_arcsec, airmass)
+        sizes = column_at(self.table(filter_index).size_arcsec, airmass)
         smallest = int(np.argmin(sizes))
         said = (
             f"an image of {measured_fwhm_arcsec:.2f} arcsec in "
@@ -143,7 +143,7 @@ class ImageModel:
         """
         seeing = np.asarray(seeing_arcsec, dtype=np.float64)
         density = look_up(
-            self._table(filter_index).peak_per_arcsec2,
+            self.table(filter_index).peak_per_arcsec2,
             seeing_position(seeing),
             airmass_position(np.asarray(airmass, dtype=np.float64)),
         )
@@ -184,6 +184,15 @@ class ImageModel:
             pixel_arcsec=self.observatory.pixel_arcsec,
         )
 
+    def table(self, filter_index: int) -> Table:
+        """Return the table of one filter, built on first use (about 40 ms)."""
+        table = self._tables.get(filter_index)
+        if table is None:
+            fixed = self.blur(filter_index, 1.0, 1.0)
+            table = build_table(fixed, lambda x: self._dispersion_arcsec(filter_index, x))
+            self._tables[filter_index] = table
+        return table
+
     def _wanted(self, filters: Sequence[int] | None) -> Sequence[int]:
         return range(len(self.observatory.filters)) if filters is None else filters
 
@@ -194,14 +203,6 @@ class ImageModel:
             self.air,
             corrected=self.dispersion_corrected,
         )
-
-    def _table(self, filter_index: int) -> Table:
-        table = self._tables.get(filter_index)
-        if table is None:
-            fixed = self.blur(filter_index, 1.0, 1.0)
-            table = build_table(fixed, lambda x: self._dispersion_arcsec(filter_index, x))
-            self._tables[filter_index] = table
-        return table
 
     @staticmethod
     def _refuse_nonsense(what: str, value: float) -> None:
