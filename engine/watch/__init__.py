@@ -1,0 +1,28 @@
+"""The watch: the live night, what the observer does in it, and what is advised.
+
+``open_watch`` opens a night for writing, `Watch` is it, `engine.watch.acts` holds what the observer
+can do, ``snapshot`` and ``order_of_night`` look without opening anything.
+"""
+
+from engine.watch.advice import CautionNow, cautions
+from engine.watch.opening import Opened, open_watch
+from engine.watch.plan import Plan
+from engine.watch.planning import Planner
+from engine.watch.snapshot import Snapshot, order_of_night, snapshot
+from engine.watch.stage import NextExposure, Stage
+from engine.watch.watch import Watch
+
+__all__ = [
+    "CautionNow",
+    "NextExposure",
+    "Opened",
+    "Plan",
+    "Planner",
+    "Snapshot",
+    "Stage",
+    "Watch",
+    "cautions",
+    "open_watch",
+    "order_of_night",
+    "snapshot",
+]

@@ -6,45 +6,35 @@ on a worker thread and adopts the result on its own.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import replace
 from datetime import date
 
 import numpy as np
+from numpy.typing import NDArray
 
 from engine.image import ImageModel
-from engine.log import NightState
+from engine.log import Exposure, NightState
 from engine.logbook import Logbook
 from engine.night import Night, Outlook, Outlooks, Plans, open_night, plans
-from engine.night.progress import Taken
-from engine.order import Order, Rules, build_problem, propose
+from engine.order import build_problem, propose
 from engine.positions import Air
 from engine.seeing import SeeingForecast, SeeingMeasurement, nowcast
 from engine.watch.news import news
-
-COLD_BUDGET_MS = 150.0
-WARM_BUDGET_MS = 40.0
-
-
-@dataclass(frozen=True, slots=True)
-class Plan:
-    """What is advised from one moment on, and what has changed since the advice before."""
-
-    made_mjd: float
-    because: str
-    forecast: SeeingForecast
-    outlook: Outlook
-    order: Order
-    news: tuple[str, ...] = ()
+from engine.watch.plan import Plan
+from engine.watch.rules import rules_from
 
 
 class Planner:
-    """The tables of one night and the image model over them; makes one plan after another."""
+    """The tables of one night and the image model over them; makes one plan after another.
+
+    Nothing in it changes once it is made, so a worker thread may use it freely.
+    """
 
     def __init__(
         self,
         logbook: Logbook,
         night: date,
-        done_before: tuple[Taken, ...] = (),
+        done_before: tuple[Exposure, ...] = (),
         air: Air | None = None,
     ) -> None:
         self.logbook = logbook
@@ -59,35 +49,33 @@ class Planner:
 
     def forecast(self, state: NightState, now_mjd: float) -> SeeingForecast:
         """Return the seeing now and its forecast, from everything measured this night."""
-        measured = [SeeingMeasurement(each.mjd, each.zenith_arcsec) for each in state.seeing]
-        return nowcast(measured, now_mjd, self.logbook.observatory.seeing.typical_arcsec)
+        return forecast_of(state, now_mjd, self.logbook.observatory.seeing.typical_arcsec)
 
-    def plan(
-        self, state: NightState, rules: Rules, now_mjd: float, because: str, before: Plan | None
-    ) -> Plan:
-        """Return a new plan for the rest of the night from a moment (UTC MJD)."""
+    def outlook(self, seeing_arcsec: NDArray[np.float64]) -> Outlook:
+        """Return the outlook for a zenith seeing (T,), minute by minute (arcsec)."""
+        return self._outlooks.given(seeing_arcsec)
+
+    def plan(self, state: NightState, now_mjd: float, because: str, before: Plan | None) -> Plan:
+        """Return a new plan for the rest of the night from a moment (UTC MJD) on."""
         forecast = self.forecast(state, now_mjd)
-        outlook = self._outlooks.given(self._seeing_ahead(forecast, now_mjd))
+        outlook = self.outlook(forecast.at(self.night.mjd)[0])
         remaining = self.plans(state)
         problem = build_problem(
             self.night,
             outlook,
             remaining,
-            rules,
+            rules_from(state, now_mjd),
             from_mjd=now_mjd,
             pointing=state.pointing.target if state.pointing else None,
         )
-        order = propose(
-            problem,
-            budget_ms=COLD_BUDGET_MS if before is None else WARM_BUDGET_MS,
-            in_force=before.order if before else None,
-        )
+        order = propose(problem, in_force=before.order if before else None)
         fresh = Plan(now_mjd, because, forecast, outlook, order)
         if before is None:
             return fresh
-        told = news(self.night, before, fresh, remaining)
-        return Plan(now_mjd, because, forecast, outlook, order, told)
+        return replace(fresh, news=news(self.night, before, fresh, remaining))
 
-    def _seeing_ahead(self, forecast: SeeingForecast, now_mjd: float) -> np.ndarray:
-        """Return the seeing (T,) to plan with: the forecast, and the present value before now."""
-        return forecast.at(np.maximum(self.night.mjd, now_mjd))[0]
+
+def forecast_of(state: NightState, now_mjd: float, typical_arcsec: float) -> SeeingForecast:
+    """Return the seeing at a moment (UTC MJD) from what a night's state holds by then."""
+    measured = [SeeingMeasurement(each.mjd, each.zenith_arcsec) for each in state.seeing]
+    return nowcast(measured, now_mjd, typical_arcsec)

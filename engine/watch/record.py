@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import TYPE_CHECKING
 
 import numpy as np
 
@@ -21,6 +22,9 @@ from engine.positions import (
 )
 from engine.times import SECONDS_PER_DAY
 
+if TYPE_CHECKING:
+    from engine.watch.planning import Planner
+
 
 @dataclass(frozen=True, slots=True)
 class Ending:
@@ -28,7 +32,7 @@ class Ending:
 
     end_mjd: float
     outcome: str
-    why: str | None = None
+    why: str = ""
 
 
 def exposure_record(
@@ -108,3 +112,16 @@ def exposure_record(
         credit=worth * min(exposed_s / began.seconds, 1.0),
         why=ending.why,
     )
+
+
+def credit_measured(planner: Planner, exposure: Exposure, measured_fwhm_arcsec: float) -> float:
+    """Return what an exposure is worth with the FWHM (arcsec) that was measured on it."""
+    observatory = planner.logbook.observatory
+    place = observatory.filter_index(exposure.filter)
+    reference = Reference.of(observatory, planner.model, place)
+    sky = exposure.sky_mag_arcsec2 or reference.sky_mag_arcsec2
+    airmass_mid = exposure.airmass_mid or reference.airmass
+    worth = credit(
+        measured_fwhm_arcsec, sky, airmass_mid, observatory.filters[place], reference
+    )
+    return float(worth) * min(exposure.exposed_s / exposure.seconds, 1.0)

@@ -1,42 +1,37 @@
-"""The live night: its log, its state, its clock, the plan in force, and what the observer does.
+"""The live night: its log, its state, its clock, and the plan in force.
 
-Every act becomes an event, every event goes to the log, and the state is the fold over the log:
-there is no other record. Acts return at once; writing is the log worker's, planning is the
-caller's (see `Watch.planning`), so neither a slow disk nor a long computation holds up a
-count-down.
+Everything that happens becomes an event, every event goes to the log, and the state is the fold
+over the log: there is no other record. Nothing here waits: writing is the log worker's, planning
+the caller's (see `Watch.planning`), so neither a slow disk nor a long computation holds up a
+count-down. What the observer does is in `engine.watch.acts`.
 """
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from collections.abc import Callable
 
 from engine.clock import Clock
-from engine.errors import WarmroomError
 from engine.log import (
     Close,
     Event,
     ExposureStart,
     LogWorker,
     NightState,
+    OrderProposed,
     RunStop,
     fold,
 )
 from engine.night import Plans, TargetNow, targets_at
-from engine.times import SECONDS_PER_DAY
-from engine.watch.planning import Plan, Planner
-from engine.watch.record import Ending
-from engine.watch.step import Stage, next_in_run, stage
+from engine.times import MINUTES_PER_DAY, SECONDS_PER_DAY
+from engine.watch.plan import Plan
+from engine.watch.planning import Planner
+from engine.watch.record import Ending, exposure_record
+from engine.watch.stage import NextExposure, Stage, next_in_run, stage_of
 
-
-class NotNow(WarmroomError):
-    """The act makes no sense at this stage of the night; says why."""
-
-
-@dataclass(frozen=True, slots=True)
-class Settled:
-    """The times (UTC MJD) that decide when the next exposure of a run begins."""
-
-    ready_mjd: float
+# How often a plan is made afresh though nothing happened: the sky turns.
+REPLAN_MIN = 10.0
+# How many visits of a new order are written to the log.
+ORDER_LOGGED = 8
 
 
 class Watch:
@@ -48,12 +43,13 @@ class Watch:
         self.planner = planner
         self.clock = clock
         self.plan: Plan | None = None
+        # Grows with every change of what may be shown, so that a view can tell when to look again.
         self.version = 0
         self._worker = worker
         self._state = fold(events)
         self._doubted_n = self._state.exposing.n if self._state.exposing else 0
-        self._resume_mjd = clock.now_mjd()
         self._wanted: str | None = "the night begins"
+        self._kept_plans: tuple[int, Plans] = (-1, {})
 
     # What is known
 
@@ -66,16 +62,23 @@ class Watch:
     def stage(self) -> Stage:
         """What the night is waiting for."""
         exposing = self._state.exposing
-        return stage(self._state, doubted=exposing is not None and exposing.n == self._doubted_n)
+        return stage_of(self._state, exposing is not None and exposing.n == self._doubted_n)
 
     @property
     def unwritten(self) -> int:
         """How many events are not yet on disk."""
         return self._worker.unwritten
 
+    @property
+    def trouble(self) -> str | None:
+        """What is wrong with the disk and what to do about it; None when all is well."""
+        return self._worker.trouble
+
     def plans(self) -> Plans:
         """Return every target's plan with what is done."""
-        return self.planner.plans(self._state)
+        if self._kept_plans[0] != self.version:
+            self._kept_plans = (self.version, self.planner.plans(self._state))
+        return self._kept_plans[1]
 
     def targets_now(self) -> tuple[TargetNow, ...]:
         """Return every target at this moment; empty until the first plan is there."""
@@ -84,7 +87,29 @@ class Watch:
         now_mjd = self.clock.now_mjd()
         return targets_at(self.planner.night, self.plan.outlook, now_mjd, self.plans())
 
-    # What is done
+    def next_exposure(self) -> tuple[NextExposure, float] | None:
+        """Return what comes next in the run under way and when (UTC MJD); None without a run.
+
+        The camera reads out, and the wheel turns if the filter changes.
+        """
+        step = next_in_run(self._state)
+        run = self._state.run
+        if step is None or run is None:
+            return None
+        camera = self.planner.logbook.observatory.camera
+        last = self._state.exposures[-1] if self._state.exposures else None
+        ready_mjd, wait_s = self._run_began_mjd(run.n), 0.0
+        if last is not None and last.run == run.n:
+            ready_mjd, wait_s = last.end_mjd, camera.readout_s
+        if last is None or last.filter != step.filter:
+            wait_s += self.planner.logbook.observatory.filter_named(step.filter).change_s
+        return step, ready_mjd + wait_s / SECONDS_PER_DAY
+
+    def _run_began_mjd(self, n: int) -> float:
+        began = self._state.event(n)
+        return began.t_mjd if began is not None else self.clock.now_mjd()
+
+    # What happens
 
     def submit(self, event: Event, because: str | None = None) -> Event:
         """Log an event and fold it in; ``because`` asks for a new plan and says why."""
@@ -96,56 +121,108 @@ class Watch:
         return stamped
 
     def vouch(self) -> None:
-        """Say that the exposure that was open when the console came back still counts."""
+        """Take the observer's word that the exposure open when the console came back still runs."""
         self._doubted_n = 0
         self.version += 1
 
-    def close(self) -> None:
-        """Log that the console was left, wait for the disk, and let the log go."""
+    def end_exposure(self, ending: Ending) -> Event:
+        """Log the record of the exposure under way, ended as said."""
+        began = self._state.exposing
+        if began is None:
+            raise ValueError("no exposure is under way")
+        self._doubted_n = 0
+        seeing = self.planner.forecast(self._state, ending.end_mjd).now_arcsec
+        record = exposure_record(self.planner.night, self.planner.model, began, ending, seeing)
+        return self.submit(record, because="an exposure ended")
+
+    def close(self) -> bool:
+        """Log that the console was left, wait for the disk; return whether all is on it."""
         self.submit(Close(why="left by the observer"))
-        self._worker.close()
+        return self._worker.close()
 
     # The clockwork
 
     def tick(self) -> None:
-        """Do everything that has come due: end exposures, begin the next of a run."""
+        """Do everything that has come due: end exposures, begin the next of a run, want a plan."""
         now_mjd = self.clock.now_mjd()
         while self._one_due(now_mjd):
             pass
+        plan = self.plan
+        if plan is not None and (now_mjd - plan.made_mjd) * MINUTES_PER_DAY > REPLAN_MIN:
+            self._wanted = self._wanted or "the sky turned"
 
     def _one_due(self, now_mjd: float) -> bool:
-        match self.stage:
-            case Stage.EXPOSING:
-                exposing = self._state.exposing
-                assert exposing is not None
-                end_mjd = exposing.start_mjd + exposing.seconds / SECONDS_PER_DAY
-                if now_mjd < end_mjd:
-                    return False
+        stage, exposing = self.stage, self._state.exposing
+        if stage is Stage.EXPOSING and exposing is not None:
+            end_mjd = exposing.start_mjd + exposing.seconds / SECONDS_PER_DAY
+            if now_mjd >= end_mjd:
                 self.end_exposure(Ending(end_mjd, "good"))
                 return True
-            case Stage.BETWEEN:
-                return self._continue_run(now_mjd)
-            case _:
-                return False
+        elif stage is Stage.BETWEEN:
+            return self._continue_run(now_mjd)
+        return False
 
     def _continue_run(self, now_mjd: float) -> bool:
-        run, step = self._state.run, next_in_run(self._state)
-        assert run is not None
-        if step is None:
+        run, due = self._state.run, self.next_exposure()
+        if run is None:
+            return False
+        if due is None:
             self.submit(RunStop(of=run.n, why="finished"), because="a run was finished")
             return True
-        start_mjd = self._next_start_mjd(step.filter)
+        step, start_mjd = due
         if now_mjd < start_mjd:
             return False
+        target = self.planner.night.targets[self.planner.night.target_index(run.target)]
         self.submit(
             ExposureStart(
                 run=run.n,
                 target=run.target,
-                programme=self.programme_of(run.target),
+                programme=target.programme,
                 filter=step.filter,
                 seconds=step.seconds,
                 start_mjd=start_mjd,
-                frame="",
             )
         )
         return True
+
+    # Planning
+
+    def planning(self) -> Callable[[], Plan] | None:
+        """Return the work that is wanted, to be done on any thread; None when none is.
+
+        The result is handed to `adopt`. Asking takes the wish away: what happens meanwhile asks
+        again.
+        """
+        because, self._wanted = self._wanted, None
+        if because is None:
+            return None
+        planner, state, before = self.planner, self._state, self.plan
+        now_mjd = self.clock.now_mjd()
+        return lambda: planner.plan(state, now_mjd, because, before)
+
+    def adopt(self, plan: Plan) -> None:
+        """Put a plan in force; a changed turn of targets goes into the log."""
+        before, self.plan = self.plan, plan
+        self.version += 1
+        ahead = plan.order.visits[:ORDER_LOGGED]
+        if before is None or [v.target for v in ahead[:1]] != _first_ahead(before, plan.made_mjd):
+            self.submit(
+                OrderProposed(
+                    targets=tuple(visit.target for visit in ahead),
+                    starts_mjd=tuple(visit.start_mjd for visit in ahead),
+                    value=plan.order.value,
+                    why=plan.because,
+                )
+            )
+
+    def replace_planner(self, planner: Planner, because: str) -> None:
+        """Go on with other tables: the list or the air was changed."""
+        self.planner = planner
+        self.plan = None
+        self.version += 1
+        self._wanted = because
+
+
+def _first_ahead(plan: Plan, now_mjd: float) -> list[str]:
+    """Return the target, in a list, that an earlier plan would have next at a moment."""
+    return [visit.target for visit in plan.order.visits if visit.end_mjd > now_mjd][:1]

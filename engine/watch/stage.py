@@ -10,7 +10,6 @@ from dataclasses import dataclass
 from enum import Enum
 
 from engine.log import NightState
-from engine.night import Progress
 
 
 class Stage(Enum):
@@ -19,14 +18,14 @@ class Stage(Enum):
     CUT_OFF = "an exposure was cut off"
     LOST = "time is being lost"
     EXPOSING = "exposing"
-    BETWEEN = "reading out"
+    BETWEEN = "between exposures"
     MOVING = "moving to the target"
     READY = "on target"
     IDLE = "nothing under way"
 
 
 @dataclass(frozen=True, slots=True)
-class RunStep:
+class NextExposure:
     """The next exposure of a run: its filter, its length (s), which of how many it is."""
 
     filter: str
@@ -35,7 +34,7 @@ class RunStep:
     of: int
 
 
-def stage(state: NightState, doubted: bool) -> Stage:
+def stage_of(state: NightState, doubted: bool) -> Stage:
     """Return the stage of a night.
 
     ``doubted`` says that the open exposure began before this console took the night over, and that
@@ -52,17 +51,11 @@ def stage(state: NightState, doubted: bool) -> Stage:
     return Stage.READY if state.pointing.on_target else Stage.MOVING
 
 
-def next_in_run(state: NightState) -> RunStep | None:
+def next_in_run(state: NightState) -> NextExposure | None:
     """Return the exposure that comes next in the run under way; None when the run is complete."""
-    run = state.run
-    if run is None:
+    if state.run is None:
         return None
-    for step in run.steps:
+    for step in state.run.steps:
         if step.taken < step.count:
-            return RunStep(step.filter, step.seconds, step.taken + 1, step.count)
+            return NextExposure(step.filter, step.seconds, step.taken + 1, step.count)
     return None
-
-
-def run_for(plan: tuple[Progress, ...], only: str | None = None) -> tuple[Progress, ...]:
-    """Return the lines of a plan that a run would take now, or those of one filter only."""
-    return tuple(line for line in plan if line.remaining and (only is None or line.filter == only))

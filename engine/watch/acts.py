@@ -1,0 +1,257 @@
+"""What the observer can do, as plain functions on a `Watch`: each becomes one event or a few.
+
+An act that makes no sense at this stage raises `NotNow` and changes nothing.
+"""
+
+from __future__ import annotations
+
+import math
+
+from engine.errors import WarmroomError
+from engine.log import (
+    Amendment,
+    Conditions,
+    Event,
+    Exposure,
+    LostTime,
+    Note,
+    Override,
+    Pointing,
+    RunStart,
+    RunStop,
+    last_undoable,
+    title,
+)
+from engine.night import Progress
+from engine.times import SECONDS_PER_DAY
+from engine.watch.record import Ending, credit_measured
+from engine.watch.stage import Stage
+from engine.watch.watch import Watch
+
+
+class NotNow(WarmroomError):
+    """The act makes no sense at this stage of the night; says why."""
+
+
+# The common round
+
+
+def point_at(watch: Watch, name: str) -> Event:
+    """Send the telescope to a target; another than the proposed one is logged as an override."""
+    _not_while_exposing(watch)
+    night = watch.planner.night
+    try:
+        target = night.targets[night.target_index(name)]
+    except KeyError:
+        raise NotNow(f"no target is called {name!r}") from None
+    state = watch.state
+    if state.lost_since is not None:
+        raise NotNow("time is being lost; end that first")
+    if state.run is not None:
+        watch.submit(RunStop(of=state.run.n, why="left for another target"))
+    proposed = watch.plan.order.next if watch.plan else None
+    if proposed is not None and proposed.target != name:
+        watch.submit(Override(action="chose", target=name, instead_of=proposed.target))
+    pointing = Pointing(target=name, ra_deg=target.ra_deg, dec_deg=target.dec_deg)
+    return watch.submit(pointing, because=f"the telescope goes to {name}")
+
+
+def arrive(watch: Watch) -> Event:
+    """Say that the telescope stands on the target it was sent to."""
+    if watch.stage is not Stage.MOVING or watch.state.pointing is None:
+        raise NotNow("the telescope was not sent anywhere")
+    there = watch.state.pointing
+    return watch.submit(
+        Pointing(target=there.target, ra_deg=there.ra_deg, dec_deg=there.dec_deg, on_target=True)
+    )
+
+
+def start_run(watch: Watch, lines: tuple[Progress, ...]) -> Event:
+    """Begin a run on the target: all that remains of these lines of its plan, filter by filter."""
+    if watch.stage is not Stage.READY or watch.state.pointing is None:
+        raise NotNow("the telescope is not on a target")
+    lines = tuple(line for line in lines if line.remaining)
+    if not lines:
+        raise NotNow(f"nothing remains of the plan of {watch.state.pointing.target}")
+    event = watch.submit(
+        RunStart(
+            target=watch.state.pointing.target,
+            filters=tuple(line.filter for line in lines),
+            seconds=tuple(line.seconds for line in lines),
+            counts=tuple(line.remaining for line in lines),
+        )
+    )
+    watch.tick()
+    return event
+
+
+# Exposures
+
+
+def stop(watch: Watch) -> Event:
+    """End the exposure under way, and its run, now."""
+    if watch.stage not in (Stage.EXPOSING, Stage.BETWEEN):
+        raise NotNow("nothing is being exposed")
+    run = watch.state.run
+    event: Event | None = None
+    if watch.state.exposing is not None:
+        now_mjd = max(watch.clock.now_mjd(), watch.state.exposing.start_mjd)
+        event = watch.end_exposure(Ending(now_mjd, "stopped", "stopped by the observer"))
+    if run is not None:
+        event = watch.submit(
+            RunStop(of=run.n, why="stopped by the observer"), because="the run was stopped"
+        )
+    if event is None:
+        raise NotNow("nothing is being exposed")
+    return event
+
+
+def reject(watch: Watch, why: str = "") -> Event:
+    """Reject the last exposure that counts: it comes back on the plan."""
+    last = next((each for each in reversed(watch.state.exposures) if each.outcome == "good"), None)
+    if last is None:
+        raise NotNow("no exposure of this night counts")
+    amendment = Amendment(of=last.n, why=why, extra={"outcome": "rejected"})
+    return watch.submit(amendment, because=f"{last.filter} on {last.target} was rejected")
+
+
+def repeat(watch: Watch) -> Event:
+    """Take the last exposure once more, as a run of one."""
+    if not watch.state.exposures:
+        raise NotNow("nothing was exposed yet")
+    last = watch.state.exposures[-1]
+    pointing = watch.state.pointing
+    if watch.stage is not Stage.READY or pointing is None or pointing.target != last.target:
+        raise NotNow(f"the telescope is not on {last.target}, or a run is under way")
+    return start_run(watch, (Progress(last.filter, last.seconds, 1),))
+
+
+def keep_cut_off(watch: Watch) -> Event | None:
+    """Say that the exposure that was open when the console ended was not harmed.
+
+    If its time is over it is logged as good; if not, the count-down goes on.
+    """
+    exposing = watch.state.exposing
+    if watch.stage is not Stage.CUT_OFF or exposing is None:
+        raise NotNow("no exposure was cut off")
+    end_mjd = exposing.start_mjd + exposing.seconds / SECONDS_PER_DAY
+    if watch.clock.now_mjd() < end_mjd:
+        watch.vouch()
+        return None
+    return watch.end_exposure(
+        Ending(end_mjd, "good", "the console was away at its end; kept by the observer")
+    )
+
+
+def lose_cut_off(watch: Watch) -> Event:
+    """Log the exposure that was open when the console ended as lost, and end its run."""
+    exposing, run = watch.state.exposing, watch.state.run
+    if watch.stage is not Stage.CUT_OFF or exposing is None:
+        raise NotNow("no exposure was cut off")
+    end_mjd = exposing.start_mjd + exposing.seconds / SECONDS_PER_DAY
+    ended_mjd = max(min(watch.clock.now_mjd(), end_mjd), exposing.start_mjd)
+    event = watch.end_exposure(Ending(ended_mjd, "cut_off", "the console ended during it"))
+    if run is not None:
+        watch.submit(RunStop(of=run.n, why="cut off"), because="an exposure was lost")
+    return event
+
+
+# Conditions
+
+
+def zenith_seeing(watch: Watch, arcsec: float) -> Event:
+    """Enter the seeing (arcsec, zenith, 500 nm) as somebody measured or judged it."""
+    return watch.submit(Conditions(seeing_arcsec=arcsec), because=f'seeing {arcsec:.2f}" entered')
+
+
+def measured_fwhm(watch: Watch, arcsec: float) -> Event:
+    """Enter the FWHM (arcsec) measured on the last exposure; the zenith seeing follows from it.
+
+    The exposure gets the value, and its credit is worked out again with it.
+    """
+    last = watch.state.exposures[-1] if watch.state.exposures else None
+    if last is None or last.airmass_mid is None:
+        raise NotNow("no exposure yet to have measured it on; type the zenith seeing instead")
+    place = watch.planner.logbook.observatory.filter_index(last.filter)
+    zenith = watch.planner.model.zenith_seeing_arcsec(place, arcsec, last.airmass_mid)
+    if not math.isfinite(zenith):
+        raise NotNow(
+            f'{arcsec:g}" in {last.filter} is sharper than the telescope and camera alone can give'
+        )
+    event = watch.submit(
+        Conditions(
+            seeing_arcsec=round(zenith, 3),
+            measured_fwhm_arcsec=arcsec,
+            target=last.target,
+            filter=last.filter,
+            airmass=last.airmass_mid,
+            of=last.n,
+        ),
+        because=f'a FWHM of {arcsec:.2f}" in {last.filter}',
+    )
+    worth = credit_measured(watch.planner, last, arcsec)
+    watch.submit(
+        Amendment(
+            of=last.n,
+            with_n=event.n,
+            extra={"measured_fwhm_arcsec": float(arcsec), "credit": worth},
+        )
+    )
+    return event
+
+
+def conditions(watch: Watch, **values: float) -> Event:
+    """Enter cloud, wind, humidity, temperature, dew point or pressure, by the log's keys."""
+    return watch.submit(Conditions(**values), because="conditions were entered")
+
+
+# The night
+
+
+def begin_lost(watch: Watch, cause: str) -> Event:
+    """Time begins to be lost: the run stops, and an exposure under way with it."""
+    if watch.state.lost_since is not None:
+        raise NotNow("time is being lost already")
+    if watch.stage in (Stage.EXPOSING, Stage.BETWEEN):
+        stop(watch)
+    return watch.submit(LostTime(phase="begin", cause=cause), because=f"time is lost: {cause}")
+
+
+def end_lost(watch: Watch) -> Event:
+    """Time is no longer lost; the night goes on with a fresh order."""
+    if watch.state.lost_since is None:
+        raise NotNow("no time is being lost")
+    return watch.submit(LostTime(phase="end"), because="lost time ended")
+
+
+def note(watch: Watch, text: str) -> Event:
+    """Write a note, tied to the target the telescope is on."""
+    target = watch.state.pointing.target if watch.state.pointing else ""
+    return watch.submit(Note(text=text, target=target))
+
+
+def undo(watch: Watch) -> tuple[Event, str]:
+    """Withdraw the last entry that can be; return the amendment and what was withdrawn."""
+    last = last_undoable(watch.state)
+    if last is None:
+        raise NotNow("nothing is left to undo")
+    if isinstance(last, RunStart | Pointing):
+        _not_while_exposing(watch)
+    what = title(last)
+    event = watch.submit(
+        Amendment(of=last.n, withdrawn=True, why="undone by the observer"),
+        because=f"undone: {what}",
+    )
+    return event, what
+
+
+def last_exposure(watch: Watch) -> Exposure | None:
+    """Return the last exposure that was recorded; None when there is none."""
+    return watch.state.exposures[-1] if watch.state.exposures else None
+
+
+def _not_while_exposing(watch: Watch) -> None:
+    if watch.stage is Stage.CUT_OFF:
+        raise NotNow("an exposure was cut off; keep it or log it as lost first")
+    if watch.state.exposing is not None:
+        raise NotNow("an exposure is under way; stop it first")

@@ -1,0 +1,102 @@
+"""What moved between one plan and the next, and why: a few plain sentences."""
+
+from __future__ import annotations
+
+from zoneinfo import ZoneInfo
+
+from engine.night import Night, Plans
+from engine.order import Order
+from engine.times import MINUTES_PER_DAY, datetime_from_mjd
+from engine.watch.plan import Plan
+
+# Changes smaller than these are not news: common practice, no source.
+SEEING_SHARE = 0.03
+MOVED_MIN = 20.0
+SAID_AT_MOST = 6
+
+
+def news(night: Night, before: Plan, after: Plan, plans: Plans) -> tuple[str, ...]:
+    """Return what an observer would want to know about a new plan, the most important first."""
+    said = [
+        *_next_visit(before.order, after.order),
+        *_seeing(before, after),
+        *_softness(night, before, after, plans),
+        *_left_and_entered(before.order, after.order),
+        *_moved(night, before.order, after.order),
+    ]
+    return tuple(said[:SAID_AT_MOST])
+
+
+def _next_visit(before: Order, after: Order) -> list[str]:
+    ahead = [visit.target for visit in before.visits if visit.end_mjd > after.from_mjd]
+    new = after.next
+    if new is None:
+        return ["nothing more can be observed tonight"] if ahead else []
+    if ahead and new.target != ahead[0]:
+        return [f"next {new.target} instead of {ahead[0]}: {new.reason}"]
+    return []
+
+
+def _seeing(before: Plan, after: Plan) -> list[str]:
+    was, now = before.forecast.now_arcsec, after.forecast.now_arcsec
+    if abs(now / was - 1.0) < SEEING_SHARE:
+        return []
+    return [f'seeing {was:.2f}" to {now:.2f}"']
+
+
+def _softness(night: Night, before: Plan, after: Plan, plans: Plans) -> list[str]:
+    at = night.index_at(after.made_mjd)
+    softened, sharpened = [], []
+    for index, target in enumerate(night.targets):
+        needed = [
+            night.observatory.filter_index(line.filter)
+            for line in plans[target.name]
+            if line.remaining
+        ]
+        if not needed or night.limits[index, at]:
+            continue
+        was = bool(before.outlook.soft[needed, index, at].all())
+        now = bool(after.outlook.soft[needed, index, at].all())
+        if now and not was:
+            softened.append(target.name)
+        elif was and not now:
+            sharpened.append(target.name)
+    said = []
+    if softened:
+        said.append(f"too soft now: {_some(softened)}")
+    if sharpened:
+        said.append(f"sharp enough again: {_some(sharpened)}")
+    return said
+
+
+def _left_and_entered(before: Order, after: Order) -> list[str]:
+    was = {visit.target for visit in before.visits if visit.end_mjd > after.from_mjd}
+    now = {visit.target for visit in after.visits}
+    said = []
+    why = {each.target: each.reason for each in after.left_out}
+    gone = [name for name in was - now if name in why]
+    if len(gone) == 1:
+        said.append(f"{gone[0]} left out: {why[gone[0]]}")
+    elif gone:
+        said.append(f"left out: {_some(sorted(gone))}")
+    if now - was:
+        said.append(f"taken in: {_some(sorted(now - was))}")
+    return said
+
+
+def _moved(night: Night, before: Order, after: Order) -> list[str]:
+    was = {visit.target: visit.start_mjd for visit in reversed(before.visits)}
+    zone = ZoneInfo(night.observatory.site.timezone)
+    moved = []
+    for visit in after.visits:
+        old = was.get(visit.target)
+        if old is None or abs(visit.start_mjd - old) * MINUTES_PER_DAY < MOVED_MIN:
+            continue
+        moment = datetime_from_mjd(visit.start_mjd).astimezone(zone)
+        moved.append(f"{visit.target} to {moment:%H:%M}")
+    return [f"moved: {_some(moved)}"] if moved else []
+
+
+def _some(names: list[str]) -> str:
+    more = len(names) - 3
+    return ", ".join(names[:3]) + (f" and {more} more" if more > 0 else "")

@@ -1,0 +1,21 @@
+"""A plan: what is advised from one moment on."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+from engine.night import Outlook
+from engine.order import Order
+from engine.seeing import SeeingForecast
+
+
+@dataclass(frozen=True, slots=True)
+class Plan:
+    """Forecast, outlook and order made at one moment (UTC MJD), why, and what has moved since."""
+
+    made_mjd: float
+    because: str
+    forecast: SeeingForecast
+    outlook: Outlook
+    order: Order
+    news: tuple[str, ...] = ()
