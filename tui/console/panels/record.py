@@ -1,0 +1,58 @@
+"""The order ahead, and the log as it grows."""
+
+from __future__ import annotations
+
+from engine.log import Event, title
+from engine.watch import Watch
+from tui.console.panels.local import arcsec, hhmm, local
+from tui.paint.spans import Line, Span, cut, line
+
+# What the console writes by itself and what every exposure says twice: not worth a line here.
+NOT_SHOWN = ("exposure_start", "order")
+
+
+def paint_order(watch: Watch, width: int, height: int) -> list[Line]:
+    """Return the order from now on: when, what, how soft, why."""
+    if watch.plan is None:
+        return []
+    now_mjd = watch.clock.now_mjd()
+    visits = [visit for visit in watch.plan.order.visits if visit.end_mjd > now_mjd]
+    lines = [line(Span(" the order ahead", "title"), Span(f"  {watch.plan.because}", "dim"))]
+    for number, visit in enumerate(visits, start=1):
+        what = " ".join(f"{e.filter}×{e.count}" for e in visit.exposures)
+        lines.append(
+            line(
+                Span(f"{number:>3} ", "accent"),
+                Span(hhmm(watch, visit.start_mjd), "text"),
+                Span(f"  {visit.target:<12}", "strong"),
+                Span(f" {arcsec(visit.image_size_arcsec)} ", "text"),
+                Span(f"{what:<15} ", "dim"),
+                Span(visit.reason, "dim"),
+            )
+        )
+    left = [f"{each.target}: {each.reason}" for each in watch.plan.order.left_out]
+    if left:
+        lines.append(line(Span(f" left out, {len(left)}", "title")))
+        lines += [line(Span(f"  {each}", "dim")) for each in left]
+    return [cut(each, width) for each in lines[:height]]
+
+
+def paint_log(watch: Watch, width: int, height: int) -> list[Line]:
+    """Return the last entries of the log, the newest at the bottom."""
+    state = watch.state
+    shown = [event for event in state.events if event.kind not in NOT_SHOWN]
+    last_on_disk = len(state.events) - watch.unwritten
+    written = {event.n for event in state.events[:last_on_disk]}
+    head = line(Span(" the log", "title"), Span(f"  {len(state.events)} entries", "dim"))
+    lines = [_entry(watch, event, written) for event in shown[-max(height - 1, 1) :]]
+    return [cut(each, width) for each in [head, *lines]]
+
+
+def _entry(watch: Watch, event: Event, written: set[int]) -> Line:
+    gone = event.n in watch.state.withdrawn
+    mark = Span("✓", "good") if event.n in written else Span("…", "warn")
+    return line(
+        Span(f" {local(watch, event.t_mjd):%H:%M:%S} ", "dim"),
+        mark,
+        Span(f" {'withdrawn: ' if gone else ''}{title(event)}", "dim" if gone else "text"),
+    )

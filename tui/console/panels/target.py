@@ -1,0 +1,159 @@
+"""The chosen target: where it is, its night as a curve, its plan, and which blur is to blame."""
+
+from __future__ import annotations
+
+import math
+
+import numpy as np
+
+from engine.night import FilterNow, TargetNow
+from engine.positions import skyline_altitude_deg
+from engine.watch import Watch
+from tui.console.panels.local import arcsec, hhmm
+from tui.paint.chart import Chart, Curve, paint_chart
+from tui.paint.figures import bar, pips
+from tui.paint.spans import Line, Span, cut, line
+
+CHART_SAMPLES = 240
+LEAST_CHART_ROWS, MOST_CHART_ROWS = 4, 14
+TERM_BAR = 12
+# Altitudes whose airmass stands at the chart's right edge: airmass 1.0, 1.15, 1.5, 2, 3 about.
+AIRMASS_ALTITUDES_DEG = (85.0, 60.0, 42.0, 30.0, 19.0)
+
+
+def paint_target(watch: Watch, name: str | None, width: int, height: int) -> list[Line]:
+    """Return the panel for one target in so many rows."""
+    now = next((each for each in watch.targets_now() if each.target.name == name), None)
+    if now is None:
+        return [line(Span(" no target is chosen", "dim"))]
+    head = _head(watch, now)
+    tail = [*_plan(now), *_terms(watch, now)]
+    rows = min(height - len(head) - len(tail), MOST_CHART_ROWS)
+    chart = _chart(watch, now, width, rows) if rows >= LEAST_CHART_ROWS else []
+    return [cut(each, width) for each in [*head, *chart, *tail]][:height]
+
+
+def _head(watch: Watch, now: TargetNow) -> list[Line]:
+    target = now.target
+    where = (
+        f" alt {now.apparent_altitude_deg:.1f}°  az {now.azimuth_deg:.0f}°  "
+        f"HA {now.hour_angle_h:+.2f}h  airmass {_number(now.airmass)}  "
+        f"parallactic {now.parallactic_angle_deg:+.0f}°"
+    )
+    says = (
+        Span(" may be observed", "good")
+        if now.observable
+        else Span(" " + "; ".join(reason.sentence for reason in now.reasons[:2]), "bad")
+    )
+    moon = f"Moon {now.moon_separation_deg:.0f}° away"
+    return [
+        line(
+            Span(f" {target.name}", "strong"),
+            Span(f"  {target.programme}", "text"),
+            Span(f"  priority {target.priority}", "dim"),
+            Span(f"  mag {target.magnitude:g}" if target.magnitude is not None else "", "dim"),
+        ),
+        line(Span(where, "text")),
+        line(says, Span(f"   {moon}", "moon"), Span(_best(watch, now), "dim")),
+    ]
+
+
+def _best(watch: Watch, now: TargetNow) -> str:
+    """Return when the target stands best in the dark part of the night."""
+    night = watch.planner.night
+    usable = np.where(night.limits[now.index] == 0, night.airmass[now.index], np.inf)
+    at = int(np.argmin(usable))
+    if not math.isfinite(usable[at]):
+        return "   never within its limits tonight"
+    return f"   best airmass {usable[at]:.2f} at {hhmm(watch, float(night.mjd[at]))}"
+
+
+def _plan(now: TargetNow) -> list[Line]:
+    return [_plan_line(now, each) for each in now.filters]
+
+
+def _plan_line(now: TargetNow, one: FilterNow) -> Line:
+    limit = now.target.maximum_image_size_arcsec
+    plan = one.progress
+    return line(
+        Span(f" {plan.filter:<3}", "title"),
+        Span(f"{plan.seconds:>4g} s  ", "text"),
+        Span(f"{pips(plan.done, plan.planned):<12}", "good"),
+        Span(f" {plan.done}/{plan.planned}", "text"),
+        Span(f"  depth {plan.credit:.1f}", "dim"),
+        Span(f"   {arcsec(one.image_size_arcsec)}", "bad" if one.soft else "strong"),
+        Span(f" limit {limit:g}" if limit else "", "dim"),
+        Span(f"   sky {_number(one.sky_mag_arcsec2, 1)}", "dim"),
+    )
+
+
+def _terms(watch: Watch, now: TargetNow) -> list[Line]:
+    """Return the blurs of the first filter still needed, as bars on one scale."""
+    if not math.isfinite(now.airmass) or watch.plan is None:
+        return []
+    needed = [each for each in now.filters if each.progress.remaining] or list(now.filters)
+    first = needed[0]
+    at = watch.planner.night.index_at(watch.clock.now_mjd())
+    seeing = float(watch.plan.outlook.seeing_arcsec[at])
+    image = watch.planner.model.breakdown(first.filter_index, seeing, now.airmass)
+    terms = image.terms
+    pairs = (
+        ("atmosphere", terms.atmosphere),
+        ("diffraction", terms.diffraction),
+        ("optics", terms.optics),
+        ("tracking", terms.tracking),
+        ("dispersion", terms.dispersion),
+        ("sampling", terms.sampling),
+    )
+    most = max(value for _, value in pairs)
+    rows = [
+        line(
+            Span(f" what makes {first.progress.filter} {arcsec(image.size_arcsec)}", "dim"),
+            Span(f", {image.size_px:.1f} px", "warn" if image.undersampled else "dim"),
+            Span(" (undersampled)" if image.undersampled else "", "warn"),
+            Span(f", elongated {image.elongation:.2f}" if image.elongation > 1.02 else "", "dim"),
+        )
+    ]
+    for left, right in zip(pairs[::2], pairs[1::2], strict=True):
+        spans = [Span(" ")]
+        for label, value in (left, right):
+            spans += [
+                Span(f"{label:<11}", "dim"),
+                Span(bar(value / most, TERM_BAR), "accent" if value == most else "text"),
+                Span(f" {value:.2f}  ", "text"),
+            ]
+        rows.append(tuple(spans))
+    return rows
+
+
+def _chart(watch: Watch, now: TargetNow, width: int, rows: int) -> list[Line]:
+    night = watch.planner.night
+    picks = np.linspace(0, night.last, CHART_SAMPLES).round().astype(int)
+    telescope = night.observatory.telescope
+    skyline = skyline_altitude_deg(
+        night.observatory.site.horizon, night.where.azimuth_deg[now.index, picks]
+    )
+    sun = night.sun.altitude_deg[picks]
+    dark = (sun <= -50.0 / 60.0).astype(int) + (sun <= -6.0) + (sun <= -12.0) + (sun <= -18.0)
+    shown_mjd = (watch.clock.now_mjd() - night.mjd[0]) / (night.mjd[-1] - night.mjd[0])
+    heights = night.apparent_altitude_deg[now.index]
+    marks = []
+    for altitude in AIRMASS_ALTITUDES_DEG:
+        near = int(np.argmin(np.abs(heights - altitude)))
+        if abs(heights[near] - altitude) < 1.0:
+            marks.append((altitude, f"{night.airmass[now.index, near]:.2f}"))
+    chart = Chart(
+        curves=(
+            Curve(night.moon.altitude_deg[picks].tolist(), "moon", every=3, label="Moon"),
+            Curve(heights[picks].tolist(), "accent", label=now.target.name),
+        ),
+        dark=dark.tolist(),
+        limit_deg=np.maximum(skyline, telescope.minimum_altitude_deg).tolist(),
+        now=float(shown_mjd),
+        airmass_marks=tuple(marks),
+    )
+    return paint_chart(chart, width, rows)
+
+
+def _number(value: float, places: int = 2) -> str:
+    return f"{value:.{places}f}" if math.isfinite(value) else "-"

@@ -1,0 +1,149 @@
+"""The night as a strip of time: light, Moon, what is planned, what was done, and now."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass, field
+
+from tui.paint.spans import Line, Span, fitted
+
+# Darkness by the Sun's altitude: day, civil, nautical, astronomical twilight, night.
+TWILIGHT = ((-50.0 / 60.0, "█"), (-6.0, "▓"), (-12.0, "▒"), (-18.0, "░"))
+# The Moon's altitude in eight steps of a cell.
+HEIGHTS = " ▁▂▃▄▅▆▇█"
+LABEL_WIDTH = 6
+
+
+@dataclass(frozen=True, slots=True)
+class Block:
+    """A stretch of the strip (hours from its beginning): a label, and the role it is drawn in."""
+
+    begin_h: float
+    end_h: float
+    label: str = ""
+    role: str = "planned"
+
+
+@dataclass(frozen=True, slots=True)
+class NightStrip:
+    """What the strip shows; hours run from its left edge, which is at local hour ``begin_hour``.
+
+    ``sun_deg`` and ``moon_deg`` give altitudes at an hour of the strip.
+    """
+
+    hours: float
+    begin_hour: float
+    now_h: float
+    sun_deg: Callable[[float], float]
+    moon_deg: Callable[[float], float]
+    planned: tuple[Block, ...] = ()
+    done: tuple[Block, ...] = ()
+    lost: tuple[Block, ...] = ()
+    moon_label: str = ""
+    roles: tuple[str, str] = field(default=("planned", "planned2"))
+
+
+def paint_strip(strip: NightStrip, width: int) -> list[Line]:
+    """Return the strip's five rows: hours, light, Moon, plan, done."""
+    columns = max(width - LABEL_WIDTH, 10)
+    now = int(strip.now_h / strip.hours * columns)
+    return [
+        _labelled("", _hours(strip, columns, now)),
+        _labelled("light", _light(strip, columns, now)),
+        _labelled("Moon", _moon(strip, columns, now)),
+        _labelled("plan", _plan(strip, columns, now)),
+        _labelled("done", _done(strip, columns, now)),
+    ]
+
+
+def _labelled(label: str, cells: list[Span]) -> Line:
+    return (Span(label.ljust(LABEL_WIDTH), "dim"), *_joined(cells))
+
+
+def _joined(cells: list[Span]) -> list[Span]:
+    """Return single cells as spans, neighbours of one role together."""
+    out: list[Span] = []
+    for text, role in cells:
+        if out and out[-1].role == role:
+            out[-1] = Span(out[-1].text + text, role)
+        else:
+            out.append(Span(text, role))
+    return out
+
+
+def _hour_of(strip: NightStrip, column: int, columns: int) -> float:
+    return (column + 0.5) / columns * strip.hours
+
+
+def _hours(strip: NightStrip, columns: int, now: int) -> list[Span]:
+    cells = [Span(" ", "dim")] * columns
+    whole = int(strip.begin_hour) + 1
+    every = 1 if columns / strip.hours >= 4 else 2
+    for hour in range(whole, whole + int(strip.hours) + 1):
+        at = round((hour - strip.begin_hour) / strip.hours * columns)
+        text = f"{hour % 24:02d}"
+        if hour % every == 0 and 0 <= at <= columns - len(text):
+            for offset, character in enumerate(text):
+                cells[at + offset] = Span(character, "dim")
+    if 0 <= now < columns:
+        cells[now] = Span("▼", "now")
+    return cells
+
+
+def _light(strip: NightStrip, columns: int, now: int) -> list[Span]:
+    cells = []
+    for column in range(columns):
+        altitude = strip.sun_deg(_hour_of(strip, column, columns))
+        glyph = next((glyph for limit, glyph in TWILIGHT if altitude > limit), "·")
+        cells.append(Span(glyph, "sky"))
+    return _with_now(cells, now)
+
+
+def _moon(strip: NightStrip, columns: int, now: int) -> list[Span]:
+    cells = []
+    for column in range(columns):
+        altitude = strip.moon_deg(_hour_of(strip, column, columns))
+        step = 0 if altitude <= 0.0 else min(1 + int(altitude / 90.0 * 8.0), 8)
+        cells.append(Span(HEIGHTS[step], "moon"))
+    down = [at for at, cell in enumerate(cells) if cell.text == " "]
+    if len(down) > len(strip.moon_label) + 1 and strip.moon_label:
+        for offset, character in enumerate(strip.moon_label):
+            at = down[0] + 1 + offset
+            if at in down:
+                cells[at] = Span(character, "dim")
+    return _with_now(cells, now)
+
+
+def _plan(strip: NightStrip, columns: int, now: int) -> list[Span]:
+    cells = [Span(" ")] * columns
+    for number, block in enumerate(strip.planned):
+        role = strip.roles[number % 2]
+        begin, end = _columns_of(block, strip, columns)
+        text = fitted(f" {block.label}", end - begin) if end - begin > 3 else " " * (end - begin)
+        for offset, character in enumerate(text):
+            cells[begin + offset] = Span(character, role)
+    return _with_now(cells, now, over=False)
+
+
+def _done(strip: NightStrip, columns: int, now: int) -> list[Span]:
+    cells = [Span(" ")] * columns
+    for block, glyph in [
+        *((block, "╌") for block in strip.lost),
+        *((block, block.label or "━") for block in strip.done),
+    ]:
+        begin, end = _columns_of(block, strip, columns)
+        for at in range(begin, max(end, begin + 1)):
+            if at < columns:
+                cells[at] = Span(glyph[0], block.role)
+    return _with_now(cells, now, over=False)
+
+
+def _columns_of(block: Block, strip: NightStrip, columns: int) -> tuple[int, int]:
+    begin, end = (round(hour / strip.hours * columns) for hour in (block.begin_h, block.end_h))
+    return min(max(begin, 0), columns), min(max(end, 0), columns)
+
+
+def _with_now(cells: list[Span], now: int, over: bool = True) -> list[Span]:
+    if 0 <= now < len(cells) and (over or cells[now].text == " "):
+        cells[now] = Span("│", "now")
+    return cells
