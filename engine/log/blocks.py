@@ -47,34 +47,37 @@ def block_bytes(kind: str, values: dict[str, Value]) -> bytes:
     data = body + f'crc = "{crc_of(body)}"\n'.encode()
     read = tomllib.loads(data.decode())[kind][0]
     crc = read.pop("crc")
-    if read != _as_read(values) or crc != crc_of(body):
+    if read != {key: _as_read(value) for key, value in values.items()} or crc != crc_of(body):
         raise ValueError(f"a block of kind {kind!r} does not read back as it was meant")
     return b"\n" + data
 
 
 def _line(key: str, value: Value) -> str:
+    return f"{key} = {_written(value)}\n"
+
+
+def _written(value: Value) -> str:
+    """Return a value on one line: times with T and Z, which every parser takes, nothing raw."""
+    if isinstance(value, list):
+        return f"[{', '.join(_written(each) for each in value)}]"
     if isinstance(value, datetime):
-        return f"{key} = {iso_from_datetime(value)}\n"
-    text = tomli_w.dumps({key: _without_surrogates(value)}, multiline_strings=False)
+        return iso_from_datetime(value)
+    text = tomli_w.dumps({"v": _without_surrogates(value)}, multiline_strings=False)
+    text = text.removeprefix("v = ").removesuffix("\n")
     return _ESCAPED.sub(lambda found: f"\\u{ord(found[0]):04X}", text)
 
 
 def _without_surrogates(value: Value) -> Value:
-    if isinstance(value, str):
-        return _SURROGATE.sub("\ufffd", value)
+    return _SURROGATE.sub("\ufffd", value) if isinstance(value, str) else value
+
+
+def _as_read(value: Value) -> Value:
+    """Return a value as a reader will see it: times to the millisecond, no lone surrogates."""
     if isinstance(value, list):
-        return [_without_surrogates(each) for each in value]
-    return value
-
-
-def _as_read(values: dict[str, Value]) -> dict[str, Value]:
-    """Return values as a reader will see them: times to the millisecond, no lone surrogates."""
-    return {
-        key: datetime.fromisoformat(iso_from_datetime(value))
-        if isinstance(value, datetime)
-        else _without_surrogates(value)
-        for key, value in values.items()
-    }
+        return [_as_read(each) for each in value]
+    if isinstance(value, datetime):
+        return datetime.fromisoformat(iso_from_datetime(value))
+    return _without_surrogates(value)
 
 
 @dataclass(frozen=True, slots=True)

@@ -328,7 +328,8 @@ def to_values(event: Event) -> tuple[str, dict[str, Value]]:
     values: dict[str, Value] = {}
     for key in keys_of(type(event)):
         value = getattr(event, key.field)
-        if value is None or value in ("", ()) or (key.name == "withdrawn" and not value):
+        empty = value is None or value is False or (isinstance(value, str | tuple) and not value)
+        if empty and not key.required:
             continue
         values[key.name] = _written(value, key)
     return event.kind, values | event.extra

@@ -37,10 +37,11 @@ class Line:
 class Problem:
     """A night from one moment on, made ready for the search.
 
-    ``first`` is the place of its first minute in the night's grid. ``stay`` (L, T): for how many
-    minutes from each on a line may be exposed without a break. ``worth`` (L, T): priority x quality
-    of a second, 0 where it may not. ``left`` (N, T): minutes from each on in which a target may be
-    observed at all. ``of_target`` (N, K) holds each target's lines, -1 for none.
+    ``first`` is the place of its first minute in the night's grid. ``stay`` (L + 1, T): for how many
+    minutes from each on a line may be exposed without a break. ``worth`` (L + 1, T): priority x
+    quality of a second, 0 where it may not. ``left`` (N, T): minutes from each on in which a target
+    may be observed at all. ``of_target`` (N, K) holds each target's lines, -1 for none: the row
+    behind the last line, where nothing can be done, stands for it.
     """
 
     night: Night
@@ -52,10 +53,19 @@ class Problem:
     minutes: int
     lines: tuple[Line, ...]
     of_target: Counts
+    remaining: Counts
+    seconds: Floats
+    change_min: Floats
+    contiguous_min: Floats
     stay: Floats
     worth: Floats
     left: Floats
     pointing: int | None
+
+    @property
+    def each_min(self) -> Floats:
+        """Minutes (L + 1,) that one exposure of a line takes, read out."""
+        return (self.seconds + self.night.observatory.camera.readout_s) / 60.0
 
     @property
     def targets(self) -> tuple[Target, ...]:
@@ -67,7 +77,7 @@ class Problem:
         return float(self.night.mjd[self.first]) + minute / MINUTES_PER_DAY
 
     def move_min(self, here: int | None, minute: int) -> Floats:
-        """Return the minutes (N,) from one target (None: anywhere) to each, settled, at a minute."""
+        """Return the minutes (N,) from a target (None: anywhere) to each, settled, at a minute."""
         telescope = self.night.observatory.telescope
         settle = telescope.settle_s / 60.0
         if here is None:
@@ -125,11 +135,10 @@ def build_problem(
     lines = _lines(night, plans, rules)
     allowed = _allowed(night, outlook, rules, lines, first)
     unbroken = allowed & ~_meridian_breaks(night, lines, first)
-    worth = np.zeros(allowed.shape)
+    worth = np.zeros((len(lines) + 1, allowed.shape[1]))
     for place, line in enumerate(lines):
         priority = night.targets[line.target].priority
-        worth[place] = priority * outlook.quality[line.filter, line.target, first:]
-    worth[~allowed] = 0.0
+        worth[place] = priority * outlook.quality[line.filter, line.target, first:] * allowed[place]
     any_line = np.zeros((len(night.targets), allowed.shape[1]), dtype=bool)
     for place, line in enumerate(lines):
         any_line[line.target] |= allowed[place]
@@ -143,7 +152,11 @@ def build_problem(
         minutes=allowed.shape[1],
         lines=lines,
         of_target=_by_target(lines, len(night.targets)),
-        stay=_minutes_without_break(allowed, unbroken),
+        remaining=np.array([*(line.count for line in lines), 0], dtype=np.int64),
+        seconds=np.array([*(line.seconds for line in lines), 1.0]),
+        change_min=np.array([*(line.change_s for line in lines), 0.0]) / 60.0,
+        contiguous_min=np.array([target.contiguous_min or 0.0 for target in night.targets]),
+        stay=_minutes_without_break(unbroken),
         worth=worth,
         left=np.cumsum(any_line[:, ::-1], axis=1)[:, ::-1].astype(float),
         pointing=None if pointing is None else night.target_index(pointing),
@@ -179,9 +192,7 @@ def _allowed(
     return allowed
 
 
-def _meridian_breaks(
-    night: Night, lines: tuple[Line, ...], first: int
-) -> NDArray[np.bool_]:
+def _meridian_breaks(night: Night, lines: tuple[Line, ...], first: int) -> NDArray[np.bool_]:
     """Return the minutes (L, T) in which a german mount has to turn over on a line's target."""
     breaks = np.zeros((len(lines), len(night.mjd) - first), dtype=bool)
     if night.observatory.telescope.mount != "german":
@@ -195,15 +206,13 @@ def _meridian_breaks(
     return breaks
 
 
-def _minutes_without_break(
-    allowed: NDArray[np.bool_], unbroken: NDArray[np.bool_]
-) -> Floats:
-    """Return for how many minutes from each on a line may be exposed: 0 where it may not."""
-    stay = np.zeros(allowed.shape)
-    ahead = np.zeros(allowed.shape[0])
-    for minute in range(allowed.shape[1] - 1, -1, -1):
+def _minutes_without_break(unbroken: NDArray[np.bool_]) -> Floats:
+    """Return for how many minutes from each on a line may be exposed, with a last row of none."""
+    stay = np.zeros((unbroken.shape[0] + 1, unbroken.shape[1]))
+    ahead = np.zeros(unbroken.shape[0])
+    for minute in range(unbroken.shape[1] - 1, -1, -1):
         ahead = np.where(unbroken[:, minute], ahead + 1.0, 0.0)
-        stay[:, minute] = ahead
+        stay[:-1, minute] = ahead
     return stay
 
 

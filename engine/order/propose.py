@@ -50,7 +50,7 @@ def propose(problem: Problem, in_force: Order | None = None) -> Order:
     best = int(np.argmax(values))
     stays, value = candidates[best], values[best]
     if in_force is not None:
-        kept = _build(problem, TEMPERS[2], along=_names_ahead(problem, in_force))
+        kept = _build(problem, TEMPERS[2], along=_turn_ahead(problem, in_force))
         kept_value = _value(problem, kept)
         if kept_value * (1.0 + KEEPING_BONUS) >= value:
             stays, value = kept, kept_value
@@ -66,48 +66,50 @@ def propose(problem: Problem, in_force: Order | None = None) -> Order:
     )
 
 
-def _names_ahead(problem: Problem, order: Order) -> list[int]:
-    """Return the targets of an order from now on, in its turn."""
+def _turn_ahead(problem: Problem, order: Order) -> list[tuple[int, float]]:
+    """Return the targets of an order from now on, in its turn, each with its minute."""
     known = {target.name: index for index, target in enumerate(problem.targets)}
+    first_mjd = problem.mjd_at(0.0)
     return [
-        known[visit.target]
+        (known[visit.target], (visit.start_mjd - first_mjd) * MINUTES_PER_DAY)
         for visit in order.visits
         if visit.end_mjd > problem.from_mjd and visit.target in known
     ]
 
 
 def _build(
-    problem: Problem, temper: tuple[float, float], along: Sequence[int] = ()
+    problem: Problem, temper: tuple[float, float], along: Sequence[tuple[int, float]] = ()
 ) -> list[_Stay]:
     """Return stays from now to the end of the night: along a given turn first, then by rate."""
-    remaining = np.array([line.count for line in problem.lines], dtype=np.int64)
+    remaining = problem.remaining.copy()
     ahead = list(along)
     if problem.rules.first is not None:
-        ahead.insert(0, problem.night.target_index(problem.rules.first))
+        ahead.insert(0, (problem.night.target_index(problem.rules.first), 0.0))
     stays: list[_Stay] = []
     minute, here = 0.0, problem.pointing
     while minute < problem.minutes - 1:
         tries = _Tries.at(problem, remaining, minute, here)
-        chosen = _next_along(tries, ahead)
-        if chosen is None:
-            chosen = _best(problem, tries, temper, minute)
-        if chosen is None:
-            minute = _next_chance(problem, remaining, minute)
-            continue
+        if ahead:
+            chosen, wanted_at = ahead[0]
+            if tries.worth[chosen] <= 0.0 and minute < wanted_at:
+                # Not yet: what was planned for a moment waits for it.
+                minute = min(minute + 1.0, wanted_at)
+                continue
+            ahead.pop(0)
+            if tries.worth[chosen] <= 0.0:
+                continue
+        else:
+            best = _best(problem, tries, temper, minute)
+            if best is None:
+                minute = _next_chance(problem, remaining, minute)
+                continue
+            chosen = best
         stay = tries.stay(problem, chosen)
         for line, count, _ in stay.placed:
             remaining[line] -= count
         stays.append(stay)
         minute, here = stay.end, chosen
     return stays
-
-
-def _next_along(tries: _Tries, ahead: list[int]) -> int | None:
-    while ahead:
-        chosen = ahead.pop(0)
-        if tries.worth[chosen] > 0.0:
-            return chosen
-    return None
 
 
 def _best(
@@ -145,36 +147,28 @@ class _Tries:
     def at(
         cls, problem: Problem, remaining: NDArray[np.int64], minute: float, here: int | None
     ) -> _Tries:
-        lines, table = problem.lines, problem.of_target
-        readout = problem.night.observatory.camera.readout_s
-        seconds = np.array([line.seconds for line in lines] or [1.0])
-        change = np.array([line.change_s for line in lines] or [0.0]) / 60.0
-        each_min = (seconds + readout) / 60.0
-        clock = minute + problem.move_min(here, int(minute))
-        arrived = clock.copy()
+        """Return what could be placed on each target, going there at a minute."""
+        table, each_min = problem.of_target, problem.each_min
+        arrived = minute + problem.move_min(here, int(minute))
+        clock = arrived.copy()
         worth, needed = np.zeros(len(table)), np.zeros(len(table))
         counts, starts = np.zeros(table.shape, dtype=np.int64), np.zeros(table.shape)
         for column in range(table.shape[1]):
-            place = table[:, column]
-            real = place >= 0
-            line = np.where(real, place, 0)
-            start = clock + change[line]
-            # The limits hold at the end of an exposure too: count to the minute before it.
+            line = table[:, column]
+            start = clock + problem.change_min[line]
             at = np.minimum(np.ceil(start).astype(np.int64), problem.minutes - 1)
-            room = problem.stay[line, at] - (at - start) * 0.0 - 1.0 if len(lines) else start * 0.0
-            fit = np.floor(np.maximum(room, 0.0) / each_min[line]).astype(np.int64)
-            count = np.where(real, np.minimum(fit, remaining[line] if len(lines) else 0), 0)
-            middle = np.minimum((start + 0.5 * count * each_min[line]).astype(np.int64), problem.minutes - 1)
-            gain = problem.worth[line, middle] if len(lines) else start * 0.0
-            worth += np.where(count > 0, gain * seconds[line] * count, 0.0)
-            if len(lines):
-                needed += np.where(real, remaining[line] * each_min[line], 0.0)
+            # The limits hold at the end of an exposure too, hence the last minute is left free.
+            room = np.maximum(problem.stay[line, at] - 1.0, 0.0)
+            count = np.minimum((room / each_min[line]).astype(np.int64), remaining[line])
+            length = count * each_min[line]
+            middle = np.minimum((start + length / 2.0).astype(np.int64), problem.minutes - 1)
+            worth += problem.worth[line, middle] * problem.seconds[line] * count
+            needed += remaining[line] * each_min[line]
             counts[:, column], starts[:, column] = count, start
-            clock = np.where(count > 0, start + count * each_min[line], clock)
-        contiguous = np.array([target.contiguous_min or 0.0 for target in problem.targets])
-        short = (clock - arrived) + 1e-9 < np.minimum(contiguous, needed)
-        worth = np.where(short, 0.0, worth)
-        return cls(minute, counts, starts, worth, clock, needed)
+            clock = np.where(count > 0, start + length, clock)
+        # What wants to be uninterrupted for so long takes that long or all that remains of it.
+        whole = clock - arrived + 1e-9 >= np.minimum(problem.contiguous_min, needed)
+        return cls(minute, counts, starts, np.where(whole, worth, 0.0), clock, needed)
 
     def stay(self, problem: Problem, target: int) -> _Stay:
         """Return the stay on one target."""
@@ -190,17 +184,19 @@ class _Tries:
 
 def _value(problem: Problem, stays: list[_Stay]) -> float:
     """Return what stays are worth by the documented merit, exposure by exposure."""
-    readout = problem.night.observatory.camera.readout_s
     total = 0.0
     taken = [0] * len(problem.lines)
     for stay in stays:
         for place, count, start in stay.placed:
             line = problem.lines[place]
             taken[place] += count
-            middles = start + (np.arange(count) * (line.seconds + readout) + line.seconds / 2.0) / 60.0
-            quality = problem.worth[place, np.minimum(middles.astype(np.int64), problem.minutes - 1)]
-            # `worth` holds priority x quality already.
-            total += float(exposure_worth(1, line.seconds, 1.0) * quality.sum())
+            middles = start + np.arange(count) * problem.each_min[place] + line.seconds / 120.0
+            at = np.minimum(middles.astype(np.int64), problem.minutes - 1)
+            priority = problem.targets[line.target].priority
+            total += sum(
+                exposure_worth(priority, line.seconds, float(worth) / priority)
+                for worth in problem.worth[place, at]
+            )
     return total + sum(
         finished_worth(target.priority, sum(e.seconds * e.count for e in target.exposures))
         for index, target in enumerate(problem.targets)

@@ -70,7 +70,9 @@ def _moon_coming(problem: Problem, visit: Visit) -> list[str]:
     up = night.moon.altitude_deg[begin:end] > 0.0
     if up.size == 0 or up[0] or not up.any():
         return []
-    return [f"before the Moon rises at {local_time(problem, night.mjd[begin + int(np.argmax(up))])}"]
+    return [
+        f"before the Moon rises at {local_time(problem, night.mjd[begin + int(np.argmax(up))])}"
+    ]
 
 
 def _height(problem: Problem, index: int, visit: Visit) -> str:
@@ -90,8 +92,7 @@ def left_out(problem: Problem, visited: set[str]) -> tuple[LeftOut, ...]:
     return tuple(
         LeftOut(target.name, _why_left_out(problem, index))
         for index, target in enumerate(problem.targets)
-        if target.name not in visited
-        and any(line.remaining for line in problem.plans[target.name])
+        if target.name not in visited and any(line.remaining for line in problem.plans[target.name])
     )
 
 

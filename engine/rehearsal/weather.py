@@ -41,7 +41,7 @@ class InventedNight:
 
     def air_at(self, mjd: float) -> tuple[float, float, float]:
         """Return temperature (deg C), relative humidity (percent) and wind (m/s)."""
-        share = (mjd - self.mjd[0]) / (self.mjd[-1] - self.mjd[0])
+        share = float((mjd - self.mjd[0]) / (self.mjd[-1] - self.mjd[0]))
         temperature_c = 17.5 - 6.0 * share
         humidity_percent = 48.0 + 26.0 * share
         wind_m_per_s = 4.0 + 2.5 * float(np.sin(5.0 * share))

@@ -4,6 +4,7 @@
 can do, ``snapshot`` and ``order_of_night`` look without opening anything.
 """
 
+from engine.watch import acts
 from engine.watch.advice import CautionNow, cautions
 from engine.watch.opening import Opened, open_watch
 from engine.watch.plan import Plan
@@ -21,6 +22,7 @@ __all__ = [
     "Snapshot",
     "Stage",
     "Watch",
+    "acts",
     "cautions",
     "open_watch",
     "order_of_night",

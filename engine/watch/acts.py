@@ -202,7 +202,7 @@ def measured_fwhm(watch: Watch, arcsec: float) -> Event:
 
 def conditions(watch: Watch, **values: float) -> Event:
     """Enter cloud, wind, humidity, temperature, dew point or pressure, by the log's keys."""
-    return watch.submit(Conditions(**values), because="conditions were entered")
+    return watch.submit(Conditions(**values))
 
 
 # The night

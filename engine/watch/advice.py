@@ -7,6 +7,7 @@ from dataclasses import dataclass
 from engine.log import NightState
 from engine.logbook import Caution
 
+
 @dataclass(frozen=True, slots=True)
 class CautionNow:
     """One caution: what is beyond its threshold, in a sentence."""
@@ -30,7 +31,9 @@ def cautions(state: NightState, caution: Caution) -> tuple[CautionNow, ...]:
         )
     if wind and wind.value > caution.wind_m_per_s:
         found.append(
-            CautionNow("wind", f"wind {wind.value:g} m/s, caution above {caution.wind_m_per_s:g} m/s")
+            CautionNow(
+                "wind", f"wind {wind.value:g} m/s, caution above {caution.wind_m_per_s:g} m/s"
+            )
         )
     if temperature and dew_point:
         margin_c = temperature.value - dew_point.value

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
@@ -88,30 +89,38 @@ def exposure_record(
         start_mjd=began.start_mjd,
         mid_mjd=middle_mjd,
         end_mjd=ending.end_mjd,
-        airmass_start=float(masses[0]),
-        airmass_mid=float(masses[1]),
-        airmass_end=float(masses[2]),
-        airmass_effective=float(effective_airmass(*masses)),
-        altitude_deg=float(where.altitude_deg[0, 1]),
-        azimuth_deg=float(where.azimuth_deg[0, 1]),
-        hour_angle_h=float(where.hour_angle_h[0, 1]),
-        moon_separation_deg=from_moon_deg,
-        moon_altitude_deg=float(the_moon.altitude_deg[1]),
-        moon_illumination=float(the_moon.illumination[1]),
-        image_size_arcsec=image.size_arcsec,
-        image_atmosphere_arcsec=image.terms.atmosphere,
-        image_diffraction_arcsec=image.terms.diffraction,
-        image_optics_arcsec=image.terms.optics,
-        image_tracking_arcsec=image.terms.tracking,
-        image_dispersion_arcsec=image.terms.dispersion,
-        image_sampling_arcsec=image.terms.sampling,
-        sky_mag_arcsec2=sky,
-        seeing_arcsec=seeing_arcsec,
+        airmass_start=_kept(masses[0]),
+        airmass_mid=_kept(masses[1]),
+        airmass_end=_kept(masses[2]),
+        airmass_effective=_kept(effective_airmass(*masses)),
+        altitude_deg=_kept(where.altitude_deg[0, 1]),
+        azimuth_deg=_kept(where.azimuth_deg[0, 1]),
+        hour_angle_h=_kept(where.hour_angle_h[0, 1]),
+        moon_separation_deg=_kept(from_moon_deg),
+        moon_altitude_deg=_kept(the_moon.altitude_deg[1]),
+        moon_illumination=_kept(the_moon.illumination[1]),
+        image_size_arcsec=_kept(image.size_arcsec),
+        image_atmosphere_arcsec=_kept(image.terms.atmosphere),
+        image_diffraction_arcsec=_kept(image.terms.diffraction),
+        image_optics_arcsec=_kept(image.terms.optics),
+        image_tracking_arcsec=_kept(image.terms.tracking),
+        image_dispersion_arcsec=_kept(image.terms.dispersion),
+        image_sampling_arcsec=_kept(image.terms.sampling),
+        sky_mag_arcsec2=_kept(sky),
+        seeing_arcsec=_kept(seeing_arcsec),
         frame=began.frame,
         outcome=ending.outcome,
-        credit=worth * min(exposed_s / began.seconds, 1.0),
+        credit=_kept(worth * min(exposed_s / began.seconds, 1.0)),
         why=ending.why,
     )
+
+
+def _kept(value: float) -> float | None:
+    """Return a number as the log keeps it: four places; None for what is not a number.
+
+    A target below the horizon has no airmass and no image: such keys are left out.
+    """
+    return round(float(value), 4) if math.isfinite(value) else None
 
 
 def credit_measured(planner: Planner, exposure: Exposure, measured_fwhm_arcsec: float) -> float:
@@ -121,7 +130,5 @@ def credit_measured(planner: Planner, exposure: Exposure, measured_fwhm_arcsec: 
     reference = Reference.of(observatory, planner.model, place)
     sky = exposure.sky_mag_arcsec2 or reference.sky_mag_arcsec2
     airmass_mid = exposure.airmass_mid or reference.airmass
-    worth = credit(
-        measured_fwhm_arcsec, sky, airmass_mid, observatory.filters[place], reference
-    )
-    return float(worth) * min(exposure.exposed_s / exposure.seconds, 1.0)
+    worth = credit(measured_fwhm_arcsec, sky, airmass_mid, observatory.filters[place], reference)
+    return round(float(worth) * min(exposure.exposed_s / exposure.seconds, 1.0), 4)

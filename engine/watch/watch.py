@@ -210,7 +210,7 @@ class Watch:
                 OrderProposed(
                     targets=tuple(visit.target for visit in ahead),
                     starts_mjd=tuple(visit.start_mjd for visit in ahead),
-                    value=plan.order.value,
+                    value=round(plan.order.value, 1),
                     why=plan.because,
                 )
             )

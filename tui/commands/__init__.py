@@ -7,6 +7,7 @@ work allows. It has one function, ``run(arguments) -> int``, that returns the ex
 from __future__ import annotations
 
 from dataclasses import dataclass, field
+from pathlib import Path
 from typing import Any
 
 
@@ -50,6 +51,11 @@ COMMANDS: tuple[Command, ...] = (
                 "play the whole night at once, without the console",
                 {"action": "store_true"},
             ),
+            Option(
+                "--into",
+                "play in this folder and keep it (a temporary one)",
+                {"type": Path, "metavar": "DIR"},
+            ),
             Option("--seed", "which invented weather", {"type": int, "default": 7}),
         ),
     ),
@@ -68,7 +74,6 @@ COMMANDS: tuple[Command, ...] = (
         takes_night=True,
         options=(
             Option("--seeing", "zenith seeing, arcsec at 500 nm", {"type": float}),
-            Option("--bound", "compute a proven upper limit too", {"action": "store_true"}),
         ),
     ),
 )

@@ -47,7 +47,9 @@ class Look:
 
     def theme(self) -> Theme:
         """Return the look as Textual's own widgets (palette, input, toast) take it."""
-        colour = {role: style.color.name if style.color else None for role, style in self.styles.items()}
+        colour = {
+            role: style.color.name if style.color else None for role, style in self.styles.items()
+        }
         return Theme(
             name=f"warmroom-{self.name}",
             primary=str(colour["accent"]),

@@ -66,6 +66,10 @@ class LiveList(Sheet, can_focus=True):
         """The key of the row under the cursor."""
         return self._key
 
+    def set_columns(self, columns: Sequence[Column]) -> None:
+        """Show other columns."""
+        self._columns = tuple(columns)
+
     def set_rows(self, rows: Sequence[Row]) -> None:
         """Show other rows; the cursor stays on its key if that is still there."""
         self._rows = list(rows)

@@ -92,7 +92,11 @@ def _moving(watch: Watch, width: int) -> list[Line]:
     there = watch.state.pointing
     name = there.target if there else ""
     return [
-        line(Span(" MOVING TO  ", "title"), Span(name, "strong"), Span("   space: on target", "accent")),
+        line(
+            Span(" MOVING TO  ", "title"),
+            Span(name, "strong"),
+            Span("   space: on target", "accent"),
+        ),
         *_proposal(watch, _next(watch), width)[:1],
     ]
 
@@ -136,7 +140,9 @@ def _large(watch: Watch, width: int) -> list[Line]:
     beside = (
         Span(f"   {exposing.filter}  {exposing.seconds:g} s{_number(watch)}", "strong"),
         Span(f"   {exposing.target}", "strong"),
-        Span(f"   ends {hhmm(watch, exposing.start_mjd + exposing.seconds / SECONDS_PER_DAY)}", "dim"),
+        Span(
+            f"   ends {hhmm(watch, exposing.start_mjd + exposing.seconds / SECONDS_PER_DAY)}", "dim"
+        ),
     )
     return [
         line(Span(" EXPOSING", "title")),

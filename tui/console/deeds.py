@@ -1,0 +1,219 @@
+"""What each action does: questions to the observer on one side, acts on the watch on the other."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from typing import TYPE_CHECKING
+
+from engine.errors import WarmroomError
+from engine.log import LOST_CAUSES
+from engine.logbook.text import one_line
+from engine.watch import Stage, Watch, acts
+from tui.console.read import number_between
+from tui.widgets import LiveList, Question
+
+if TYPE_CHECKING:
+    from tui.console.app import Console
+
+# Letter, word, the log's key, unit, least and greatest value that can be true.
+QUANTITIES = (
+    ("c", "cloud", "cloud_percent", "%", 0.0, 100.0),
+    ("w", "wind", "wind_m_per_s", "m/s", 0.0, 100.0),
+    ("h", "humidity", "humidity_percent", "%", 0.0, 100.0),
+    ("t", "temperature", "temperature_c", "°C", -60.0, 50.0),
+    ("d", "dew point", "dew_point_c", "°C", -80.0, 40.0),
+    ("p", "pressure", "pressure_hpa", "hPa", 400.0, 1100.0),
+)
+
+
+class Deeds:
+    """Does the actions of the table that concern the night."""
+
+    def __init__(self, console: Console, watch: Watch) -> None:
+        self._console = console
+        self._watch = watch
+
+    def do(self, name: str) -> None:
+        """Do an action by its name; WarmroomError when it can't be done now."""
+        deed: Callable[[], None] = getattr(self, name)
+        deed()
+
+    # The common round
+
+    def go_on(self) -> None:
+        """Do the next thing of the round."""
+        watch = self._watch
+        match watch.stage:
+            case Stage.IDLE:
+                self._accept()
+            case Stage.MOVING:
+                acts.arrive(watch)
+            case Stage.READY:
+                self._start_or_accept()
+            case Stage.LOST:
+                acts.end_lost(watch)
+            case Stage.CUT_OFF:
+                raise acts.NotNow("an exposure was cut off: K keeps it, L logs it as lost")
+            case _:
+                raise acts.NotNow("the run goes on by itself; s stops it")
+
+    def _accept(self) -> None:
+        plan = self._watch.plan
+        if plan is None:
+            raise acts.NotNow("the order is still being worked out")
+        now_mjd = self._watch.clock.now_mjd()
+        visit = next((v for v in plan.order.visits if v.end_mjd > now_mjd), None)
+        if visit is None:
+            raise acts.NotNow("nothing more can be observed tonight")
+        acts.point_at(self._watch, visit.target)
+
+    def _start_or_accept(self) -> None:
+        pointing = self._watch.state.pointing
+        plan = self._watch.plans().get(pointing.target, ()) if pointing else ()
+        if any(line.remaining for line in plan):
+            acts.start_run(self._watch, plan)
+        else:
+            self._accept()
+
+    def choose(self) -> None:
+        """Point at the target under the cursor."""
+        key = self._console.query_one("#list", LiveList).key
+        if key is None:
+            raise acts.NotNow("no target is under the cursor")
+        now = next((each for each in self._watch.targets_now() if each.target.name == key), None)
+        acts.point_at(self._watch, key)
+        if now is not None and now.reasons:
+            self._console.tell(f"{key}: {now.reasons[0].sentence}", "warn")
+
+    # Exposures
+
+    def stop(self) -> None:
+        """Stop the run."""
+        acts.stop(self._watch)
+
+    def reject(self) -> None:
+        """Reject the last exposure that counts, with a reason."""
+        self._ask("why is it rejected", _text(200), lambda why: acts.reject(self._watch, why))
+
+    def repeat(self) -> None:
+        """Repeat the last exposure."""
+        acts.repeat(self._watch)
+
+    def one_filter(self) -> None:
+        """Start a run in one filter of the plan."""
+        watch = self._watch
+        pointing = watch.state.pointing
+        plan = watch.plans().get(pointing.target, ()) if pointing else ()
+        left = [line for line in plan if line.remaining]
+        if watch.stage is not Stage.READY or not left:
+            raise acts.NotNow("the telescope is not on a target with something left of its plan")
+        choices = tuple((str(place), line.filter) for place, line in enumerate(left, start=1))
+        self._ask(
+            "which filter",
+            str,
+            lambda number: acts.start_run(watch, (left[int(number) - 1],)),
+            choices,
+        )
+
+    def keep_cut_off(self) -> None:
+        """Keep what was cut off."""
+        acts.keep_cut_off(self._watch)
+
+    def lose_cut_off(self) -> None:
+        """Lose what was cut off."""
+        acts.lose_cut_off(self._watch)
+
+    # Conditions
+
+    def measure(self) -> None:
+        """Type a measured FWHM."""
+        last = acts.last_exposure(self._watch)
+        if last is None or last.airmass_mid is None:
+            raise acts.NotNow("no exposure yet to measure; z enters the zenith seeing")
+        label = f"FWHM on {last.target} in {last.filter} at airmass {last.airmass_mid:.2f}, arcsec"
+        read = number_between(0.1, 30.0, "arcsec")
+        self._ask(label, read, lambda value: acts.measured_fwhm(self._watch, value))
+
+    def seeing(self) -> None:
+        """Type the zenith seeing."""
+        read = number_between(0.1, 20.0, "arcsec")
+        self._ask(
+            "seeing at the zenith, 500 nm, arcsec",
+            read,
+            lambda value: acts.zenith_seeing(self._watch, value),
+        )
+
+    def conditions(self) -> None:
+        """Choose a quantity, then type it."""
+        choices = tuple((letter, word) for letter, word, *_ in QUANTITIES)
+        self._ask("which", str, self._ask_quantity, choices)
+
+    def _ask_quantity(self, letter: str) -> None:
+        _, word, key, unit, least, greatest = next(q for q in QUANTITIES if q[0] == letter)
+        self._ask(
+            f"{word}, {unit}",
+            number_between(least, greatest, unit),
+            lambda value: acts.conditions(self._watch, **{key: value}),
+        )
+
+    # The night
+
+    def lost(self) -> None:
+        """Begin lost time with a cause, or end it."""
+        if self._watch.state.lost_since is not None:
+            acts.end_lost(self._watch)
+            return
+        letters = {cause.label[0]: cause.value for cause in LOST_CAUSES}
+        self._ask(
+            "time is lost to",
+            str,
+            lambda letter: acts.begin_lost(self._watch, letters[letter]),
+            tuple((cause.label[0], cause.label) for cause in LOST_CAUSES),
+        )
+
+    def note(self) -> None:
+        """Type a note."""
+        self._ask("note", _text(2000, least=1), lambda text: acts.note(self._watch, text))
+
+    def undo(self) -> None:
+        """Withdraw the last entry."""
+        _, what = acts.undo(self._watch)
+        self._console.tell(f"withdrawn: {what}", "now")
+
+    def find(self) -> None:
+        """Type what names to show."""
+
+        def show(text: str) -> None:
+            self._console.find_text = text
+
+        self._ask("show targets with", _text(80), show)
+
+    def _ask(
+        self,
+        label: str,
+        read: Callable[[str], object],
+        then: Callable[..., object],
+        choices: tuple[tuple[str, str], ...] = (),
+    ) -> None:
+        """Ask, then act; an act that can't be done is told, like any other."""
+
+        def act(value: object) -> None:
+            try:
+                then(value)
+            except WarmroomError as error:
+                self._console.tell(str(error), "warn")
+            self._console.after_deed()
+
+        self._console.ask(Question(label, read, act, choices))
+
+
+def _text(length: int, least: int = 0) -> Callable[[str], str]:
+    """Return a reader of one line of text."""
+
+    def read(text: str) -> str:
+        cleaned = one_line(text, length)
+        if len(cleaned) < least:
+            raise ValueError("expected some text; escape leaves")
+        return cleaned
+
+    return read

@@ -1,0 +1,96 @@
+"""What every panel shows, from the watch: the only place where panels meet widgets."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+from engine.watch import Watch, cautions
+from tui.console.actions import ACTIONS, cap
+from tui.console.panels.head import paint_head
+from tui.console.panels.night import paint_night
+from tui.console.panels.record import paint_log, paint_order
+from tui.console.panels.target import paint_target
+from tui.console.panels.targets import COLUMNS, target_rows
+from tui.console.panels.under_way import go_on_label, paint_under_way
+from tui.paint.spans import Line
+from tui.widgets import LiveList
+
+if TYPE_CHECKING:
+    from tui.console.app import Console
+
+
+class View:
+    """Paints the console from its watch. Keeps nothing of the night."""
+
+    def __init__(self, console: Console, watch: Watch) -> None:
+        self._console = console
+        self._watch = watch
+        self._told: set[str] = set()
+
+    @property
+    def _list(self) -> LiveList:
+        return self._console.screen_stack[0].query_one("#list", LiveList)
+
+    def prepare(self) -> None:
+        """Give the list its columns."""
+        self._list.set_columns(COLUMNS)
+
+    def paint(self) -> None:
+        """Show everything as it is now."""
+        console, watch = self._console, self._watch
+        for name, painted in (("head", paint_head), ("night", paint_night)):
+            sheet = console.sheet(name)
+            sheet.show(painted(watch, sheet.size.width))
+        under_way = console.sheet("under-way")
+        under_way.show(paint_under_way(watch, under_way.size.width, under_way.size.height))
+        self._arrange()
+        self._list.set_rows(target_rows(watch, console.find_text))
+        if console.is_wide:
+            self._paint_panel("card", "target")
+        if console.panel != "list":
+            self._paint_panel("panel", console.panel)
+        self._tell_cautions()
+        self.paint_foot()
+
+    def paint_foot(self) -> None:
+        """Show the keys, the common one with what it does now."""
+        from tui.console.app import foot_line
+
+        label = {"go_on": go_on_label(self._watch)}
+        keys = [(cap(a.keys[0]), label.get(a.name, a.label)) for a in ACTIONS if a.in_footer]
+        self._console.sheet("foot").show([foot_line(keys)])
+
+    def _arrange(self) -> None:
+        """Show list and panels side by side where there is room, else one in place of the other."""
+        console = self._console
+        side = console.screen_stack[0].query_one("#side")
+        if console.is_wide:
+            self._list.display = side.display = True
+            console.sheet("card").display = True
+            return
+        self._list.display = console.panel == "list"
+        side.display = console.panel != "list"
+        console.sheet("card").display = False
+
+    def _paint_panel(self, sheet_name: str, panel: str) -> None:
+        sheet = self._console.sheet(sheet_name)
+        width, height = sheet.size
+        sheet.show(self._panel(panel, width, height))
+
+    def _panel(self, panel: str, width: int, height: int) -> list[Line]:
+        match panel:
+            case "target":
+                return paint_target(self._watch, self._list.key, width, height)
+            case "order":
+                return paint_order(self._watch, width, height)
+            case _:
+                return paint_log(self._watch, width, height)
+
+    def _tell_cautions(self) -> None:
+        """Tell each caution once while it lasts; the observatory's own rules decide."""
+        standing = cautions(self._watch.state, self._watch.planner.logbook.observatory.caution)
+        for each in standing:
+            if each.code not in self._told:
+                self._console.tell(f"CAUTION {each.sentence}", "bad")
+                self._console.bell()
+        self._told = {each.code for each in standing}
