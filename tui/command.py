@@ -18,11 +18,9 @@ from typing import TypeVar
 
 from engine.errors import WarmroomError
 from engine.times import mjd_from_iso
-from tui.commands import COMMANDS, Command
+from tui.commands import COMMANDS, LOOK, Command, Option
 
 T = TypeVar("T")
-
-LOOKS = ("night", "red", "day", "mono")
 
 
 def main(words: Sequence[str] | None = None) -> int:
@@ -56,7 +54,7 @@ def _parser() -> argparse.ArgumentParser:
     parser.add_argument(
         "--observer", action="append", default=[], help="who is observing; may be repeated"
     )
-    parser.add_argument("--look", choices=LOOKS, default="night", help="the console's colours")
+    _add_option(parser, LOOK)
     parser.set_defaults(module="tui.console")
     below = parser.add_subparsers(title="commands", metavar="")
     for command in COMMANDS:
@@ -85,7 +83,11 @@ def _add_command(parser: argparse.ArgumentParser, command: Command) -> None:
             help="the night, by the local date of its evening (tonight)",
         )
     for option in command.options:
-        parser.add_argument(option.flag, help=option.help, **option.settings)
+        _add_option(parser, option)
+
+
+def _add_option(parser: argparse.ArgumentParser, option: Option) -> None:
+    parser.add_argument(option.flag, help=option.help, **option.settings)
 
 
 def _add_logbook(parser: argparse.ArgumentParser, default: object) -> None:

@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import numpy as np
 
+from engine.errors import WarmroomError
 from engine.log import Exposure
 from engine.rehearsal.weather import InventedNight
 from engine.times import MINUTES_PER_DAY, SECONDS_PER_DAY
@@ -94,7 +95,7 @@ class Player:
         measured = round(size * float(np.exp(self._chance.normal(0.0, MEASUREMENT_SCATTER_LN))), 2)
         try:
             acts.measured_fwhm(watch, measured)
-        except acts.NotNow:
+        except WarmroomError:
             # Sharper than the optics allow: the scatter of a measurement; an observer shrugs.
             return []
         return [f'measured {measured:.2f}" in {last.filter} on {last.target}']

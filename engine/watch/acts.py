@@ -5,8 +5,6 @@ An act that makes no sense at this stage raises `NotNow` and changes nothing.
 
 from __future__ import annotations
 
-import math
-
 from engine.errors import WarmroomError
 from engine.log import (
     Amendment,
@@ -167,17 +165,14 @@ def zenith_seeing(watch: Watch, arcsec: float) -> Event:
 def measured_fwhm(watch: Watch, arcsec: float) -> Event:
     """Enter the FWHM (arcsec) measured on the last exposure; the zenith seeing follows from it.
 
-    The exposure gets the value, and its credit is worked out again with it.
+    The exposure gets the value, and its credit is worked out again with it. NoAnswer when the
+    telescope and camera alone can't give an image so sharp.
     """
     last = watch.state.exposures[-1] if watch.state.exposures else None
     if last is None or last.airmass_mid is None:
         raise NotNow("no exposure yet to have measured it on; type the zenith seeing instead")
     place = watch.planner.logbook.observatory.filter_index(last.filter)
     zenith = watch.planner.model.zenith_seeing_arcsec(place, arcsec, last.airmass_mid)
-    if not math.isfinite(zenith):
-        raise NotNow(
-            f'{arcsec:g}" in {last.filter} is sharper than the telescope and camera alone can give'
-        )
     event = watch.submit(
         Conditions(
             seeing_arcsec=round(zenith, 3),

@@ -12,6 +12,7 @@ from engine.watch.plan import Plan
 # Changes smaller than these are not news: common practice, no source.
 SEEING_SHARE = 0.03
 MOVED_MIN = 20.0
+SOON_MIN = 150.0
 SAID_AT_MOST = 6
 
 
@@ -91,6 +92,8 @@ def _moved(night: Night, before: Order, after: Order) -> list[str]:
     for visit in after.visits:
         old = was.get(visit.target)
         if old is None or abs(visit.start_mjd - old) * MINUTES_PER_DAY < MOVED_MIN:
+            continue
+        if (visit.start_mjd - after.from_mjd) * MINUTES_PER_DAY > SOON_MIN:
             continue
         moment = datetime_from_mjd(visit.start_mjd).astimezone(zone)
         moved.append(f"{visit.target} to {moment:%H:%M}")

@@ -3,12 +3,12 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, fields
 from typing import TYPE_CHECKING
 
 import numpy as np
 
-from engine.image import ImageModel
+from engine.image import ImageModel, ImageSize, Terms
 from engine.light import MoonLight, Reference, credit, sky_mag_arcsec2
 from engine.log import Exposure, OpenExposure
 from engine.night import Night
@@ -74,7 +74,7 @@ def exposure_record(
             ),
         )
     )
-    image = model.breakdown(place, seeing_arcsec, float(masses[1]))
+    image = _image(model, place, seeing_arcsec, float(masses[1]))
     exposed_s = (ending.end_mjd - began.start_mjd) * SECONDS_PER_DAY
     reference = Reference.of(night.observatory, model, place)
     worth = float(credit(image.size_arcsec, sky, float(masses[1]), filter_, reference))
@@ -113,6 +113,14 @@ def exposure_record(
         credit=_kept(worth * min(exposed_s / began.seconds, 1.0)),
         why=ending.why,
     )
+
+
+def _image(model: ImageModel, place: int, seeing_arcsec: float, airmass_mid: float) -> ImageSize:
+    """Return the predicted image; one of NaNs for a target below the horizon, which has none."""
+    if math.isfinite(airmass_mid):
+        return model.breakdown(place, seeing_arcsec, airmass_mid)
+    nothing = Terms(*[math.nan] * len(fields(Terms)))
+    return ImageSize(math.nan, math.nan, math.nan, nothing, nothing, False)
 
 
 def _kept(value: float) -> float | None:

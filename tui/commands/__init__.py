@@ -37,6 +37,13 @@ class Command:
         return f"tui.commands.{self.name}"
 
 
+# The console's looks by name; `tui.look` holds them, but brings Textual along.
+LOOK = Option(
+    "--look",
+    "the console's colours",
+    {"choices": ("night", "red", "day", "mono"), "default": "night"},
+)
+
 COMMANDS: tuple[Command, ...] = (
     Command(
         "demo",
@@ -56,6 +63,7 @@ COMMANDS: tuple[Command, ...] = (
                 "play in this folder and keep it (a temporary one)",
                 {"type": Path, "metavar": "DIR"},
             ),
+            LOOK,
             Option("--seed", "which invented weather", {"type": int, "default": 7}),
         ),
     ),
@@ -72,8 +80,6 @@ COMMANDS: tuple[Command, ...] = (
         "print the proposed order for the rest of the night",
         takes_moment=True,
         takes_night=True,
-        options=(
-            Option("--seeing", "zenith seeing, arcsec at 500 nm", {"type": float}),
-        ),
+        options=(Option("--seeing", "zenith seeing, arcsec at 500 nm", {"type": float}),),
     ),
 )

@@ -3,9 +3,12 @@
 from __future__ import annotations
 
 import argparse
+import math
 from collections.abc import Sequence
+from dataclasses import fields
 from typing import Any
 
+from engine.image import Terms
 from engine.logbook import load_logbook
 from engine.night import FilterNow, Night, TargetNow
 from engine.positions import earth_table_note, sidereal_time_h
@@ -64,20 +67,16 @@ def _target_as_json(seen: Snapshot, now: TargetNow) -> dict[str, Any]:
 
 
 def _filter_as_json(seen: Snapshot, now: TargetNow, one: FilterNow) -> dict[str, Any]:
-    image = seen.model.breakdown(one.filter_index, seen.seeing_arcsec, now.airmass)
-    terms = image.terms
+    # Below the horizon there is no image; its keys stay, with null.
+    up = math.isfinite(now.airmass)
+    image = seen.model.breakdown(one.filter_index, seen.seeing_arcsec, now.airmass) if up else None
     return {
         "filter": one.progress.filter,
-        "image_size_arcsec": image.size_arcsec,
-        "image_size_px": image.size_px,
-        "elongation": image.elongation,
+        "image_size_arcsec": image.size_arcsec if image else None,
+        "image_size_px": image.size_px if image else None,
+        "elongation": image.elongation if image else None,
         "terms_arcsec": {
-            "atmosphere": terms.atmosphere,
-            "diffraction": terms.diffraction,
-            "optics": terms.optics,
-            "tracking": terms.tracking,
-            "dispersion": terms.dispersion,
-            "sampling": terms.sampling,
+            each.name: getattr(image.terms, each.name) if image else None for each in fields(Terms)
         },
         "sky_mag_arcsec2": one.sky_mag_arcsec2,
         "planned": one.progress.planned,

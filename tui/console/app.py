@@ -67,16 +67,23 @@ class Console(App[None]):
     #notices { height: 1; }
     #foot { height: 1; }
     .wide #under-way { height: 6; }
-    .wide #side { display: block; width: 72; padding-left: 1; }
+    .wide #side { display: block; width: 62; padding-left: 1; }
     .wide #card { height: 27; }
     .wide #notices { height: 3; }
     """
     BINDINGS = [  # noqa: RUF012 - Textual declares it so
         *(
-            Binding(",".join(a.keys), f"do('{a.name}')", a.label, id=a.name, show=False)
+            # Textual itself moves the focus with tab, hence the priority there.
+            Binding(
+                ",".join(a.keys),
+                f"do('{a.name}')",
+                a.label,
+                id=a.name,
+                show=False,
+                priority="tab" in a.keys,
+            )
             for a in ACTIONS
         ),
-        Binding("shift+tab", "do('next_panel')", show=False),
         Binding("escape", "put_aside", show=False),
         Binding("ctrl+q", "do('leave')", show=False, priority=True),
     ]

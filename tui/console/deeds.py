@@ -9,6 +9,7 @@ from engine.errors import WarmroomError
 from engine.log import LOST_CAUSES
 from engine.logbook.text import one_line
 from engine.watch import Stage, Watch, acts
+from tui.console.panels.local import ahead
 from tui.console.read import number_between
 from tui.widgets import LiveList, Question
 
@@ -58,14 +59,12 @@ class Deeds:
                 raise acts.NotNow("the run goes on by itself; s stops it")
 
     def _accept(self) -> None:
-        plan = self._watch.plan
-        if plan is None:
+        if self._watch.plan is None:
             raise acts.NotNow("the order is still being worked out")
-        now_mjd = self._watch.clock.now_mjd()
-        visit = next((v for v in plan.order.visits if v.end_mjd > now_mjd), None)
-        if visit is None:
+        visits = ahead(self._watch)
+        if not visits:
             raise acts.NotNow("nothing more can be observed tonight")
-        acts.point_at(self._watch, visit.target)
+        acts.point_at(self._watch, visits[0].target)
 
     def _start_or_accept(self) -> None:
         pointing = self._watch.state.pointing

@@ -26,6 +26,7 @@ class View:
         self._console = console
         self._watch = watch
         self._told: set[str] = set()
+        self._pointing_n = 0
 
     @property
     def _list(self) -> LiveList:
@@ -45,12 +46,20 @@ class View:
         under_way.show(paint_under_way(watch, under_way.size.width, under_way.size.height))
         self._arrange()
         self._list.set_rows(target_rows(watch, console.find_text))
+        self._follow_the_telescope()
         if console.is_wide:
             self._paint_panel("card", "target")
         if console.panel != "list":
             self._paint_panel("panel", console.panel)
         self._tell_cautions()
         self.paint_foot()
+
+    def _follow_the_telescope(self) -> None:
+        """Put the cursor on the target the telescope was just sent to."""
+        pointing = self._watch.state.pointing
+        if pointing is not None and pointing.n != self._pointing_n:
+            self._pointing_n = pointing.n
+            self._list.move_to(pointing.target)
 
     def paint_foot(self) -> None:
         """Show the keys, the common one with what it does now."""

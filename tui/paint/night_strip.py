@@ -119,10 +119,17 @@ def _plan(strip: NightStrip, columns: int, now: int) -> list[Span]:
     for number, block in enumerate(strip.planned):
         role = strip.roles[number % 2]
         begin, end = _columns_of(block, strip, columns)
-        text = fitted(f" {block.label}", end - begin) if end - begin > 3 else " " * (end - begin)
+        text = _label(block.label, end - begin)
         for offset, character in enumerate(text):
             cells[begin + offset] = Span(character, role)
     return _with_now(cells, now, over=False)
+
+
+def _label(label: str, width: int) -> str:
+    """Return a block's label in so many cells: whole, else its first word, else nothing."""
+    first = label.split(" ")[0]
+    text = label if len(label) < width else first if len(first) < width else ""
+    return fitted(f" {text}" if width > len(text) + 1 else text, width)
 
 
 def _done(strip: NightStrip, columns: int, now: int) -> list[Span]:

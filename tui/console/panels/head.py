@@ -49,7 +49,7 @@ def _seeing(watch: Watch) -> Line:
     forecast = watch.plan.forecast
     median, low, high = (float(value) for value in forecast.at(now_mjd))
     age_min = forecast.age_min + (now_mjd - forecast.now_mjd) * 1440.0
-    source = ago(age_min) if forecast.measured else "usual here, not measured"
+    source = ago(age_min) if forecast.measured else "usual here"
     return line(
         Span("seeing ", "dim"),
         Span(f'{median:.2f}"', "strong"),

@@ -6,6 +6,7 @@ import math
 from datetime import datetime
 from zoneinfo import ZoneInfo
 
+from engine.order import Visit
 from engine.times import datetime_from_mjd
 from engine.watch import Watch
 
@@ -14,6 +15,13 @@ def local(watch: Watch, mjd: float) -> datetime:
     """Return a moment (UTC MJD) in the site's own time."""
     zone = ZoneInfo(watch.planner.logbook.observatory.site.timezone)
     return datetime_from_mjd(mjd).astimezone(zone)
+
+
+def ahead(watch: Watch) -> tuple[Visit, ...]:
+    """Return the visits of the order that are not over, in turn."""
+    now_mjd = watch.clock.now_mjd()
+    visits = watch.plan.order.visits if watch.plan else ()
+    return tuple(visit for visit in visits if visit.end_mjd > now_mjd)
 
 
 def hhmm(watch: Watch, mjd: float) -> str:

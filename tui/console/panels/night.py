@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 
 from engine.watch import Watch
-from tui.console.panels.local import local
+from tui.console.panels.local import ahead, local
 from tui.paint.night_strip import Block, NightStrip, paint_strip
 from tui.paint.spans import Line
 
@@ -36,9 +36,10 @@ def paint_night(watch: Watch, width: int) -> list[Line]:
         sun_deg=sun_deg,
         moon_deg=moon_deg,
         planned=tuple(
-            Block(hour(max(visit.start_mjd, now_mjd)), hour(visit.end_mjd), visit.target)
-            for visit in (watch.plan.order.visits if watch.plan else ())
-            if visit.end_mjd > now_mjd
+            Block(
+                hour(max(visit.start_mjd, now_mjd)), hour(visit.end_mjd), f"{number} {visit.target}"
+            )
+            for number, visit in enumerate(ahead(watch), start=1)
         ),
         done=tuple(
             Block(hour(each.start_mjd), hour(each.end_mjd), *_outcome(each.outcome))

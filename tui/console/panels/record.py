@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from engine.log import Event, title
 from engine.watch import Watch
-from tui.console.panels.local import arcsec, hhmm, local
+from tui.console.panels.local import ahead, arcsec, hhmm, local
 from tui.paint.spans import Line, Span, cut, line
 
 # What the console writes by itself and what every exposure says twice: not worth a line here.
@@ -15,10 +15,8 @@ def paint_order(watch: Watch, width: int, height: int) -> list[Line]:
     """Return the order from now on: when, what, how soft, why."""
     if watch.plan is None:
         return []
-    now_mjd = watch.clock.now_mjd()
-    visits = [visit for visit in watch.plan.order.visits if visit.end_mjd > now_mjd]
     lines = [line(Span(" the order ahead", "title"), Span(f"  {watch.plan.because}", "dim"))]
-    for number, visit in enumerate(visits, start=1):
+    for number, visit in enumerate(ahead(watch), start=1):
         what = " ".join(f"{e.filter}×{e.count}" for e in visit.exposures)
         lines.append(
             line(

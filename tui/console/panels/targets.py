@@ -6,7 +6,7 @@ import math
 
 from engine.night import TargetNow
 from engine.watch import Watch
-from tui.console.panels.local import hhmm
+from tui.console.panels.local import ahead, hhmm
 from tui.paint.figures import pips
 from tui.paint.spans import Span
 from tui.widgets import Column, Row
@@ -35,13 +35,9 @@ def target_rows(watch: Watch, text: str) -> list[Row]:
     seen = [each for each in watch.targets_now() if _matches(each, text)]
     if watch.plan is None:
         return []
-    now_mjd = watch.clock.now_mjd()
-    begins = {
-        visit.target: (number, visit.start_mjd)
-        for number, visit in reversed(
-            list(enumerate((v for v in watch.plan.order.visits if v.end_mjd > now_mjd), start=1))
-        )
-    }
+    # A target with two visits shows its first: the later ones are set before it.
+    numbered = list(enumerate(ahead(watch), start=1))
+    begins = {visit.target: (number, visit.start_mjd) for number, visit in reversed(numbered)}
     planned = sorted(
         (each for each in seen if each.target.name in begins),
         key=lambda each: begins[each.target.name][0],
@@ -76,7 +72,7 @@ def _row(watch: Watch, now: TargetNow, begins: tuple[int, float] | None) -> Row:
         (
             _mark(watch, name, begins),
             Span(name, "strong" if begins and begins[0] == 1 else role),
-            Span(hhmm(watch, begins[1]) if begins else "", "planned" if begins else "dim"),
+            Span(hhmm(watch, begins[1]) if begins else "", "text" if begins else "dim"),
             Span(f"{now.apparent_altitude_deg:.0f}°", role),
             Span(f"{now.airmass:.2f}" if math.isfinite(now.airmass) else "-", role),
             Span(f"{now.hour_angle_h:+.1f}h", role),

@@ -7,9 +7,12 @@ from collections.abc import Callable
 from engine.order import Visit
 from engine.times import MINUTES_PER_DAY, SECONDS_PER_DAY
 from engine.watch import Stage, Watch
-from tui.console.panels.local import arcsec, hhmm
+from tui.console.panels.local import ahead, arcsec, hhmm
 from tui.paint.figures import bar, large, minutes_seconds
 from tui.paint.spans import Line, Span, cut, line, wrapped
+
+# Title, three rows of figures, the bar, and what is next.
+LARGE_ROWS = 6
 
 Painter = Callable[[Watch, int], list[Line]]
 
@@ -20,7 +23,7 @@ def paint_under_way(watch: Watch, width: int, height: int) -> list[Line]:
         return [line(Span(" working out the night ...", "dim"))]
     painter = _PAINTERS[watch.stage]
     lines = painter(watch, width)
-    if watch.stage is Stage.EXPOSING and height >= 7:
+    if watch.stage is Stage.EXPOSING and height >= LARGE_ROWS:
         lines = _large(watch, width)
     return [cut(each, width) for each in lines[:height]]
 
@@ -74,14 +77,9 @@ def _first_start(visit: Visit) -> float:
 
 def _next(watch: Watch) -> Visit | None:
     """Return the visit that comes after what is under way."""
-    if watch.plan is None:
-        return None
     here = watch.state.pointing.target if watch.state.pointing else None
     busy = watch.stage in (Stage.EXPOSING, Stage.BETWEEN, Stage.MOVING, Stage.READY)
-    for visit in watch.plan.order.visits:
-        if visit.end_mjd > watch.clock.now_mjd() and not (busy and visit.target == here):
-            return visit
-    return None
+    return next((v for v in ahead(watch) if not (busy and v.target == here)), None)
 
 
 def _idle(watch: Watch, width: int) -> list[Line]:
