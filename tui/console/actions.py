@@ -18,7 +18,7 @@ class Action:
     label: str
     sentence: str
     group: str
-    in_footer: bool = False
+    footer: int = 0  # its place in the footer, from 1; 0 for none
 
 
 GROUPS = ("the common round", "exposures", "conditions", "the night", "the screen")
@@ -30,7 +30,7 @@ ACTIONS: tuple[Action, ...] = (
         "go on",
         "Do the next thing: accept the proposal, say 'on target', start the run.",
         GROUPS[0],
-        in_footer=True,
+        footer=1,
     ),
     Action(
         "choose",
@@ -38,7 +38,7 @@ ACTIONS: tuple[Action, ...] = (
         "choose",
         "Take the target under the cursor instead of the proposed one.",
         GROUPS[0],
-        in_footer=True,
+        footer=4,
     ),
     Action(
         "measure",
@@ -46,16 +46,16 @@ ACTIONS: tuple[Action, ...] = (
         "FWHM",
         "Type the FWHM measured on the last frame; the zenith seeing follows from it.",
         GROUPS[0],
-        in_footer=True,
+        footer=5,
     ),
-    Action("stop", ("s",), "stop", "End the exposure and the run now.", GROUPS[1], in_footer=True),
+    Action("stop", ("s",), "stop", "End the exposure and the run now.", GROUPS[1], footer=6),
     Action(
         "reject",
         ("x",),
         "reject",
         "Reject the last exposure; it comes back on the plan.",
         GROUPS[1],
-        in_footer=True,
+        footer=11,
     ),
     Action("repeat", ("r",), "repeat", "Take the last exposure once more.", GROUPS[1]),
     Action(
@@ -86,7 +86,7 @@ ACTIONS: tuple[Action, ...] = (
         "conditions",
         "Type cloud, wind, humidity, temperature, dew point or pressure.",
         GROUPS[2],
-        in_footer=True,
+        footer=7,
     ),
     Action(
         "lost",
@@ -94,16 +94,16 @@ ACTIONS: tuple[Action, ...] = (
         "lost time",
         "Begin lost time with its cause, or end it.",
         GROUPS[3],
-        in_footer=True,
+        footer=8,
     ),
-    Action("note", ("n",), "note", "Write a note into the log.", GROUPS[3], in_footer=True),
+    Action("note", ("n",), "note", "Write a note into the log.", GROUPS[3], footer=9),
     Action(
         "undo",
         ("u",),
         "undo",
         "Withdraw the last entry; the log keeps both.",
         GROUPS[3],
-        in_footer=True,
+        footer=10,
     ),
     Action(
         "next_panel",
@@ -111,7 +111,7 @@ ACTIONS: tuple[Action, ...] = (
         "panel",
         "Show the next panel: target, order, log.",
         GROUPS[4],
-        in_footer=True,
+        footer=3,
     ),
     Action(
         "find",
@@ -121,7 +121,7 @@ ACTIONS: tuple[Action, ...] = (
         GROUPS[4],
     ),
     Action("next_look", ("v",), "look", "Change the colours: night, red, day, mono.", GROUPS[4]),
-    Action("help", ("question_mark", "f1"), "help", "Show every key.", GROUPS[4], in_footer=True),
+    Action("help", ("question_mark", "f1"), "help", "Show every key.", GROUPS[4], footer=2),
     Action("leave", ("q",), "leave", "Leave the console; the log keeps the night.", GROUPS[4]),
 )
 
@@ -134,6 +134,11 @@ _CAPS = {"question_mark": "?", "slash": "/", "space": "space", "enter": "enter",
 def action_named(name: str) -> Action:
     """Return the action with a name; KeyError for an unknown one."""
     return _BY_NAME[name]
+
+
+def footer_actions() -> list[Action]:
+    """Return the actions of the footer in its order: what is needed first, what may be cut last."""
+    return sorted((a for a in ACTIONS if a.footer), key=lambda action: action.footer)
 
 
 def cap(key: str) -> str:

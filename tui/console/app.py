@@ -21,7 +21,7 @@ from textual.screen import Screen
 from textual.worker import Worker, WorkerState
 
 from engine.errors import WarmroomError
-from tui.console.actions import ACTIONS, cap
+from tui.console.actions import ACTIONS, cap, footer_actions
 from tui.console.help import HelpScreen
 from tui.look import LOOKS, CleanFilter, MonoFilter, RedFilter
 from tui.paint.spans import Line, Span, cut, line
@@ -367,7 +367,7 @@ class Console(App[None]):
         if self._view is not None:
             self._view.paint_foot()
             return
-        keys = [(cap(a.keys[0]), a.label) for a in ACTIONS if a.in_footer]
+        keys = [(cap(a.keys[0]), a.label) for a in footer_actions()]
         self.sheet("foot").show([foot_line(keys)])
 
     def get_system_commands(self, screen: Screen[object]) -> Iterable[SystemCommand]:

@@ -5,7 +5,7 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from engine.watch import Watch, cautions
-from tui.console.actions import ACTIONS, cap
+from tui.console.actions import cap, footer_actions
 from tui.console.panels.head import paint_head
 from tui.console.panels.night import paint_night
 from tui.console.panels.record import paint_log, paint_order
@@ -66,7 +66,7 @@ class View:
         from tui.console.app import foot_line
 
         label = {"go_on": go_on_label(self._watch)}
-        keys = [(cap(a.keys[0]), label.get(a.name, a.label)) for a in ACTIONS if a.in_footer]
+        keys = [(cap(a.keys[0]), label.get(a.name, a.label)) for a in footer_actions()]
         self._console.sheet("foot").show([foot_line(keys)])
 
     def _arrange(self) -> None:

@@ -126,10 +126,10 @@ def _plan(strip: NightStrip, columns: int, now: int) -> list[Span]:
 
 
 def _label(label: str, width: int) -> str:
-    """Return a block's label in so many cells: whole, else its first word, else nothing."""
+    """Return a block in so many cells: its edge, then its label whole, or its first word."""
     first = label.split(" ")[0]
     text = label if len(label) < width else first if len(first) < width else ""
-    return fitted(f" {text}" if width > len(text) + 1 else text, width)
+    return fitted(f"▏{text}", width)
 
 
 def _done(strip: NightStrip, columns: int, now: int) -> list[Span]:
