@@ -110,8 +110,8 @@ def moon_scattering(separation_deg: ArrayLike, wavelength_nm: float = V_WAVELENG
     """Return the scattering function of moonlight at an angle (deg) from the Moon.
 
     f = 10^5.36 (1.06 + cos^2 rho) + 10^(6.15 - rho/40), and 6.2e7 / rho^2 for the second term
-    closer than 10 deg (Krisciunas & Schaefer 1991, eqs. 16, 18, 19, 21; the branch from memory). The
-    first term is the gas, the second the haze; away from V each is scaled by its power of the
+    closer than 10 deg (Krisciunas & Schaefer 1991, eqs. 16, 18, 19, 21; the branch from memory).
+    The first term is the gas, the second the haze; away from V each is scaled by its power of the
     wavelength.
     """
     rho = np.asarray(separation_deg, dtype=float)

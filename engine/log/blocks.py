@@ -12,6 +12,7 @@ import tomllib
 import zlib
 from dataclasses import dataclass
 from datetime import date, datetime
+from itertools import pairwise
 from typing import Any
 
 import tomli_w
@@ -110,7 +111,7 @@ def split_blocks(data: bytes, offset: int = 0, line: int = 1) -> list[Block]:
     if data[: edges[0]].strip():
         blocks.append(Block("", None, False, False, line, offset, data[: edges[0]]))
     at_line = line + data[: edges[0]].count(b"\n")
-    for begin, end in zip(edges[:-1], edges[1:], strict=True):
+    for begin, end in pairwise(edges):
         raw = data[begin:end]
         blocks.append(_block(raw, at_line, offset + begin))
         at_line += raw.count(b"\n")

@@ -1,4 +1,4 @@
-"""The few calls by which the log touches the disk, in one place so that tests can make them fail."""
+"""The few calls by which the log touches the disk: in one place, so that tests can fail them."""
 
 from __future__ import annotations
 

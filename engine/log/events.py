@@ -13,7 +13,6 @@ import types
 import typing
 from dataclasses import MISSING, dataclass, field, fields, replace
 from datetime import datetime
-from functools import cache
 from typing import Any, ClassVar, Self
 
 from engine.log.blocks import Value
@@ -299,8 +298,7 @@ class Key:
     required: bool
 
 
-@cache
-def keys_of(kind: type[Event]) -> tuple[Key, ...]:
+def _keys_of(kind: type[Event]) -> tuple[Key, ...]:
     """Return the key table of a kind, in the order in which the keys are written."""
     hints = typing.get_type_hints(kind)
     table = []
@@ -321,12 +319,15 @@ def keys_of(kind: type[Event]) -> tuple[Key, ...]:
     return tuple(table)
 
 
+KEYS: dict[str, tuple[Key, ...]] = {name: _keys_of(kind) for name, kind in KINDS.items()}
+
+
 def to_values(event: Event) -> tuple[str, dict[str, Value]]:
     """Return an event's kind and its keys and values as they stand in the file."""
     if isinstance(event, Foreign):
         return event.kind_in_file, {"n": event.n, "t": _moment(event.t_mjd), **event.extra}
     values: dict[str, Value] = {}
-    for key in keys_of(type(event)):
+    for key in KEYS[event.kind]:
         value = getattr(event, key.field)
         empty = value is None or value is False or (isinstance(value, str | tuple) and not value)
         if empty and not key.required:
@@ -355,7 +356,7 @@ def from_values(kind: str, values: dict[str, Value]) -> Event:
     wrong type, comes back as `Foreign` with the complaint.
     """
     n, t = values.get("n"), values.get("t")
-    stamp = {
+    stamp: dict[str, Any] = {
         "n": n if isinstance(n, int) and not isinstance(n, bool) else 0,
         "t_mjd": mjd_from_datetime(t) if isinstance(t, datetime) and t.tzinfo else math.nan,
     }
@@ -365,7 +366,7 @@ def from_values(kind: str, values: dict[str, Value]) -> Event:
         return Foreign(**stamp, kind_in_file=kind, complaint="unknown kind", extra=said)
     arguments: dict[str, Any] = {}
     rest = dict(said)
-    for key in keys_of(made):
+    for key in KEYS[kind]:
         if key.name in ("n", "t"):
             continue
         if key.name in rest:
@@ -392,6 +393,8 @@ def _read(value: Value, key: Key) -> Any:
 def _read_one(value: Any, key: Key) -> Any:
     if not isinstance(value, key.types) or (isinstance(value, bool) and bool not in key.types):
         return None
-    if key.is_time:
+    if isinstance(value, datetime):
         return mjd_from_datetime(value) if value.tzinfo else None
-    return float(value) if float in key.types else value
+    if isinstance(value, int) and float in key.types:
+        return float(value)
+    return value

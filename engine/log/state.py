@@ -31,8 +31,8 @@ from engine.log.events import (
 
 OpenExposure = ExposureStart
 
-# What `undo` reaches for: entries of the observer, not what the console wrote by itself. An exposure
-# that was taken can't be made not to have been; it is rejected, and that can be undone.
+# What `undo` reaches for: entries of the observer, not what the console wrote by itself. An
+# exposure that was taken can't be undone; it is rejected, and that can be.
 UNDOABLE = (Amendment, Conditions, LostTime, Note, Override, Pointing, RunStart)
 
 

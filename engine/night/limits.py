@@ -62,7 +62,8 @@ def _own(targets: tuple[Target, ...], name: str, otherwise: float) -> NDArray[np
 
 def _any_filter_dark(night: Night, target: Target) -> Mask:
     wheel = night.observatory
-    return night.dark[[wheel.filter_index(each.filter) for each in target.exposures]].any(axis=0)
+    places = [wheel.filter_index(each.filter) for each in target.exposures]
+    return np.asarray(night.dark[places].any(axis=0))
 
 
 def _in_windows(night: Night, target: Target) -> Mask:

@@ -37,11 +37,11 @@ class Line:
 class Problem:
     """A night from one moment on, made ready for the search.
 
-    ``first`` is the place of its first minute in the night's grid. ``stay`` (L + 1, T): for how many
-    minutes from each on a line may be exposed without a break. ``worth`` (L + 1, T): priority x
-    quality of a second, 0 where it may not. ``left`` (N, T): minutes from each on in which a target
-    may be observed at all. ``of_target`` (N, K) holds each target's lines, -1 for none: the row
-    behind the last line, where nothing can be done, stands for it.
+    ``first`` is the place of its first minute in the night's grid. ``stay`` (L + 1, T): for how
+    many minutes from each on a line may be exposed without a break. ``worth`` (L + 1, T): priority
+    x quality of a second, 0 where it may not. ``left`` (N, T): minutes from each on in which a
+    target may be observed at all. ``of_target`` (N, K) holds each target's lines, -1 for none: the
+    row behind the last line, where nothing can be done, stands for it.
     """
 
     night: Night
@@ -109,7 +109,7 @@ def axis_travel_deg(night: Night, here: int, at: int) -> Floats:
     if night.observatory.telescope.mount == "altazimuth":
         turn = np.abs(where.azimuth_deg[:, at] - where.azimuth_deg[here, at])
         lift = np.abs(where.altitude_deg[:, at] - where.altitude_deg[here, at])
-        return np.maximum(np.minimum(turn, 360.0 - turn), lift)
+        return np.asarray(np.maximum(np.minimum(turn, 360.0 - turn), lift))
     angles, declinations = where.hour_angle_h[:, at] * 15.0, night.places.dec_deg
     turn = np.abs(angles - angles[here])
     lift = np.abs(declinations - declinations[here])
@@ -118,7 +118,7 @@ def axis_travel_deg(night: Night, here: int, at: int) -> Floats:
         turn = np.where(other_side, np.abs(180.0 - turn), turn)
         by_pole = 180.0 - np.abs(declinations) - abs(declinations[here])
         lift = np.where(other_side, by_pole, lift)
-    return np.maximum(turn, lift)
+    return np.asarray(np.maximum(turn, lift))
 
 
 def build_problem(

@@ -22,7 +22,7 @@ Floats = NDArray[np.float64]
 
 @dataclass(frozen=True, slots=True)
 class AirmassModel:
-    """One formula: its function of an altitude (deg), which altitude, and where it was published."""
+    """One formula: its function of an altitude (deg), which altitude, and its source."""
 
     name: str
     of_altitude: Callable[[Floats], Floats]

@@ -10,7 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from engine.positions.bodies import moon, sun
-from engine.positions.finder import Crossing, crossings, spans_above
+from engine.positions.finder import Crossing, Quantity, crossings, spans_above
 from engine.times import night_span_mjd
 
 if TYPE_CHECKING:
@@ -58,7 +58,7 @@ def almanac(site: Site, night: date) -> Almanac:
     middle_mjd = _lowest_sun_mjd(site, begin_mjd, end_mjd)
     falls, climbs = {}, {}
     for limit_deg in (RISE_SET_ALTITUDE_DEG, CIVIL_DEG, NAUTICAL_DEG, ASTRONOMICAL_DEG):
-        found = crossings(lambda t, h=limit_deg: sun(t, site).altitude_deg - h, begin_mjd, end_mjd)
+        found = crossings(_sun_above(site, limit_deg), begin_mjd, end_mjd)
         falls[limit_deg] = _last(found, rising=False, before_mjd=middle_mjd)
         climbs[limit_deg] = _first(found, rising=True, after_mjd=middle_mjd)
     lunar = crossings(
@@ -89,6 +89,11 @@ def dark_spans(almanac_: Almanac, site: Site, limit_deg: float) -> list[tuple[fl
     return spans_above(
         lambda t: limit_deg - sun(t, site).altitude_deg, almanac_.begin_mjd, almanac_.end_mjd
     )
+
+
+def _sun_above(site: Site, limit_deg: float) -> Quantity:
+    """Return the Sun's altitude over a limit (deg) as a quantity of time."""
+    return lambda mjd: sun(mjd, site).altitude_deg - limit_deg
 
 
 def _lowest_sun_mjd(site: Site, begin_mjd: float, end_mjd: float) -> float:

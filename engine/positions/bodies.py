@@ -40,7 +40,7 @@ class Body(Horizontal):
 
 @dataclass(frozen=True, slots=True)
 class Moon(Body):
-    """The Moon: also its lit share (0 to 1) and phase angle (deg, 0 full, 180 new), from the site."""
+    """The Moon: also its lit share (0 to 1) and phase angle (deg, 0 at full), from the site."""
 
     illumination: Floats
     phase_angle_deg: Floats

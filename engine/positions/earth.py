@@ -1,4 +1,4 @@
-"""The Earth's rotation: UT1, polar motion and sidereal time, from tables that came with the install.
+"""The Earth's rotation: UT1, polar motion, sidereal time, from tables that came with the install.
 
 astropy would fetch a newer table over the network and, past thirty days, refuse to work without
 it. A console in a dome must do neither: `prepare_astropy` says so in one place, and

@@ -132,7 +132,7 @@ def local_axes(mjd: ArrayLike, site: Site) -> tuple[float, float]:
     the shift is left out there.
     """
     longitude, latitude = np.deg2rad(site.longitude_deg), np.deg2rad(site.latitude_deg)
-    x, y = pole_rad(float(np.mean(mjd)))
+    x, y = pole_rad(float(np.mean(np.asarray(mjd, dtype=float))))
     tan_latitude = np.tan(latitude) if abs(site.latitude_deg) < 89.9 else 0.0
     moved_longitude = longitude + (x * np.sin(longitude) + y * np.cos(longitude)) * tan_latitude
     moved_latitude = latitude + x * np.cos(longitude) - y * np.sin(longitude)
@@ -142,7 +142,7 @@ def local_axes(mjd: ArrayLike, site: Site) -> tuple[float, float]:
 def separation_deg(
     ra_1_deg: ArrayLike, dec_1_deg: ArrayLike, ra_2_deg: ArrayLike, dec_2_deg: ArrayLike
 ) -> Floats:
-    """Return the angle (deg) between directions; shapes broadcast. Good at any angle (ERFA seps)."""
+    """Return the angle (deg) between directions (ERFA seps); shapes broadcast."""
     angles = (
         np.deg2rad(np.asarray(a, dtype=float)) for a in (ra_1_deg, dec_1_deg, ra_2_deg, dec_2_deg)
     )

@@ -9,7 +9,7 @@ from __future__ import annotations
 import numpy as np
 
 from engine.errors import WarmroomError
-from engine.log import Exposure
+from engine.log import Conditions, Exposure
 from engine.rehearsal.weather import InventedNight
 from engine.times import MINUTES_PER_DAY, SECONDS_PER_DAY
 from engine.watch import Stage, Watch, acts
@@ -58,11 +58,11 @@ class Player:
     def _cloud(self, watch: Watch, now_mjd: float) -> list[str]:
         lost = watch.state.lost_since
         if self._truth.is_cloudy(now_mjd) and lost is None:
-            acts.conditions(watch, cloud_percent=90.0)
+            acts.conditions(watch, Conditions(cloud_percent=90.0))
             acts.begin_lost(watch, "cloud")
             return ["a cloud comes over: time is lost"]
         if lost is not None and lost.cause == "cloud" and not self._truth.is_cloudy(now_mjd):
-            acts.conditions(watch, cloud_percent=0.0)
+            acts.conditions(watch, Conditions(cloud_percent=0.0))
             acts.end_lost(watch)
             return ["the cloud has passed"]
         return []
@@ -74,9 +74,11 @@ class Player:
         temperature_c, humidity_percent, wind_m_per_s = self._truth.air_at(now_mjd)
         acts.conditions(
             watch,
-            temperature_c=round(temperature_c, 1),
-            humidity_percent=round(humidity_percent),
-            wind_m_per_s=round(wind_m_per_s, 1),
+            Conditions(
+                temperature_c=round(temperature_c, 1),
+                humidity_percent=float(round(humidity_percent)),
+                wind_m_per_s=round(wind_m_per_s, 1),
+            ),
         )
         return []
 

@@ -195,9 +195,9 @@ def measured_fwhm(watch: Watch, arcsec: float) -> Event:
     return event
 
 
-def conditions(watch: Watch, **values: float) -> Event:
-    """Enter cloud, wind, humidity, temperature, dew point or pressure, by the log's keys."""
-    return watch.submit(Conditions(**values))
+def conditions(watch: Watch, entered: Conditions) -> Event:
+    """Enter cloud, wind, humidity, temperature, dew point or pressure."""
+    return watch.submit(entered)
 
 
 # The night

@@ -12,6 +12,7 @@ from engine.watch.plan import Plan
 # Changes smaller than these are not news: common practice, no source.
 SEEING_SHARE = 0.03
 MOVED_MIN = 20.0
+# What lies further ahead than this will change again before it matters.
 SOON_MIN = 150.0
 SAID_AT_MOST = 6
 
@@ -71,18 +72,26 @@ def _softness(night: Night, before: Plan, after: Plan, plans: Plans) -> list[str
 
 
 def _left_and_entered(before: Order, after: Order) -> list[str]:
-    was = {visit.target for visit in before.visits if visit.end_mjd > after.from_mjd}
-    now = {visit.target for visit in after.visits}
-    said = []
+    until_mjd = after.from_mjd + SOON_MIN / MINUTES_PER_DAY
+    was, now = _soon(before, after.from_mjd, until_mjd), _soon(after, after.from_mjd, until_mjd)
+    later = {visit.target for visit in after.visits}
+    before_all = {visit.target for visit in before.visits}
     why = {each.target: each.reason for each in after.left_out}
-    gone = [name for name in was - now if name in why]
+    said = []
+    gone = sorted(name for name in was if name not in later and name in why)
     if len(gone) == 1:
         said.append(f"{gone[0]} left out: {why[gone[0]]}")
     elif gone:
-        said.append(f"left out: {_some(sorted(gone))}")
-    if now - was:
-        said.append(f"taken in: {_some(sorted(now - was))}")
+        said.append(f"left out: {_some(gone)}")
+    entered = sorted(name for name in now if name not in before_all)
+    if entered:
+        said.append(f"taken in: {_some(entered)}")
     return said
+
+
+def _soon(order: Order, from_mjd: float, until_mjd: float) -> set[str]:
+    """Return the targets an order has between two moments."""
+    return {v.target for v in order.visits if v.end_mjd > from_mjd and v.start_mjd < until_mjd}
 
 
 def _moved(night: Night, before: Order, after: Order) -> list[str]:

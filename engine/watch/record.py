@@ -92,7 +92,7 @@ def exposure_record(
         airmass_start=_kept(masses[0]),
         airmass_mid=_kept(masses[1]),
         airmass_end=_kept(masses[2]),
-        airmass_effective=_kept(effective_airmass(*masses)),
+        airmass_effective=_kept(float(effective_airmass(*masses))),
         altitude_deg=_kept(where.altitude_deg[0, 1]),
         azimuth_deg=_kept(where.azimuth_deg[0, 1]),
         hour_angle_h=_kept(where.hour_angle_h[0, 1]),

@@ -100,7 +100,7 @@ class Console(App[None]):
     ) -> None:
         super().__init__()
         self.failure: WarmroomError | None = None
-        self.watch: Watch | None = None
+        self.live: Watch | None = None
         self.look = look
         self.find_text = ""
         self.panel = "list"
@@ -176,11 +176,9 @@ class Console(App[None]):
             return
         if event.state is WorkerState.ERROR:
             self._worker_failed(worker)
-        elif event.state is WorkerState.SUCCESS:
-            if worker.name == "opening":
-                self._opened(worker.result)
-            else:
-                self._planned(worker.result)
+        elif event.state is WorkerState.SUCCESS and worker.result is not None:
+            done = self._opened if worker.name == "opening" else self._planned
+            done(worker.result)
 
     def _worker_failed(self, worker: Worker[object]) -> None:
         error = worker.error
@@ -200,7 +198,7 @@ class Console(App[None]):
         from tui.console.deeds import Deeds
         from tui.console.view import View
 
-        self.watch = opened.watch
+        self.live = opened.watch
         self._view = View(self, opened.watch)
         self._deeds = Deeds(self, opened.watch)
         self._view.prepare()
@@ -216,7 +214,7 @@ class Console(App[None]):
     # The clockwork
 
     def _tick(self) -> None:
-        watch = self.watch
+        watch = self.live
         if watch is None:
             return
         try:
@@ -237,14 +235,14 @@ class Console(App[None]):
             self._planning = True
             self.run_worker(work, name="planning", group="plan", thread=True, exit_on_error=False)
 
-    def _planned(self, plan: Plan | None) -> None:
+    def _planned(self, plan: Plan) -> None:
         self._planning = False
-        if self.watch is None or plan is None:
+        if self.live is None:
             return
-        self.watch.adopt(plan)
+        self.live.adopt(plan)
         for said in reversed(plan.news):
             self.tell(said, "now")
-        self._plan_if_wanted(self.watch)
+        self._plan_if_wanted(self.live)
         self.paint()
 
     def paint(self) -> None:
@@ -285,8 +283,8 @@ class Console(App[None]):
 
     def after_deed(self) -> None:
         """Plan anew if the deed asks for it, and show what it did."""
-        if self.watch is not None:
-            self._plan_if_wanted(self.watch)
+        if self.live is not None:
+            self._plan_if_wanted(self.live)
         self.paint()
 
     def ask(self, question: Question) -> None:
@@ -323,7 +321,7 @@ class Console(App[None]):
         self.push_screen(HelpScreen(LOOKS[self.look]))
 
     def _do_leave(self) -> None:
-        watch = self.watch
+        watch = self.live
         if watch is None or (watch.state.exposing is None and not watch.unwritten):
             self._leave()
             return
@@ -339,8 +337,8 @@ class Console(App[None]):
             self._leave()
 
     def _leave(self) -> None:
-        if self.watch is not None:
-            self.watch.close()
+        if self.live is not None:
+            self.live.close()
         self.exit()
 
     # Looks

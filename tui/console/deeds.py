@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from dataclasses import replace
 from typing import TYPE_CHECKING
 
 from engine.errors import WarmroomError
-from engine.log import LOST_CAUSES
+from engine.log import LOST_CAUSES, Conditions
 from engine.logbook.text import one_line
 from engine.watch import Stage, Watch, acts
 from tui.console.panels.local import ahead
@@ -152,7 +153,7 @@ class Deeds:
         self._ask(
             f"{word}, {unit}",
             number_between(least, greatest, unit),
-            lambda value: acts.conditions(self._watch, **{key: value}),
+            lambda value: acts.conditions(self._watch, replace(Conditions(), **{key: value})),
         )
 
     # The night

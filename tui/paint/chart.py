@@ -53,11 +53,15 @@ def paint_chart(chart: Chart, width: int, height: int) -> list[Line]:
     now = int(chart.now * columns)
     rows = []
     for row in range(height):
-        spans = [Span(_left_mark(row, height), "dim")]
-        for column in range(columns):
-            spans.append(_cell(chart, bits, roles, (row, column), now, (height, columns)))
-        spans.append(Span(_right_mark(chart, row, height), "dim"))
-        rows.append(_joined(spans))
+        cells = [
+            _cell(chart, bits, roles, (row, column), now, (height, columns))
+            for column in range(columns)
+        ]
+        left, right = (
+            Span(_left_mark(row, height), "dim"),
+            Span(_right_mark(chart, row, height), "dim"),
+        )
+        rows.append(_joined([left, *cells, right]))
     return _with_labels(rows, chart, columns, height)
 
 

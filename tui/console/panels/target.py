@@ -16,7 +16,7 @@ from tui.paint.spans import Line, Span, cut, line
 
 CHART_SAMPLES = 240
 LEAST_CHART_ROWS, MOST_CHART_ROWS = 4, 14
-TERM_BAR = 12
+TERM_BAR = 11
 # Altitudes whose airmass stands at the chart's right edge: airmass 1.0, 1.15, 1.5, 2, 3 about.
 AIRMASS_ALTITUDES_DEG = (85.0, 60.0, 42.0, 30.0, 19.0)
 
@@ -118,7 +118,7 @@ def _terms(watch: Watch, now: TargetNow) -> list[Line]:
         spans = [Span(" ")]
         for label, value in (left, right):
             spans += [
-                Span(f"{label:<11}", "dim"),
+                Span(f"{label:<12}", "dim"),
                 Span(bar(value / most, TERM_BAR), "accent" if value == most else "text"),
                 Span(f" {value:.2f}  ", "text"),
             ]

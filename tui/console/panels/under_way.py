@@ -135,12 +135,11 @@ def _large(watch: Watch, width: int) -> list[Line]:
         return []
     gone_s = (watch.clock.now_mjd() - exposing.start_mjd) * SECONDS_PER_DAY
     figures = large(minutes_seconds(exposing.seconds - gone_s))
+    ends = hhmm(watch, exposing.start_mjd + exposing.seconds / SECONDS_PER_DAY)
     beside = (
         Span(f"   {exposing.filter}  {exposing.seconds:g} s{_number(watch)}", "strong"),
         Span(f"   {exposing.target}", "strong"),
-        Span(
-            f"   ends {hhmm(watch, exposing.start_mjd + exposing.seconds / SECONDS_PER_DAY)}", "dim"
-        ),
+        Span(f"   ends {ends}", "dim"),
     )
     return [
         line(Span(" EXPOSING", "title")),
