@@ -79,11 +79,12 @@ def apparent_places(
     rate_dec = np.asarray(pm_dec_mas_per_yr, dtype=float) * MILLIARCSEC_RAD
     # ERFA moves the star on from J2000.0; bring it there from its own epoch first.
     years = J2000_YR - np.asarray(epoch_yr, dtype=float)
-    cirs_ra, cirs_dec, _ = erfa.atci13(
-        ra + rate_ra * years, dec + rate_dec * years, rate_ra, rate_dec, 0.0, 0.0, MJD_ZERO,
-        float(tt_mjd(mjd)),
-    )  # fmt: skip
-    return Places(np.rad2deg(erfa.anp(cirs_ra)), np.rad2deg(cirs_dec))
+    with np.errstate(invalid="ignore"):  # a NaN direction has a NaN place, and says no more
+        cirs_ra, cirs_dec, _ = erfa.atci13(
+            ra + rate_ra * years, dec + rate_dec * years, rate_ra, rate_dec, 0.0, 0.0, MJD_ZERO,
+            float(tt_mjd(mjd)),
+        )  # fmt: skip
+    return Places(np.mod(np.rad2deg(cirs_ra), 360.0), np.rad2deg(cirs_dec))
 
 
 def horizontal(places: Places, mjd: ArrayLike, site: Site) -> Horizontal:
