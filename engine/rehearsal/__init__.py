@@ -11,6 +11,7 @@ from engine.rehearsal.rehearse import (
     open_rehearsal,
     play_unwatched,
     prepare,
+    resume_mjd,
 )
 from engine.rehearsal.weather import InventedNight, invent_night
 
@@ -24,4 +25,5 @@ __all__ = [
     "open_rehearsal",
     "play_unwatched",
     "prepare",
+    "resume_mjd",
 ]

@@ -125,10 +125,7 @@ class Player:
         wanted = next((v for v in plan.order.visits if v.end_mjd > now_mjd), None)
         if wanted is None or wanted.target != here.target:
             return self._accept(watch, now_mjd)
-        filters = {placed.filter for placed in wanted.exposures}
-        lines = tuple(
-            line for line in watch.plans()[here.target] if line.remaining and line.filter in filters
-        )
+        lines = acts.lines_now(watch)
         if lines:
             acts.start_run(watch, lines)
         return []

@@ -9,6 +9,7 @@ from pathlib import Path
 
 from engine.clock import Clock, HandClock
 from engine.errors import WarmroomError
+from engine.log import read_log
 from engine.logbook import load_logbook, sample_logbook
 from engine.positions import almanac
 from engine.rehearsal.player import Player
@@ -56,6 +57,14 @@ def prepare(folder: Path, night: date, seed: int) -> Rehearsal:
     end_mjd = end + BEFORE_DUSK_MIN / MINUTES_PER_DAY
     truth = invent_night(begin_mjd, end_mjd, logbook.observatory.seeing.typical_arcsec, seed)
     return Rehearsal(folder, night, begin_mjd, end_mjd, Player(truth, seed))
+
+
+def resume_mjd(rehearsal: Rehearsal) -> float:
+    """Return when a rehearsed night goes on (UTC MJD): its begin, or the last entry of its log."""
+    path = rehearsal.folder / f"{rehearsal.night.isoformat()}.toml"
+    if not path.exists():
+        return rehearsal.begin_mjd
+    return max([rehearsal.begin_mjd, *(event.t_mjd for event in read_log(path).events)])
 
 
 def open_rehearsal(rehearsal: Rehearsal, clock: Clock) -> Watch:

@@ -64,6 +64,32 @@ def arrive(watch: Watch) -> Event:
     )
 
 
+def lines_now(watch: Watch) -> tuple[Progress, ...]:
+    """Return the lines of the plan of the target the telescope is on that a run would take now.
+
+    Those that the order has for it now; where the order has none, all that remain and may be
+    exposed now; where limits forbid them all, all that remain: then it is the observer's choice.
+    """
+    pointing = watch.state.pointing
+    if pointing is None or watch.plan is None:
+        return ()
+    left = tuple(line for line in watch.plans().get(pointing.target, ()) if line.remaining)
+    now_mjd = watch.clock.now_mjd()
+    visit = next((v for v in watch.plan.order.visits if v.end_mjd > now_mjd), None)
+    if visit is not None and visit.target == pointing.target:
+        wanted = {placed.filter for placed in visit.exposures}
+        return tuple(line for line in left if line.filter in wanted) or left
+    night, outlook = watch.planner.night, watch.plan.outlook
+    at, index = night.index_at(now_mjd), night.target_index(pointing.target)
+    open_now = tuple(
+        line
+        for line in left
+        for place in (night.observatory.filter_index(line.filter),)
+        if night.dark[place, at] and not outlook.soft[place, index, at]
+    )
+    return open_now or left
+
+
 def start_run(watch: Watch, lines: tuple[Progress, ...]) -> Event:
     """Begin a run on the target: all that remains of these lines of its plan, filter by filter."""
     if watch.stage is not Stage.READY or watch.state.pointing is None:

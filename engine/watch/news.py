@@ -6,7 +6,7 @@ from zoneinfo import ZoneInfo
 
 from engine.night import Night, Plans
 from engine.order import Order
-from engine.times import MINUTES_PER_DAY, datetime_from_mjd
+from engine.times import MINUTES_PER_DAY, SECONDS_PER_DAY, datetime_from_mjd
 from engine.watch.plan import Plan
 
 # Changes smaller than these are not news: common practice, no source.
@@ -41,15 +41,22 @@ def _next_visit(before: Order, after: Order) -> list[str]:
 
 def _seeing(before: Plan, after: Plan) -> list[str]:
     was, now = before.forecast.now_arcsec, after.forecast.now_arcsec
-    if abs(now / was - 1.0) < SEEING_SHARE:
+    measured_mjd = after.made_mjd - after.forecast.age_min / MINUTES_PER_DAY
+    # Without a new measurement the forecast only relaxes, as it was said to.
+    if measured_mjd <= before.made_mjd or abs(now / was - 1.0) < SEEING_SHARE:
         return []
     return [f'seeing {was:.2f}" to {now:.2f}"']
 
 
 def _softness(night: Night, before: Plan, after: Plan, plans: Plans) -> list[str]:
-    at = night.index_at(after.made_mjd)
+    # A target is judged when it was going to be exposed, or now.
+    visits = {
+        visit.target: visit.exposures[0].start_mjd + visit.exposures[0].seconds / SECONDS_PER_DAY
+        for visit in reversed(before.order.visits)
+    }
     softened, sharpened = [], []
     for index, target in enumerate(night.targets):
+        at = night.index_at(max(visits.get(target.name, 0.0), after.made_mjd))
         needed = [
             night.observatory.filter_index(line.filter)
             for line in plans[target.name]

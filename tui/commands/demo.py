@@ -82,11 +82,11 @@ class _Onlooker:
 
 
 def _open(arguments: argparse.Namespace, folder: Path, onlooker: _Onlooker | None) -> Opened:
-    from engine.rehearsal import OBSERVER
+    from engine.rehearsal import OBSERVER, resume_mjd
     from engine.watch import open_watch
 
     rehearsal = _rehearsal(arguments, folder)
     if onlooker is not None:
         onlooker.rehearsal = rehearsal
-    clock = PacedClock(rehearsal.begin_mjd, arguments.pace)
+    clock = PacedClock(resume_mjd(rehearsal), arguments.pace)
     return open_watch(rehearsal.folder, clock, (OBSERVER,), rehearsal.night)

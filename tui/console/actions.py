@@ -122,10 +122,13 @@ ACTIONS: tuple[Action, ...] = (
     ),
     Action("next_look", ("v",), "look", "Change the colours: night, red, day, mono.", GROUPS[4]),
     Action("help", ("question_mark", "f1"), "help", "Show every key.", GROUPS[4], footer=2),
-    Action("leave", ("q",), "leave", "Leave the console; the log keeps the night.", GROUPS[4]),
+    Action(
+        "leave", ("q", "ctrl+q"), "leave", "Leave the console; the log keeps the night.", GROUPS[4]
+    ),
 )
 
 _BY_NAME = {action.name: action for action in ACTIONS}
+ACTION_OF_KEY: dict[str, str] = {key: action.name for action in ACTIONS for key in action.keys}
 
 # Textual's names of keys, as a person reads them on the keyboard.
 _CAPS = {"question_mark": "?", "slash": "/", "space": "space", "enter": "enter", "f1": "F1"}

@@ -15,13 +15,13 @@ from typing import TYPE_CHECKING, Protocol
 from textual.app import App, ComposeResult, SystemCommand
 from textual.binding import Binding
 from textual.containers import Horizontal, Vertical
-from textual.events import Resize
+from textual.events import Event, Key, Paste, Resize
 from textual.filter import LineFilter
 from textual.screen import Screen
 from textual.worker import Worker, WorkerState
 
 from engine.errors import WarmroomError
-from tui.console.actions import ACTIONS, cap, footer_actions
+from tui.console.actions import ACTION_OF_KEY, ACTIONS, cap, footer_actions
 from tui.console.help import HelpScreen
 from tui.look import LOOKS, CleanFilter, MonoFilter, RedFilter
 from tui.paint.spans import Line, Span, cut, line
@@ -37,6 +37,19 @@ TICK_S = 0.5
 QUICK_TICK_S = 0.2
 WIDE_COLUMNS, TALL_ROWS = 120, 34
 NOTICES_KEPT = 50
+# What a key does to the list's cursor: how far, and in what.
+MOVES = {
+    "down": (1, "rows"),
+    "j": (1, "rows"),
+    "up": (-1, "rows"),
+    "k": (-1, "rows"),
+    "pagedown": (1, "screens"),
+    "pageup": (-1, "screens"),
+    "home": (-1, "ends"),
+    "g": (-1, "ends"),
+    "end": (1, "ends"),
+    "G": (1, "ends"),
+}
 PANELS_WIDE = ("order", "log")
 PANELS_NARROW = ("list", "target", "order", "log")
 
@@ -71,22 +84,9 @@ class Console(App[None]):
     .wide #card { height: 27; }
     .wide #notices { height: 3; }
     """
-    BINDINGS = [  # noqa: RUF012 - Textual declares it so
-        *(
-            # Textual itself moves the focus with tab, hence the priority there.
-            Binding(
-                ",".join(a.keys),
-                f"do('{a.name}')",
-                a.label,
-                id=a.name,
-                show=False,
-                priority="tab" in a.keys,
-            )
-            for a in ACTIONS
-        ),
-        Binding("escape", "put_aside", show=False),
-        Binding("ctrl+q", "do('leave')", show=False, priority=True),
-    ]
+    # Keys are taken one by one in `on_event`, from the table of actions; only what Textual itself
+    # must see is bound here.
+    BINDINGS = [Binding("ctrl+p", "command_palette", show=False, priority=True)]  # noqa: RUF012
     ENABLE_COMMAND_PALETTE = True
     TITLE = "warmroom"
 
@@ -134,7 +134,6 @@ class Console(App[None]):
         for look in LOOKS.values():
             self.register_theme(look.theme())
         self.set_look(self.look)
-        self.query_one("#list").focus()
         self.sheet("under-way").show([line(Span(" opening the night ...", "dim"))])
         self.call_after_refresh(self._load)
 
@@ -266,6 +265,45 @@ class Console(App[None]):
 
     # What the observer does
 
+    async def on_event(self, event: Event) -> None:
+        """Take keys and pasted text in the order in which they came.
+
+        Textual hands a key from queue to queue until somebody wants it, so that in a burst, as a
+        slow link makes them, keys overtake each other and an answer becomes a command. Here each
+        is done before the next is looked at.
+        """
+        if isinstance(event, Key) and self._take_key(event):
+            return
+        if isinstance(event, Paste) and self._entry.is_open:
+            self._entry.take_text(event.text)
+            return
+        await super().on_event(event)
+
+    def _take_key(self, event: Key) -> bool:
+        """Do what a key does; return whether it was for the console itself."""
+        if len(self.screen_stack) != 1:
+            return False
+        if self._entry.is_open:
+            self._entry.take_key(event.key, event.character)
+            self.paint()
+        elif event.key in ACTION_OF_KEY:
+            self.action_do(ACTION_OF_KEY[event.key])
+        elif event.key in MOVES:
+            self._list.move(*MOVES[event.key])
+        elif event.key == "escape":
+            self._put_aside()
+        else:
+            return False
+        return True
+
+    @property
+    def _entry(self) -> Entry:
+        return self.screen_stack[0].query_one("#entry", Entry)
+
+    @property
+    def _list(self) -> LiveList:
+        return self.screen_stack[0].query_one("#list", LiveList)
+
     def action_do(self, name: str) -> None:
         """Do an action of the table; what can't be done now is told in one line."""
         own = getattr(self, f"_do_{name}", None)
@@ -289,21 +327,15 @@ class Console(App[None]):
 
     def ask(self, question: Question) -> None:
         """Ask for something in the entry line."""
-        self.query_one(Entry).ask(question)
+        self._entry.ask(question)
 
-    def action_put_aside(self) -> None:
-        """Escape: close the entry, else clear the search, else the notices."""
-        if self.query_one(Entry).is_open:
-            self.query_one(Entry).close()
-        elif self.find_text:
+    def _put_aside(self) -> None:
+        """Clear the search, else the notices."""
+        if self.find_text:
             self.find_text = ""
         else:
             self.notices = []
         self.paint()
-
-    def on_entry_closed(self, event: Entry.Closed) -> None:
-        """Give the keyboard back to the list."""
-        self.query_one("#list").focus()
 
     def on_live_list_moved(self, event: LiveList.Moved) -> None:
         """Show the target under the cursor."""

@@ -68,10 +68,9 @@ class Deeds:
         acts.point_at(self._watch, visits[0].target)
 
     def _start_or_accept(self) -> None:
-        pointing = self._watch.state.pointing
-        plan = self._watch.plans().get(pointing.target, ()) if pointing else ()
-        if any(line.remaining for line in plan):
-            acts.start_run(self._watch, plan)
+        lines = acts.lines_now(self._watch)
+        if lines:
+            acts.start_run(self._watch, lines)
         else:
             self._accept()
 

@@ -1,4 +1,8 @@
-"""The entry line: a question, what is typed, and what is wrong with it, all in one row."""
+"""The entry line: a question, what is typed, and what is wrong with it, all in one row.
+
+It is given keys one by one, in the order in which they were typed, and does each at once: on a slow
+link keys come in bursts, and what follows a question must never be taken for a command.
+"""
 
 from __future__ import annotations
 
@@ -6,14 +10,11 @@ from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Any
 
-from textual.app import ComposeResult
-from textual.containers import Horizontal
-from textual.events import Key
-from textual.message import Message
-from textual.widgets import Input
-
-from tui.paint.spans import Span, line
+from tui.paint.spans import Line, Span, spread
 from tui.widgets.sheet import Sheet
+
+CURSOR = "▏"
+LONGEST = 10_000
 
 
 @dataclass(frozen=True, slots=True)
@@ -30,92 +31,118 @@ class Question:
     choices: tuple[tuple[str, str], ...] = ()
 
 
-class Entry(Horizontal):
+class Entry(Sheet):
     """Asks one question at a time; hidden when there is none."""
 
     DEFAULT_CSS = """
     Entry { height: 1; display: none; }
-    Entry > Sheet { height: 1; width: auto; }
-    Entry > Input { height: 1; width: 1fr; border: none; padding: 0; min-width: 10; }
     """
-
-    class Closed(Message):
-        """The question was answered or put aside."""
 
     def __init__(self, *, id: str | None = None) -> None:
         super().__init__(id=id)
         self._question: Question | None = None
-
-    def compose(self) -> ComposeResult:
-        """Make the label, the field, and the place for what is wrong."""
-        yield Sheet(id="entry-label")
-        field = Input(id="entry-field")
-        field.cursor_blink = False
-        yield field
-        yield Sheet(id="entry-fault")
+        self._text = ""
+        self._at = 0
+        self._fault = ""
 
     @property
     def is_open(self) -> bool:
         """Whether a question is being asked."""
         return self._question is not None
 
+    @property
+    def text(self) -> str:
+        """What has been typed so far."""
+        return self._text
+
     def ask(self, question: Question) -> None:
-        """Ask a question; the field is empty and has the keyboard."""
+        """Ask a question; what is typed from now on answers it."""
         self._question = question
-        words = "  ".join(f"{letter} {word}" for letter, word in question.choices)
-        label = f" {question.label}: " + (f"{words} " if words else "")
-        self._say("#entry-label", label, "accent")
-        self._say("#entry-fault", "", "bad")
-        field = self.query_one(Input)
-        field.value = ""
+        self._text, self._at, self._fault = "", 0, ""
         self.display = True
-        field.focus()
+        self._paint()
 
     def close(self) -> None:
         """Put the question aside."""
         self._question = None
         self.display = False
-        self.post_message(self.Closed())
 
-    def on_key(self, event: Key) -> None:
-        """Escape puts aside; a letter answers a question with choices."""
+    def take_key(self, key: str, character: str | None) -> None:
+        """Take one key: its name, and the character it types if it types one."""
         question = self._question
         if question is None:
             return
-        if event.key == "escape":
-            event.stop()
-            event.prevent_default()
+        self._fault = ""
+        if key == "escape":
             self.close()
+        elif key == "enter":
+            self._answer(question, self._text)
+        elif character is not None and character.isprintable():
+            if question.choices:
+                self._choose(question, character)
+            else:
+                self.take_text(character)
+        else:
+            self._edit(key)
+        self._paint()
 
-    def on_input_changed(self, event: Input.Changed) -> None:
-        """A letter that is a choice answers at once."""
-        question = self._question
-        event.stop()
-        if question is not None and question.choices:
-            letters = [letter for letter, _ in question.choices]
-            if event.value in letters:
-                self._answer(question, event.value)
-            elif event.value:
-                self.query_one(Input).value = ""
-                self._say("#entry-fault", f" one of {' '.join(letters)} ", "bad")
+    def take_text(self, text: str) -> None:
+        """Take text that was typed or pasted, at the cursor."""
+        kept = "".join(each for each in text if each.isprintable())
+        room = LONGEST - len(self._text)
+        self._text = self._text[: self._at] + kept[:room] + self._text[self._at :]
+        self._at += len(kept[:room])
+        self._paint()
 
-    def on_input_submitted(self, event: Input.Submitted) -> None:
-        """Enter answers; what can't be read stays in the field, with the reason beside it."""
-        event.stop()
-        if self._question is not None:
-            self._answer(self._question, event.value)
+    def _edit(self, key: str) -> None:
+        match key:
+            case "backspace" | "ctrl+h" if self._at:
+                self._text = self._text[: self._at - 1] + self._text[self._at :]
+                self._at -= 1
+            case "delete":
+                self._text = self._text[: self._at] + self._text[self._at + 1 :]
+            case "left":
+                self._at = max(self._at - 1, 0)
+            case "right":
+                self._at = min(self._at + 1, len(self._text))
+            case "home" | "ctrl+a":
+                self._at = 0
+            case "end" | "ctrl+e":
+                self._at = len(self._text)
+            case "ctrl+u":
+                self._text, self._at = self._text[self._at :], 0
+
+    def _choose(self, question: Question, letter: str) -> None:
+        letters = [each for each, _ in question.choices]
+        if letter in letters:
+            self._answer(question, letter)
+        else:
+            self._fault = f"expected one of {' '.join(letters)}"
 
     def _answer(self, question: Question, text: str) -> None:
+        if question.choices and text not in [letter for letter, _ in question.choices]:
+            self._fault = "expected one of the letters; escape leaves"
+            return
         try:
             value = question.read(text)
         except ValueError as fault:
-            self._say("#entry-fault", f" {fault} ", "bad")
+            self._fault = str(fault)
             return
         self.close()
         question.then(value)
 
-    def _say(self, where: str, text: str, role: str) -> None:
-        sheet = self.query_one(where, Sheet)
-        sheet.styles.width = len(text)
-        sheet.show([line(Span(text, role))])
-        sheet.refresh(layout=True)
+    def _paint(self) -> None:
+        question = self._question
+        if question is None:
+            return
+        choices = tuple(
+            Span(part, role)
+            for letter, word in question.choices
+            for part, role in ((f"{letter} ", "accent"), (f"{word}  ", "text"))
+        )
+        typed = self._text[: self._at] + CURSOR + self._text[self._at :]
+        # A long text scrolls to the left, so that its end stays in sight.
+        room = max(self.app.size.width - len(question.label) - len(self._fault) - 6, 10)
+        answer = choices or (Span(typed[-room:], "strong"),)
+        left: Line = (Span(f" {question.label}: ", "accent"), *answer)
+        self.show([spread(left, (Span(f"{self._fault} ", "bad"),), self.app.size.width)])

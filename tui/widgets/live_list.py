@@ -5,7 +5,6 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 
-from textual.binding import Binding
 from textual.events import Click, MouseScrollDown, MouseScrollUp, Resize
 from textual.message import Message
 
@@ -35,17 +34,8 @@ class Row:
     heading: bool = False
 
 
-class LiveList(Sheet, can_focus=True):
+class LiveList(Sheet):
     """A list with a cursor. The first line of the sheet is the columns' titles."""
-
-    BINDINGS = [  # noqa: RUF012 - Textual declares it so
-        Binding("down,j", "move(1)", show=False),
-        Binding("up,k", "move(-1)", show=False),
-        Binding("pagedown", "page(1)", show=False),
-        Binding("pageup", "page(-1)", show=False),
-        Binding("home,g", "edge(-1)", show=False),
-        Binding("end,G", "edge(1)", show=False),
-    ]
 
     class Moved(Message):
         """The cursor came to stand on another row."""
@@ -83,20 +73,13 @@ class LiveList(Sheet, can_focus=True):
         if any(row.key == key and not row.heading for row in self._rows):
             self._set_key(key)
 
-    def action_move(self, by: int) -> None:
-        """Move the cursor by rows, over headings."""
+    def move(self, by: int, unit: str = "rows") -> None:
+        """Move the cursor by so many "rows" or "screens", or to an end of the list ("ends")."""
+        steps = {"rows": 1, "screens": max(self._room() - 1, 1), "ends": len(self._rows)}
         keys = [row.key for row in self._rows if not row.heading]
         if keys:
             at = keys.index(self._key) if self._key in keys else 0
-            self._set_key(keys[min(max(at + by, 0), len(keys) - 1)])
-
-    def action_page(self, by: int) -> None:
-        """Move the cursor by a screenful."""
-        self.action_move(by * max(self._room() - 1, 1))
-
-    def action_edge(self, by: int) -> None:
-        """Move the cursor to the first or last row."""
-        self.action_move(by * len(self._rows))
+            self._set_key(keys[min(max(at + by * steps[unit], 0), len(keys) - 1)])
 
     def on_resize(self, event: Resize) -> None:
         """Paint anew in the new size."""
@@ -110,11 +93,11 @@ class LiveList(Sheet, can_focus=True):
 
     def on_mouse_scroll_down(self, event: MouseScrollDown) -> None:
         """Move on with the wheel."""
-        self.action_move(3)
+        self.move(3)
 
     def on_mouse_scroll_up(self, event: MouseScrollUp) -> None:
         """Move back with the wheel."""
-        self.action_move(-3)
+        self.move(-3)
 
     def _set_key(self, key: str) -> None:
         if key != self._key:

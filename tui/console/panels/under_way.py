@@ -6,7 +6,7 @@ from collections.abc import Callable
 
 from engine.order import Visit
 from engine.times import MINUTES_PER_DAY, SECONDS_PER_DAY
-from engine.watch import Stage, Watch
+from engine.watch import Stage, Watch, acts
 from tui.console.panels.local import ahead, arcsec, hhmm
 from tui.paint.figures import bar, large, minutes_seconds
 from tui.paint.spans import Line, Span, cut, line, wrapped
@@ -33,19 +33,12 @@ def go_on_label(watch: Watch) -> str:
     return {
         Stage.IDLE: "accept",
         Stage.MOVING: "on target",
-        Stage.READY: "start the run" if _has_plan_left(watch) else "accept the next",
+        Stage.READY: "start the run" if acts.lines_now(watch) else "accept the next",
         Stage.LOST: "go on, time is no longer lost",
         Stage.EXPOSING: "(exposing)",
         Stage.BETWEEN: "(reading out)",
         Stage.CUT_OFF: "K keep, L lost",
     }[watch.stage]
-
-
-def _has_plan_left(watch: Watch) -> bool:
-    pointing = watch.state.pointing
-    if pointing is None or pointing.target not in watch.plans():
-        return False
-    return any(each.remaining for each in watch.plans()[pointing.target])
 
 
 def _proposal(watch: Watch, visit: Visit | None, width: int) -> list[Line]:
@@ -102,8 +95,9 @@ def _moving(watch: Watch, width: int) -> list[Line]:
 def _ready(watch: Watch, width: int) -> list[Line]:
     there = watch.state.pointing
     name = there.target if there else ""
-    plan = watch.plans().get(name, ())
-    left = "  ".join(f"{e.filter} {e.seconds:g}s×{e.remaining}" for e in plan if e.remaining)
+    left = "  ".join(
+        f"{each.filter} {each.seconds:g}s×{each.remaining}" for each in acts.lines_now(watch)
+    )
     label = "space: start " + left if left else "its plan is finished; space: accept the next"
     return [
         line(Span(" ON TARGET  ", "title"), Span(name, "strong"), Span(f"   {label}", "accent")),
