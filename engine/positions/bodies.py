@@ -70,15 +70,23 @@ def moon(mjd: ArrayLike, site: Site) -> Moon:
     seen = _topocentric(away_km, when, site)
     heliocentric, _ = erfa.epv00(MJD_ZERO, tt)
     to_sun_km = -np.asarray(heliocentric["p"]) * AU_KM
-    from_moon_km = to_sun_km - away_km
-    # Phase angle: at the Moon, between the Sun and the site (Meeus ch. 48).
     site_km = erfa.trxp(_cirs_matrix(when), _site_cirs_km(when, site))
-    phase = erfa.sepp(from_moon_km, site_km - away_km)
-    return Moon(
-        **seen,
-        illumination=np.asarray((1.0 + np.cos(phase)) / 2.0),
-        phase_angle_deg=np.asarray(np.rad2deg(phase)),
-    )
+    phase_deg = phase_angle_deg(away_km, to_sun_km, site_km)
+    return Moon(**seen, illumination=lit_share(phase_deg), phase_angle_deg=phase_deg)
+
+
+def phase_angle_deg(to_moon_km: Floats, to_sun_km: Floats, to_site_km: Floats) -> Floats:
+    """Return the angle (deg) at the Moon between the Sun and the site (Meeus ch. 48).
+
+    Vectors (..., 3) from the Earth's centre.
+    """
+    angle_rad = erfa.sepp(to_sun_km - to_moon_km, to_site_km - to_moon_km)
+    return np.asarray(np.rad2deg(angle_rad))
+
+
+def lit_share(phase_deg: ArrayLike) -> Floats:
+    """Return the lit share (0 to 1) of a disc at phase angles (deg): (1 + cos i) / 2."""
+    return np.asarray((1.0 + np.cos(np.deg2rad(phase_deg))) / 2.0)
 
 
 def _aberrated(away_km: Floats, velocity_au_per_day: Floats) -> Floats:
