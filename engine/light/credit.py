@@ -19,6 +19,7 @@ if TYPE_CHECKING:
 # A plan is made for ordinary conditions; much better ones save time, but not without end: read
 # noise and the star's own light begin to count. Common practice, no source.
 CREDIT_CEILING = 2.0
+# The airmass that an ordinary plan meets on average: common practice, no source.
 REFERENCE_AIRMASS = 1.2
 
 
@@ -32,7 +33,7 @@ class Reference:
 
     @classmethod
     def of(cls, observatory: Observatory, model: ImageModel, filter_index: int) -> Reference:
-        """Return a filter's reference: the site's typical seeing, dark sky, airmass 1.2."""
+        """Return a filter's reference: the site's typical seeing, dark zenith sky, airmass 1.2."""
         filter_ = observatory.filters[filter_index]
         size = model.size_arcsec(filter_index, observatory.seeing.typical_arcsec, REFERENCE_AIRMASS)
         return cls(float(size), filter_.dark_sky_mag, REFERENCE_AIRMASS)
@@ -44,13 +45,42 @@ def credit(
     airmass: ArrayLike,
     filter_: Filter,
     reference: Reference,
+    *,
+    cloud_mag: ArrayLike = 0.0,
 ) -> NDArray[np.floating]:
     """Return what a second is worth against the reference: 0 to 2, arrays broadcast.
 
-    (FWHM_ref / FWHM)^2 x 10^(0.4 (sky - sky_ref)) x 10^(-0.8 k (X - X_ref)); NaN where any input
-    is.
+    (FWHM_ref / FWHM)^2 x 10^(0.4 (sky - sky_ref)) x 10^(-0.8 (k (X - X_ref) + cloud)); NaN where
+    any input is. ``cloud_mag`` is what thin cloud takes from the star; that it may brighten the
+    sky as well is for ``sky_mag_arcsec2`` to say. Right for faint stars on a sky-limited exposure:
+    a bright star loses less in poor images than this says.
     """
-    sharper = (reference.image_size_arcsec / np.asarray(image_size_arcsec)) ** 2
+    return depth_share(
+        image_size_arcsec,
+        clear_share(sky_mag_arcsec2, airmass, filter_, reference, cloud_mag),
+        reference,
+    )
+
+
+def clear_share(
+    sky_mag_arcsec2: ArrayLike,
+    airmass: ArrayLike,
+    filter_: Filter,
+    reference: Reference,
+    cloud_mag: ArrayLike = 0.0,
+) -> NDArray[np.floating]:
+    """Return the part of the credit that is not the image's: sky and extinction, without ceiling.
+
+    It holds for the whole night whatever the seeing, so tables keep it.
+    """
     darker = 0.4 * (np.asarray(sky_mag_arcsec2) - reference.sky_mag_arcsec2)
-    clearer = -0.8 * filter_.extinction_mag * (np.asarray(airmass) - reference.airmass)
-    return np.minimum(sharper * 10.0 ** (darker + clearer), CREDIT_CEILING)
+    dimmer = filter_.extinction_mag * (np.asarray(airmass) - reference.airmass)
+    return np.asarray(10.0 ** (darker - 0.8 * (dimmer + np.asarray(cloud_mag))))
+
+
+def depth_share(
+    image_size_arcsec: ArrayLike, clear: ArrayLike, reference: Reference
+) -> NDArray[np.floating]:
+    """Return the credit from an image size (arcsec) and what `clear_share` gave; broadcast."""
+    sharper = (reference.image_size_arcsec / np.asarray(image_size_arcsec)) ** 2
+    return np.asarray(np.minimum(sharper * np.asarray(clear), CREDIT_CEILING))
