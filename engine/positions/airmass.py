@@ -22,12 +22,13 @@ Floats = NDArray[np.float64]
 
 @dataclass(frozen=True, slots=True)
 class AirmassModel:
-    """One formula: its function of an altitude (deg), which altitude, and its source."""
+    """One formula: its function of an altitude (deg), which altitude, its source, its lower end."""
 
     name: str
     of_altitude: Callable[[Floats], Floats]
     takes: Literal["apparent", "true"]
     source: str
+    lowest_deg: float = 0.0
 
 
 def _pickering(apparent_deg: Floats) -> Floats:
@@ -69,7 +70,8 @@ AIRMASS_MODELS: dict[str, AirmassModel] = {
             "hardie",
             _hardie,
             "apparent",
-            "Hardie 1962, in Astronomical Techniques, p. 180; not below 5 deg",
+            "Hardie 1962, in Astronomical Techniques, p. 180",
+            lowest_deg=5.0,  # further down the polynomial turns over and goes negative
         ),
         AirmassModel("secant", _secant, "apparent", "plane parallel atmosphere, sec z"),
     )
@@ -82,12 +84,13 @@ def airmass(
 ) -> Floats:
     """Return the airmass at an **apparent** altitude (deg, any shape); NaN below the horizon.
 
+    NaN too where a model does not reach down to the horizon, below its ``lowest_deg``.
     ``air`` matters only to a model of the true altitude; the standard air at sea level when None.
     KeyError for a model that is not in `AIRMASS_MODELS`.
     """
     chosen = AIRMASS_MODELS[model]
     altitude_deg = np.asarray(apparent_altitude_deg, dtype=float)
-    above = altitude_deg >= 0.0
+    above = altitude_deg >= chosen.lowest_deg
     # The formulas are evaluated at the zenith where there is no airmass, so that none can fail.
     held_deg = np.where(above, altitude_deg, 90.0)
     if chosen.takes == "true":
