@@ -1,15 +1,18 @@
 """The order: what to point at next and after that, what it is worth, and why.
 
 ``build_problem`` makes the rest of a night ready, ``propose`` searches, `Rules` are what the
-observer has decided. The merit is in `engine.order.merit`, and nowhere else.
+observer has decided. ``upper_limit`` proves how much any order could be worth. The merit is in
+`engine.order.merit`, and nowhere else.
 """
 
+from engine.order.bound import NoSolver, upper_limit
 from engine.order.order import LeftOut, Order, PlacedExposures, Rules, Visit
 from engine.order.problem import Problem, build_problem
 from engine.order.propose import propose
 
 __all__ = [
     "LeftOut",
+    "NoSolver",
     "Order",
     "PlacedExposures",
     "Problem",
@@ -17,4 +20,5 @@ __all__ = [
     "Visit",
     "build_problem",
     "propose",
+    "upper_limit",
 ]

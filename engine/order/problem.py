@@ -1,9 +1,7 @@
 """The night as the search sees it: one row a target, one a line of a plan, one column a minute.
 
-Everything the search asks again and again - how long may I stay, what is a minute worth, how far
-is it from there - is a table here, made once.
-
-Shapes: N targets, L lines of plans with something left, T minutes from now to the end of the night.
+Shapes: N targets, L lines of plans with something left, T minutes from now to the end of the
+night. Minutes are counted from the grid's minute at or before now.
 """
 
 from __future__ import annotations
@@ -15,33 +13,42 @@ from numpy.typing import NDArray
 
 from engine.logbook import Target
 from engine.night import Night, Outlook, Plans
+from engine.order.merit import finished_worth
 from engine.order.order import Rules
+from engine.order.travel import Travel, travel_of
 from engine.times import MINUTES_PER_DAY
 
 Floats = NDArray[np.float64]
 Counts = NDArray[np.int64]
+Mask = NDArray[np.bool_]
 
 
 @dataclass(frozen=True, slots=True)
 class Line:
-    """One line of a plan with something left to take."""
+    """One line of a plan with something left to take; times in minutes but the exposure itself."""
 
     target: int
     filter: int
     seconds: float
     count: int
-    change_s: float
+    change_min: float
+    each_min: float
+
+    @property
+    def whole_min(self) -> float:
+        """Minutes for all of it, with the filter's change and every readout."""
+        return self.change_min + self.count * self.each_min
 
 
 @dataclass(frozen=True, slots=True)
 class Problem:
     """A night from one moment on, made ready for the search.
 
-    ``first`` is the place of its first minute in the night's grid. ``stay`` (L + 1, T): for how
-    many minutes from each on a line may be exposed without a break. ``worth`` (L + 1, T): priority
-    x quality of a second, 0 where it may not. ``left`` (N, T): minutes from each on in which a
-    target may be observed at all. ``of_target`` (N, K) holds each target's lines, -1 for none: the
-    row behind the last line, where nothing can be done, stands for it.
+    ``start_min`` is now, in minutes after the first column. ``run_end`` (L, T): the last minute
+    through which a line may be exposed from each on without a break, -1 where it may not.
+    ``worth`` (L, T): priority x quality of a second, 0 where it may not. ``of_target`` (N, K)
+    holds each target's lines, -1 for none. ``bonus`` (N,): what finishing a plan earns, 0 where
+    it can't be finished. ``pointing`` is N when nobody has said where the telescope points.
     """
 
     night: Night
@@ -50,75 +57,38 @@ class Problem:
     rules: Rules
     from_mjd: float
     first: int
+    start_min: float
     minutes: int
     lines: tuple[Line, ...]
     of_target: Counts
-    remaining: Counts
-    seconds: Floats
-    change_min: Floats
+    run_end: Counts
+    worth: NDArray[np.float32]
+    bonus: Floats
     contiguous_min: Floats
-    stay: Floats
-    worth: Floats
-    left: Floats
-    pointing: int | None
-
-    @property
-    def each_min(self) -> Floats:
-        """Minutes (L + 1,) that one exposure of a line takes, read out."""
-        return (self.seconds + self.night.observatory.camera.readout_s) / 60.0
+    travel: Travel
+    pointing: int
 
     @property
     def targets(self) -> tuple[Target, ...]:
         """The night's targets."""
         return self.night.targets
 
+    @property
+    def readout_min(self) -> float:
+        """Minutes to read one exposure out."""
+        return self.night.observatory.camera.readout_s / 60.0
+
     def mjd_at(self, minute: float) -> float:
         """Return the moment (UTC MJD) a number of minutes after the first column."""
         return float(self.night.mjd[self.first]) + minute / MINUTES_PER_DAY
 
-    def move_min(self, here: int | None, minute: int) -> Floats:
-        """Return the minutes (N,) from a target (None: anywhere) to each, settled, at a minute."""
-        telescope = self.night.observatory.telescope
-        settle = telescope.settle_s / 60.0
-        if here is None:
-            return np.full(len(self.targets), settle + 90.0 / telescope.slew_deg_per_s / 60.0)
-        at = min(self.first + minute, self.night.last)
-        degrees = axis_travel_deg(self.night, here, at)
-        times = degrees / telescope.slew_deg_per_s / 60.0 + settle
-        times[here] = 0.0 if not self._needs_flip(here, at) else times[here]
-        return times
+    def lines_of(self, target: int) -> list[int]:
+        """Return the lines of one target, in the order of its plan."""
+        return [int(line) for line in self.of_target[target] if line >= 0]
 
-    def _needs_flip(self, here: int, at: int) -> bool:
-        """Say whether a german mount must turn over to go on with the target it is on."""
-        hour_angles = self.night.where.hour_angle_h[here]
-        before = hour_angles[max(at - 2, 0)]
-        return (
-            self.night.observatory.telescope.mount == "german"
-            and before < 0.0 <= hour_angles[at]
-            and hour_angles[at] < 6.0
-        )
-
-
-def axis_travel_deg(night: Night, here: int, at: int) -> Floats:
-    """Return how far (deg, N) the slower axis turns from one target to each other.
-
-    An altazimuth mount turns in azimuth and altitude; an equatorial one in hour angle and
-    declination. A german mount that changes sides goes round by the pole.
-    """
-    where = night.where
-    if night.observatory.telescope.mount == "altazimuth":
-        turn = np.abs(where.azimuth_deg[:, at] - where.azimuth_deg[here, at])
-        lift = np.abs(where.altitude_deg[:, at] - where.altitude_deg[here, at])
-        return np.asarray(np.maximum(np.minimum(turn, 360.0 - turn), lift))
-    angles, declinations = where.hour_angle_h[:, at] * 15.0, night.places.dec_deg
-    turn = np.abs(angles - angles[here])
-    lift = np.abs(declinations - declinations[here])
-    if night.observatory.telescope.mount == "german":
-        other_side = (angles < 0.0) != (angles[here] < 0.0)
-        turn = np.where(other_side, np.abs(180.0 - turn), turn)
-        by_pole = 180.0 - np.abs(declinations) - abs(declinations[here])
-        lift = np.where(other_side, by_pole, lift)
-    return np.asarray(np.maximum(turn, lift))
+    def asked_min(self, target: int) -> float:
+        """Return the minutes all that is left of a target takes, without the way there."""
+        return sum(self.lines[line].whole_min for line in self.lines_of(target))
 
 
 def build_problem(
@@ -131,17 +101,16 @@ def build_problem(
     pointing: str | None,
 ) -> Problem:
     """Return the rest of a night from a moment (UTC MJD) on, ready for the search."""
-    first = night.index_at(from_mjd)
+    start_mjd = max(from_mjd, float(night.mjd[0]))
+    # A hair of tolerance: an MJD is good to about a microsecond.
+    first = int(np.searchsorted(night.mjd, start_mjd + 1e-9, side="right")) - 1
     lines = _lines(night, plans, rules)
     allowed = _allowed(night, outlook, rules, lines, first)
-    unbroken = allowed & ~_meridian_breaks(night, lines, first)
-    worth = np.zeros((len(lines) + 1, allowed.shape[1]))
-    for place, line in enumerate(lines):
-        priority = night.targets[line.target].priority
-        worth[place] = priority * outlook.quality[line.filter, line.target, first:] * allowed[place]
-    any_line = np.zeros((len(night.targets), allowed.shape[1]), dtype=bool)
-    for place, line in enumerate(lines):
-        any_line[line.target] |= allowed[place]
+    # What lies behind the last minute of any use need not be searched.
+    used = np.flatnonzero(allowed.any(axis=0))
+    allowed = allowed[:, : (int(used[-1]) if used.size else 0) + 2]
+    unbroken = allowed & ~_meridian_breaks(night, lines, first)[:, : allowed.shape[1]]
+    of_target = _by_target(lines, len(night.targets))
     return Problem(
         night=night,
         outlook=outlook,
@@ -149,24 +118,30 @@ def build_problem(
         rules=rules,
         from_mjd=from_mjd,
         first=first,
+        start_min=max((start_mjd - float(night.mjd[first])) * MINUTES_PER_DAY, 0.0),
         minutes=allowed.shape[1],
         lines=lines,
-        of_target=_by_target(lines, len(night.targets)),
-        remaining=np.array([*(line.count for line in lines), 0], dtype=np.int64),
-        seconds=np.array([*(line.seconds for line in lines), 1.0]),
-        change_min=np.array([*(line.change_s for line in lines), 0.0]) / 60.0,
-        contiguous_min=np.array([target.contiguous_min or 0.0 for target in night.targets]),
-        stay=_minutes_without_break(unbroken),
-        worth=worth,
-        left=np.cumsum(any_line[:, ::-1], axis=1)[:, ::-1].astype(float),
-        pointing=None if pointing is None else night.target_index(pointing),
+        of_target=of_target,
+        run_end=_run_ends(unbroken),
+        worth=_worth(night, outlook, lines, allowed, first),
+        bonus=_bonuses(night, plans, of_target, allowed),
+        contiguous_min=np.array([each.contiguous_min or 0.0 for each in night.targets]),
+        travel=travel_of(night, first),
+        pointing=len(night.targets) if pointing is None else night.target_index(pointing),
     )
 
 
 def _lines(night: Night, plans: Plans, rules: Rules) -> tuple[Line, ...]:
-    wheel = night.observatory
+    wheel, readout_s = night.observatory, night.observatory.camera.readout_s
     return tuple(
-        Line(index, place, each.seconds, each.remaining, wheel.filters[place].change_s)
+        Line(
+            target=index,
+            filter=place,
+            seconds=each.seconds,
+            count=each.remaining,
+            change_min=wheel.filters[place].change_s / 60.0,
+            each_min=(each.seconds + readout_s) / 60.0,
+        )
         for index, target in enumerate(night.targets)
         if target.name not in rules.dropped
         for each in plans[target.name]
@@ -177,43 +152,56 @@ def _lines(night: Night, plans: Plans, rules: Rules) -> tuple[Line, ...]:
 
 def _allowed(
     night: Night, outlook: Outlook, rules: Rules, lines: tuple[Line, ...], first: int
-) -> NDArray[np.bool_]:
-    mjd = night.mjd[first:]
-    allowed = np.zeros((len(lines), len(mjd)), dtype=bool)
+) -> Mask:
+    """Return the minutes (L, T) in which no limit forbids a line."""
+    filters, targets = _columns(lines)
+    at = slice(first, None)
+    allowed = (
+        (night.limits[targets, at] == 0)
+        & night.dark[filters, at]
+        & ~outlook.soft[filters, targets, at]
+    )
     for place, line in enumerate(lines):
-        allowed[place] = (
-            (night.limits[line.target, first:] == 0)
-            & night.dark[line.filter, first:]
-            & ~outlook.soft[line.filter, line.target, first:]
-        )
         until = rules.put_off.get(night.targets[line.target].name)
         if until is not None:
-            allowed[place] &= mjd >= until
-    return allowed
+            allowed[place] &= night.mjd[at] >= until
+    return np.asarray(allowed)
 
 
-def _meridian_breaks(night: Night, lines: tuple[Line, ...], first: int) -> NDArray[np.bool_]:
+def _columns(lines: tuple[Line, ...]) -> tuple[Counts, Counts]:
+    filters = np.array([line.filter for line in lines], dtype=np.int64)
+    return filters, np.array([line.target for line in lines], dtype=np.int64)
+
+
+def _worth(
+    night: Night, outlook: Outlook, lines: tuple[Line, ...], allowed: Mask, first: int
+) -> NDArray[np.float32]:
+    filters, targets = _columns(lines)
+    priorities = np.array([each.priority for each in night.targets], dtype=np.float32)
+    until = first + allowed.shape[1]
+    worth = outlook.quality[filters, targets, first:until] * priorities[targets][:, None]
+    return np.where(allowed, worth, np.float32(0.0))
+
+
+def _meridian_breaks(night: Night, lines: tuple[Line, ...], first: int) -> Mask:
     """Return the minutes (L, T) in which a german mount has to turn over on a line's target."""
-    breaks = np.zeros((len(lines), len(night.mjd) - first), dtype=bool)
-    if night.observatory.telescope.mount != "german":
-        return breaks
-    hour_angles = night.where.hour_angle_h[:, first:]
-    crossing = np.zeros(hour_angles.shape, dtype=bool)
-    crossing[:, :-1] = (hour_angles[:, :-1] < 0.0) & (hour_angles[:, 1:] >= 0.0)
-    crossing &= np.abs(hour_angles) < 6.0
-    for place, line in enumerate(lines):
-        breaks[place] = crossing[line.target]
-    return breaks
+    breaks = np.zeros((len(night.targets), len(night.mjd) - first), dtype=bool)
+    if night.observatory.telescope.mount == "german":
+        angles = night.where.hour_angle_h[:, first:]
+        # Only at the upper crossing; at the lower one the hour angle jumps from 12 to -12.
+        breaks[:, 1:] = (angles[:, :-1] < 0.0) & (angles[:, 1:] >= 0.0) & (angles[:, 1:] < 6.0)
+        # Below the pole it turns over as well: +12 h becomes -12 h.
+        breaks[:, 1:] |= (angles[:, :-1] > 6.0) & (angles[:, 1:] < -6.0)
+    found: Mask = breaks[_columns(lines)[1]]
+    return found
 
 
-def _minutes_without_break(unbroken: NDArray[np.bool_]) -> Floats:
-    """Return for how many minutes from each on a line may be exposed, with a last row of none."""
-    stay = np.zeros((unbroken.shape[0] + 1, unbroken.shape[1]))
-    ahead = np.zeros(unbroken.shape[0])
-    for minute in range(unbroken.shape[1] - 1, -1, -1):
-        ahead = np.where(unbroken[:, minute], ahead + 1.0, 0.0)
-        stay[:-1, minute] = ahead
-    return stay
+def _run_ends(unbroken: Mask) -> Counts:
+    """Return the last minute (L, T) of the unbroken stretch each minute is in; -1 outside."""
+    minutes = unbroken.shape[1]
+    broken_at = np.where(unbroken, minutes, np.arange(minutes))
+    ahead = np.minimum.accumulate(broken_at[:, ::-1], axis=1)[:, ::-1]
+    return np.where(unbroken, ahead - 1, -1).astype(np.int64)
 
 
 def _by_target(lines: tuple[Line, ...], targets: int) -> Counts:
@@ -225,3 +213,16 @@ def _by_target(lines: tuple[Line, ...], targets: int) -> Counts:
     for index, row in enumerate(rows):
         table[index, : len(row)] = row
     return table
+
+
+def _bonuses(night: Night, plans: Plans, of_target: Counts, allowed: Mask) -> Floats:
+    """Return what finishing each plan earns (N,); 0 where a line of it can't be taken at all."""
+    possible: Mask = np.asarray(allowed.any(axis=1))
+    bonus = np.zeros(len(night.targets))
+    for index, target in enumerate(night.targets):
+        own = of_target[index][of_target[index] >= 0]
+        asked = sum(1 for line in plans[target.name] if line.remaining)
+        if len(own) and len(own) == asked and possible[own].all():
+            planned_s = sum(each.seconds * each.count for each in target.exposures)
+            bonus[index] = finished_worth(target.priority, planned_s)
+    return bonus

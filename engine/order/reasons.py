@@ -103,7 +103,7 @@ def _why_left_out(problem: Problem, index: int) -> str:
     own = [place for place in problem.of_target[index] if place >= 0]
     if not own:
         return "each filter it still needs was put aside for tonight"
-    if (problem.stay[own] > 0.0).any():
+    if (problem.run_end[own] >= 0).any():
         return "its hours go to targets worth more; a higher priority would bring it in"
     night, at = problem.night, slice(problem.first, None)
     dark = night.dark[[problem.lines[place].filter for place in own]][:, at].any(axis=0)

@@ -1,0 +1,248 @@
+"""Blocks: pieces of plans that are placed whole, and what each is worth by when it begins.
+
+The search counts time in ticks of half a minute. Rounding a visit and the way to the next to ticks
+together errs by seven seconds either way; the order itself is timed exactly afterwards.
+
+Shapes: B blocks, K ticks from now to the end of the night, and one column past the end.
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from engine.order.problem import Problem
+
+Singles = NDArray[np.float32]
+Places = NDArray[np.int64]
+
+TICKS_PER_MIN = 2
+# A plan longer than the first is cut into pieces of about the second, so that it can be fitted in.
+WHOLE_MIN, PIECE_MIN = 40.0, 28.0
+# How often a block that fits nowhere is halved before what is left of it is left to the filling.
+HALVINGS = 4
+# The value of beginning where a block may not: worse than anything it could win.
+NEVER = np.float32(-1e9)
+
+# So many exposures of one line.
+Part = tuple[int, int]
+
+
+@dataclass(frozen=True, slots=True)
+class Blocks:
+    """Every block: its target, parts and minutes, and its value (B, K+1) by the tick it begins.
+
+    ``value`` is `NEVER` where a limit forbids it. What finishing a plan earns is in it when the
+    plan is one block; ``pieces`` (N,) counts the blocks of the other plans that can be finished,
+    0 for the rest, and ``bonus`` (N,) is what all of them together earn.
+    """
+
+    target: Places
+    parts: tuple[tuple[Part, ...], ...]
+    minutes: Singles
+    value: Singles
+    pieces: Places
+    bonus: Singles
+
+    def finishing(self, order: list[int]) -> float:
+        """Return what the plans of several blocks earn that are all in an order."""
+        placed = np.bincount(self.target[order], minlength=len(self.pieces))
+        return float(self.bonus[(placed == self.pieces) & (self.pieces > 0)].sum())
+
+    @property
+    def ticks(self) -> int:
+        """How many ticks there are; the last column stands for the end of the night."""
+        return int(self.value.shape[1]) - 1
+
+
+def cut(problem: Problem) -> Blocks:
+    """Return the plans cut into blocks; those that fit nowhere are cut finer, then left out."""
+    waiting = [
+        (target, piece)
+        for target in range(len(problem.targets))
+        for piece in _pieces(problem, target)
+    ]
+    integral = _integral(problem)
+    kept: list[tuple[int, tuple[Part, ...]]] = []
+    values: list[Singles] = []
+    for _ in range(HALVINGS):
+        table = _values(problem, waiting, integral)
+        fits = np.asarray((table > NEVER).any(axis=1))
+        kept += [each for each, fit in zip(waiting, fits, strict=True) if fit]
+        values.append(table[fits])
+        waiting = [
+            (target, less)
+            for (target, parts), fit in zip(waiting, fits, strict=True)
+            if not fit
+            for less in _halves(problem, target, parts)
+        ]
+        if not waiting:
+            break
+    lengths = [_length_min(problem, parts) for _, parts in kept]
+    target = np.array([target for target, _ in kept], dtype=np.int64)
+    return Blocks(
+        target=target,
+        parts=tuple(parts for _, parts in kept),
+        minutes=np.array(lengths, dtype=np.float32),
+        value=np.concatenate(values) if values else np.zeros((0, _ticks(problem) + 1), np.float32),
+        pieces=_pieces_to_finish(problem, kept),
+        bonus=problem.bonus.astype(np.float32),
+    )
+
+
+def _pieces_to_finish(problem: Problem, kept: list[tuple[int, tuple[Part, ...]]]) -> Places:
+    """Return how many blocks finish each plan (N,); 0 for one, and where blocks don't suffice."""
+    pieces = np.zeros(len(problem.targets), dtype=np.int64)
+    left = {target: sum(c for _, c in parts) for target, parts in _whole_plans(problem)}
+    for target, parts in kept:
+        pieces[target] += 1
+        left[target] -= sum(count for _, count in parts)
+    short = [target for target, count in left.items() if count > 0]
+    pieces[short] = 0
+    pieces[pieces == 1] = 0
+    return pieces
+
+
+def _whole_plans(problem: Problem) -> list[tuple[int, tuple[Part, ...]]]:
+    return [
+        (target, tuple((line, problem.lines[line].count) for line in problem.lines_of(target)))
+        for target in range(len(problem.targets))
+    ]
+
+
+def _ticks(problem: Problem) -> int:
+    return problem.minutes * TICKS_PER_MIN
+
+
+def _length_min(problem: Problem, parts: tuple[Part, ...]) -> float:
+    lines = problem.lines
+    return sum(lines[line].change_min + count * lines[line].each_min for line, count in parts)
+
+
+def _pieces(problem: Problem, target: int) -> list[tuple[Part, ...]]:
+    """Return what is left of one target's plan in pieces: whole when it is short enough."""
+    own = problem.lines_of(target)
+    asked_min, unbroken_min = problem.asked_min(target), problem.contiguous_min[target]
+    parts = tuple((line, problem.lines[line].count) for line in own)
+    if not parts:
+        return []
+    # A run that must not be broken is cut only where each piece is still long enough.
+    if asked_min <= max(WHOLE_MIN, 2.0 * unbroken_min):
+        return [parts]
+    share_min = asked_min / max(int(asked_min // max(PIECE_MIN, 1.2 * unbroken_min)), 1)
+    return _cut_at(problem, parts, share_min, unbroken_min)
+
+
+def _cut_at(
+    problem: Problem, parts: tuple[Part, ...], share_min: float, least_min: float
+) -> list[tuple[Part, ...]]:
+    """Return parts in pieces of about a share (minutes) each, none shorter than the least."""
+    pieces: list[list[Part]] = [[]]
+    filled_min = 0.0
+    for line, count in parts:
+        each_min, left = problem.lines[line].each_min, count
+        while left:
+            take = min(left, max(1, round((share_min - filled_min) / each_min)))
+            pieces[-1].append((line, take))
+            filled_min += take * each_min
+            left -= take
+            if filled_min >= 0.9 * share_min:
+                pieces.append([])
+                filled_min = 0.0
+    found = [tuple(piece) for piece in pieces if piece]
+    if len(found) > 1 and _length_min(problem, found[-1]) < max(least_min, 0.3 * share_min):
+        last = found.pop()
+        found[-1] = _joined(found[-1], last)
+    return found
+
+
+def _joined(first: tuple[Part, ...], then: tuple[Part, ...]) -> tuple[Part, ...]:
+    if first[-1][0] == then[0][0]:
+        line, count = then[0]
+        return (*first[:-1], (line, first[-1][1] + count), *then[1:])
+    return (*first, *then)
+
+
+def _halves(problem: Problem, target: int, parts: tuple[Part, ...]) -> list[tuple[Part, ...]]:
+    """Return parts in two: between filters, or one filter's exposures halved.
+
+    A run that must not be broken keeps its first exposures for as long as it asks, and no more.
+    """
+    least_min = float(problem.contiguous_min[target])
+    if least_min > 0.0:
+        return [_shortest(problem, parts, least_min)]
+    if len(parts) > 1:
+        middle = len(parts) // 2
+        return [parts[:middle], parts[middle:]]
+    line, count = parts[0]
+    if count < 2:
+        return []
+    return [((line, count // 2),), ((line, count - count // 2),)]
+
+
+def _shortest(problem: Problem, parts: tuple[Part, ...], least_min: float) -> tuple[Part, ...]:
+    """Return the first of parts (exposures) that last at least so many minutes together."""
+    kept: list[Part] = []
+    for line, count in parts:
+        each_min = problem.lines[line].each_min
+        take = min(count, math.ceil((least_min - 1e-6) / each_min))
+        if take <= 0:
+            break
+        kept.append((line, take))
+        least_min -= take * each_min
+    return tuple(kept)
+
+
+def _integral(problem: Problem) -> Singles:
+    """Return the worth of each line (L, K+1) summed up to each tick, per minute."""
+    by_tick = np.repeat(problem.worth, TICKS_PER_MIN, axis=1) / np.float32(TICKS_PER_MIN)
+    sums = np.zeros((by_tick.shape[0], by_tick.shape[1] + 1), dtype=np.float32)
+    np.cumsum(by_tick, axis=1, out=sums[:, 1:])
+    return sums
+
+
+def _values(
+    problem: Problem, blocks: list[tuple[int, tuple[Part, ...]]], integral: Singles
+) -> Singles:
+    """Return the value (B, K+1) of each block at each tick."""
+    ticks = _ticks(problem)
+    table = np.zeros((len(blocks), ticks + 1), dtype=np.float32)
+    if not blocks:
+        return table
+    possible = np.ones((len(blocks), ticks), dtype=bool)
+    at = np.arange(ticks)
+    offset_min = np.zeros(len(blocks))
+    for column in range(max(len(parts) for _, parts in blocks)):
+        rows = np.array([i for i, (_, parts) in enumerate(blocks) if len(parts) > column])
+        own = [blocks[row][1][column] for row in rows]
+        places = np.array([line for line, _ in own])
+        lines = [problem.lines[line] for line in places]
+        counts = np.array([count for _, count in own])
+        each_min = np.array([line.each_min for line in lines])
+        begin_min = offset_min[rows] + np.array([line.change_min for line in lines])
+        end_min = begin_min + counts * each_min
+        offset_min[rows] = end_min
+        begin_tick = np.rint(begin_min * TICKS_PER_MIN).astype(int)
+        end_tick = np.maximum(np.rint(end_min * TICKS_PER_MIN).astype(int), begin_tick + 1)
+        begin, end = (np.minimum(at[None] + m[:, None], ticks) for m in (begin_tick, end_tick))
+        # Exposures times the mean worth of the ticks they take, whatever rounding made of those.
+        exposed_s = counts * np.array([line.seconds for line in lines])
+        rate = exposed_s * TICKS_PER_MIN / (end_tick - begin_tick)
+        gained = integral[places[:, None], end] - integral[places[:, None], begin]
+        table[rows, :-1] += gained * rate.astype(np.float32)[:, None]
+        # Half a tick each way, so that the exact times are lawful too.
+        first = np.floor(begin_min[:, None] + at[None] / TICKS_PER_MIN).astype(int)
+        last = np.ceil(
+            end_min[:, None] - problem.readout_min + (at[None] + 0.5) / TICKS_PER_MIN
+        ).astype(int)
+        fits = problem.run_end[places[:, None], np.minimum(first, problem.minutes - 1)] >= last
+        possible[rows] &= fits & (first < problem.minutes)
+    whole = dict(_whole_plans(problem))
+    bonus = [problem.bonus[target] if parts == whole[target] else 0.0 for target, parts in blocks]
+    table[:, :-1] += np.array(bonus, dtype=np.float32)[:, None]
+    table[:, :-1][~possible] = NEVER
+    table[:, -1] = NEVER
+    return table

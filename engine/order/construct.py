@@ -1,0 +1,183 @@
+"""First orders: a handful of greedies that each take the best next block, built side by side.
+
+They differ in how dear they hold time, how much they mind what a block would still bring later,
+and how they feel urgency. Two of them are the plain rules a person would use; they stay in the
+ensemble, so no order is ever worse than those.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from engine.order.blocks import NEVER, TICKS_PER_MIN, Blocks
+from engine.order.travel import Travel
+
+Singles = NDArray[np.float32]
+Places = NDArray[np.int64]
+
+
+@dataclass(frozen=True, slots=True)
+class Temper:
+    """How one greedy weighs things.
+
+    ``price`` times the price of the time a block takes is subtracted from its value, ``regret``
+    times the best it would still bring later as well; the rest is divided by its time to the
+    power ``per_time``. Blocks whose last chance is within about ``felt_min`` minutes count up to
+    ``1 + urgency`` times.
+    """
+
+    price: float
+    regret: float
+    per_time: float
+    urgency: float = 0.0
+    felt_min: float = 60.0
+
+
+VALUE_FIRST = Temper(0.0, 0.0, 1.0)
+URGENT = Temper(0.0, 0.0, 1.0, urgency=1.5)
+TEMPERS = (
+    VALUE_FIRST,
+    URGENT,
+    Temper(0.0, 0.0, 1.0, urgency=3.0, felt_min=120.0),
+    Temper(0.6, 0.0, 1.0, urgency=1.0),
+    Temper(0.8, 0.5, 1.0),
+    Temper(1.0, 0.8, 1.0),
+    Temper(1.0, 1.0, 0.5),
+    Temper(0.9, 0.9, 0.0),
+)
+
+
+@dataclass(frozen=True, slots=True)
+class Start:
+    """Where and when orders begin: the target pointed at, the tick, and blocks to take first."""
+
+    here: int
+    tick: int
+    first: tuple[int, ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class Turn:
+    """Blocks in turn, and the tick at which each begins."""
+
+    blocks: tuple[int, ...]
+    ticks: tuple[int, ...]
+
+
+def greedies(
+    blocks: Blocks, travel: Travel, price: Singles, start: Start, tempers: tuple[Temper, ...]
+) -> list[Turn]:
+    """Return one turn of blocks for each temper."""
+    rows, ticks = len(tempers), blocks.ticks
+    if not len(blocks.target) or ticks == 0:
+        return [Turn((), ())] * rows
+    tables = _Tables.of(blocks, price, tempers)
+    held, tick, here = _after_first(blocks, travel, start)
+    sequences = [list(held.blocks) for _ in range(rows)]
+    moments = [list(held.ticks) for _ in range(rows)]
+    state_tick = np.full(rows, tick)
+    state_here = np.full(rows, here)
+    free = np.ones((rows, len(blocks.target)), dtype=bool)
+    free[:, list(start.first)] = False
+    active = np.ones(rows, dtype=bool)
+    row_index = np.arange(rows)
+    while active.any():
+        minute = np.minimum(state_tick // TICKS_PER_MIN, ticks // TICKS_PER_MIN - 1)
+        way = travel.between(state_here[:, None], blocks.target[None], minute[:, None])
+        arrive = np.minimum(state_tick[:, None] + np.rint(way * TICKS_PER_MIN).astype(int), ticks)
+        begin = tables.ready[tables.row, arrive]
+        score = tables.score(begin, state_tick)
+        score[~free] = -np.inf
+        chosen = score.argmax(axis=1)
+        active &= np.isfinite(score[row_index, chosen])
+        for row in np.flatnonzero(active):
+            block = int(chosen[row])
+            sequences[row].append(block)
+            moments[row].append(int(begin[row, block]))
+            free[row, block] = False
+            state_tick[row] = begin[row, block] + tables.length[block]
+            state_here[row] = blocks.target[block]
+        state_tick = np.minimum(state_tick, ticks)
+    return [Turn(tuple(s), tuple(m)) for s, m in zip(sequences, moments, strict=True)]
+
+
+def _after_first(blocks: Blocks, travel: Travel, start: Start) -> tuple[Turn, int, int]:
+    """Return the blocks that were to come first, and the tick and target after them."""
+    tick, here = start.tick, start.here
+    held: list[int] = []
+    ticks: list[int] = []
+    for block in start.first:
+        there = int(blocks.target[block])
+        at = np.array(min(tick, blocks.ticks - 1) // TICKS_PER_MIN)
+        way = float(travel.between(np.array(here), np.array(there), at))
+        arrive = min(tick + round(way * TICKS_PER_MIN), blocks.ticks)
+        possible = np.flatnonzero(blocks.value[block, arrive:] > NEVER)
+        if possible.size:
+            held.append(block)
+            ticks.append(arrive + int(possible[0]))
+            tick = ticks[-1] + round(float(blocks.minutes[block]) * TICKS_PER_MIN)
+            here = there
+    return Turn(tuple(held), tuple(ticks)), min(tick, blocks.ticks), here
+
+
+@dataclass(frozen=True, slots=True)
+class _Tables:
+    """What every greedy reads: (B, K+1) each but for the first and last ones."""
+
+    tempers: tuple[Temper, ...]
+    row: Places
+    length: Places
+    ready: Places
+    value: Singles
+    paid: Singles
+    later: Singles
+    last: Places
+
+    @classmethod
+    def of(cls, blocks: Blocks, price: Singles, tempers: tuple[Temper, ...]) -> _Tables:
+        ticks = blocks.ticks
+        possible = blocks.value > NEVER
+        ready = np.where(possible, np.arange(ticks + 1), ticks)
+        ready = np.minimum.accumulate(ready[:, ::-1], axis=1)[:, ::-1]
+        length = np.rint(blocks.minutes * TICKS_PER_MIN).astype(np.int64)
+        paid = np.zeros(ticks + 1, dtype=np.float32)
+        np.cumsum(price, out=paid[1:])
+        ends = np.minimum(np.arange(ticks + 1)[None] + length[:, None], ticks)
+        net = np.where(possible, blocks.value - (paid[ends] - paid[None]), np.float32(0.0))
+        net = np.maximum(net, 0.0)
+        later = np.maximum.accumulate(net[:, ::-1], axis=1)[:, ::-1]
+        last = np.where(possible, np.arange(ticks + 1), -1).max(axis=1)
+        return cls(
+            tempers,
+            np.arange(len(blocks.target))[None],
+            length,
+            ready,
+            blocks.value,
+            paid,
+            later,
+            last,
+        )
+
+    def score(self, begin: Places, now: Places) -> Singles:
+        """Return how good each block (G, B) is that would begin when said, for each greedy."""
+        ticks = self.value.shape[1] - 1
+        value = self.value[self.row, begin]
+        end = np.minimum(begin + self.length[None], ticks)
+        cost = self.paid[end] - self.paid[np.minimum(now, ticks)][:, None]
+        soon = np.minimum(begin + 20 * TICKS_PER_MIN, ticks)
+        column = {
+            name: np.array([getattr(t, name) for t in self.tempers], dtype=np.float32)[:, None]
+            for name in ("price", "regret", "per_time", "urgency", "felt_min")
+        }
+        net = value - column["price"] * cost - column["regret"] * self.later[self.row, soon]
+        taken = np.maximum(end - now[:, None], 1).astype(np.float32)
+        slack = np.maximum(self.last[None] - begin, 0) / (column["felt_min"] * TICKS_PER_MIN)
+        score = net / taken ** column["per_time"]
+        # Only what is worth taking can be urgent.
+        score *= np.where(net > 0.0, 1.0 + column["urgency"] * np.exp(-slack), 1.0)
+        score[value <= NEVER] = -np.inf
+        found: Singles = score
+        return found

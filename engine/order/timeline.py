@@ -1,0 +1,305 @@
+"""The exact order: blocks timed to the second, then what is left free filled exposure by exposure.
+
+Minutes are those of the problem's first column. A stay is one visit in the making. Limits hold at
+the grid's minutes before and after every exposure, and at all between.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass, field
+
+import numpy as np
+from numpy.typing import NDArray
+
+from engine.order.blocks import TICKS_PER_MIN, Blocks
+from engine.order.improve import Timed
+from engine.order.merit import exposure_worth
+from engine.order.problem import Problem
+
+Floats = NDArray[np.float64]
+
+# A block that the search put off by more than this is put off; less is its rounding.
+PUT_OFF_MIN = 1.0
+# How much later than it arrives a run may begin when a limit still forbids it.
+WAIT_MIN = 2
+# Gaps shorter than this are not worth filling; how often in each, and at which shares of it.
+GAP_MIN, FILLINGS = 0.8, 400
+SHARES = (0.0, 0.05, 0.1, 0.2, 0.35, 0.5, 0.65, 0.8)
+
+
+@dataclass(frozen=True, slots=True)
+class Run:
+    """So many exposures of one line, one after the other; the filter is in when it begins."""
+
+    line: int
+    count: int
+    begin_min: float
+
+
+@dataclass(slots=True)
+class Stay:
+    """One stay on one target: when the way there begins, its runs, and when the last is read."""
+
+    target: int
+    begin_min: float
+    end_min: float
+    runs: list[Run] = field(default_factory=list)
+
+
+class Timeline:
+    """Stays in turn, and what is left of every line."""
+
+    def __init__(self, problem: Problem) -> None:
+        self.problem = problem
+        self.stays: list[Stay] = []
+        self._tables = _LineTables.of(problem)
+        self.left = np.array([line.count for line in problem.lines], dtype=np.int64)
+
+    def place(self, blocks: Blocks, timed: Timed) -> None:
+        """Time blocks exactly, in turn: what no longer fits is left to the filling."""
+        start_tick = self.problem.start_min * TICKS_PER_MIN
+        for block, tick in zip(timed.blocks, timed.ticks, strict=True):
+            wanted_min = (max(float(tick), start_tick)) / TICKS_PER_MIN
+            self._append(int(blocks.target[block]), blocks.parts[block], wanted_min)
+
+    def _append(self, target: int, parts: Sequence[tuple[int, int]], wanted_min: float) -> None:
+        problem = self.problem
+        last = self.stays[-1] if self.stays else None
+        leave_min = last.end_min if last else problem.start_min
+        here = last.target if last else problem.pointing
+        arrive_min = leave_min + problem.travel.exact_min(here, leave_min, target, leave_min)
+        if wanted_min > arrive_min + PUT_OFF_MIN:
+            arrive_min = wanted_min
+        stay = Stay(target, leave_min, arrive_min)
+        for line, count in parts:
+            run = self._run(here, leave_min, line, count, stay.end_min)
+            if run is not None:
+                stay.runs.append(run)
+                stay.end_min = run.begin_min + run.count * problem.lines[line].each_min
+                here, leave_min = target, stay.end_min
+        if stay.runs and self._long_enough(stay):
+            self._take(stay)
+            self._join(len(self.stays), stay)
+
+    def _run(
+        self, here: int, leave_min: float, line: int, count: int, ready_min: float
+    ) -> Run | None:
+        """Return a run as soon as a mount that leaves a target can begin it; None if none fits."""
+        problem, each = self.problem, self.problem.lines[line]
+        begin_min = ready_min + each.change_min
+        for _ in range(WAIT_MIN + 1):
+            # A german mount may have to turn over when the begin slips across the meridian.
+            way_min = problem.travel.exact_min(here, leave_min, each.target, begin_min)
+            begin_min = max(begin_min, leave_min + way_min + each.change_min)
+            fit = min(count, self.room(line, begin_min))
+            if fit > 0:
+                return Run(line, fit, begin_min)
+            begin_min = float(int(begin_min) + 1)
+        return None
+
+    def room(self, line: int, begin_min: float) -> int:
+        """Return how many exposures of a line fit before a limit when begun at a minute."""
+        if begin_min >= self.problem.minutes:
+            return 0
+        each = self.problem.lines[line]
+        end_min = self.problem.run_end[line, int(begin_min)]
+        return max(int((end_min - begin_min + self.problem.readout_min) / each.each_min), 0)
+
+    def _long_enough(self, stay: Stay) -> bool:
+        """Say whether a stay is as long without a break as its target asks, if it can be."""
+        least = min(
+            self.problem.contiguous_min[stay.target],
+            sum(
+                self.left[line] * self.problem.lines[line].each_min
+                for line in self.problem.lines_of(stay.target)
+            ),
+        )
+        return bool(stay.end_min - stay.runs[0].begin_min >= least - 1e-6)
+
+    def _take(self, stay: Stay) -> None:
+        for run in stay.runs:
+            self.left[run.line] -= run.count
+
+    def _join(self, place: int, stay: Stay) -> None:
+        """Put a stay in its place; with a neighbour on the same target it is one."""
+        self.stays.insert(place, stay)
+        for at in (place + 1, place):
+            if 0 < at < len(self.stays):
+                before, after = self.stays[at - 1], self.stays[at]
+                # A run across a meridian flip or a wait stays a visit of its own.
+                gap_min = after.runs[0].begin_min - before.end_min
+                if before.target == after.target and gap_min < 1.0:
+                    before.runs += after.runs
+                    before.end_min = after.end_min
+                    del self.stays[at]
+
+    # Filling
+
+    def fill(self) -> None:
+        """Fill every gap with the exposures worth most in it, one run at a time."""
+        if not self.problem.lines:
+            return
+        waiting = [(place, 0) for place in range(len(self.stays), -1, -1)]
+        for _ in range(FILLINGS):
+            if not waiting:
+                return
+            place, tried = waiting.pop()
+            stay = self._best_in_gap(place)
+            if stay is None:
+                continue
+            stays = len(self.stays)
+            self._take(stay)
+            self._join(place, stay)
+            grown = len(self.stays) - stays
+            waiting = [(at + grown if at > place else at, n) for at, n in waiting]
+            waiting += [(place + 1, tried + 1)] if grown > 0 else []
+            waiting += [(place, tried + 1)] if tried < 12 else []
+
+    def set_out(self) -> None:
+        """Let every stay begin no sooner than the way to its first exposure asks."""
+        problem = self.problem
+        here, leave_min = problem.pointing, problem.start_min
+        for stay in self.stays:
+            first = stay.runs[0]
+            way_min = problem.travel.exact_min(here, leave_min, stay.target, first.begin_min)
+            change_min = problem.lines[first.line].change_min
+            stay.begin_min = max(leave_min, first.begin_min - change_min - way_min)
+            here, leave_min = stay.target, stay.end_min
+
+    def _best_in_gap(self, place: int) -> Stay | None:
+        problem = self.problem
+        before = self.stays[place - 1] if place else None
+        after = self.stays[place] if place < len(self.stays) else None
+        begin_min = before.end_min if before else problem.start_min
+        end_min = after.runs[0].begin_min if after else float(problem.minutes - 1)
+        if end_min - begin_min < GAP_MIN:
+            return None
+        here = before.target if before else problem.pointing
+        left = np.flatnonzero((self.left > 0) & self._usable(begin_min, end_min))
+        if not left.size:
+            return None
+        tables = self._tables.only(left)
+        at = np.array(int(begin_min))
+        to = problem.travel.between(np.array(here), tables.target, at).astype(float)
+        onward: Floats = np.zeros(len(to))
+        if after is not None:
+            change = problem.lines[after.runs[0].line].change_min
+            way = problem.travel.between(tables.target, np.array(after.target), at)
+            onward = way.astype(float) + change
+        moments = begin_min + np.array(SHARES)[None] * (end_min - begin_min)
+        start: Floats = moments + to[:, None] + tables.change[:, None]
+        minute = np.minimum(start.astype(np.int64), problem.minutes - 1)
+        rows = left[:, None]
+        limit: Floats = np.minimum(
+            problem.run_end[rows, minute] + problem.readout_min, end_min - onward[:, None]
+        )
+        fit: Floats = np.floor((limit - start) / tables.each[:, None])
+        fit = np.asarray(np.clip(fit, 0, self.left[left][:, None]), dtype=float)
+        middle = np.minimum(
+            (start + 0.5 * fit * tables.each[:, None]).astype(np.int64), problem.minutes - 1
+        )
+        worth: Floats = np.where(
+            problem.run_end[rows, minute] >= 0, problem.worth[rows, middle], 0.0
+        )
+        worth = worth * fit * tables.seconds[:, None]
+        tries = _Tries(left, worth, start, fit)
+        return self._first_lawful(place, tries, end_min)
+
+    def _usable(self, begin_min: float, end_min: float) -> NDArray[np.bool_]:
+        """Return which lines (L,) may be exposed at some minute of a gap."""
+        begin, end = int(begin_min), int(end_min) + 1
+        return np.asarray((self.problem.run_end[:, begin:end] >= 0).any(axis=1))
+
+    def _first_lawful(self, place: int, tries: _Tries, end_min: float) -> Stay | None:
+        """Return the best of the tried runs that holds to the second; None when none does."""
+        for flat in np.argsort(-tries.worth, axis=None)[:12]:
+            row, moment = divmod(int(flat), tries.worth.shape[1])
+            if tries.worth[row, moment] <= 0.0:
+                return None
+            line, count = int(tries.line[row]), int(tries.fit[row, moment])
+            stay = self._stay_in_gap(place, line, count, float(tries.start_min[row, moment]))
+            if stay is not None and stay.end_min <= end_min:
+                return stay
+        return None
+
+    def _stay_in_gap(self, place: int, line: int, count: int, start_min: float) -> Stay | None:
+        problem, each = self.problem, self.problem.lines[line]
+        before = self.stays[place - 1] if place else None
+        after = self.stays[place] if place < len(self.stays) else None
+        leave_min = before.end_min if before else problem.start_min
+        here = before.target if before else problem.pointing
+        run = self._run(here, leave_min, line, count, start_min - each.change_min)
+        while run is not None and run.count > 0:
+            end_min = run.begin_min + run.count * each.each_min
+            stay = Stay(each.target, leave_min, end_min, [run])
+            if after is None or self._reaches(end_min, each.target, after):
+                adjacent = here == each.target or (
+                    after is not None and after.target == each.target
+                )
+                return stay if adjacent or self._long_enough(stay) else None
+            run = Run(run.line, run.count - 1, run.begin_min)
+        return None
+
+    def _reaches(self, end_min: float, target: int, after: Stay) -> bool:
+        first = after.runs[0]
+        way_min = self.problem.travel.exact_min(target, end_min, after.target, first.begin_min)
+        change_min = self.problem.lines[first.line].change_min
+        return end_min + way_min + change_min <= first.begin_min + 1e-9
+
+    # What it is worth
+
+    def value(self) -> float:
+        """Return what the stays are worth by the documented merit, exposure by exposure."""
+        problem = self.problem
+        total = 0.0
+        for stay in self.stays:
+            for run in stay.runs:
+                line = problem.lines[run.line]
+                middles = (
+                    run.begin_min + np.arange(run.count) * line.each_min + 0.5 * line.seconds / 60.0
+                )
+                # `worth` holds priority x quality already.
+                quality = problem.worth[run.line, middles.astype(np.int64)].astype(float)
+                total += float(exposure_worth(1, line.seconds, 1.0) * quality.sum())
+        for target, bonus in enumerate(problem.bonus):
+            own = problem.lines_of(target)
+            if bonus > 0.0 and not self.left[own].any():
+                total += float(bonus)
+        return total
+
+
+@dataclass(frozen=True, slots=True)
+class _Tries:
+    """Runs tried in a gap: lines (R,), and worth, begin and exposures (R, M) of each."""
+
+    line: NDArray[np.int64]
+    worth: Floats
+    start_min: Floats
+    fit: Floats
+
+
+@dataclass(frozen=True, slots=True)
+class _LineTables:
+    """The lines of a problem as columns."""
+
+    target: NDArray[np.int64]
+    change: Floats
+    each: Floats
+    seconds: Floats
+
+    @classmethod
+    def of(cls, problem: Problem) -> _LineTables:
+        lines = problem.lines
+        return cls(
+            np.array([line.target for line in lines], dtype=np.int64),
+            np.array([line.change_min for line in lines]),
+            np.array([line.each_min for line in lines]),
+            np.array([line.seconds for line in lines]),
+        )
+
+    def only(self, rows: NDArray[np.int64]) -> _LineTables:
+        """Return some of the lines."""
+        return _LineTables(
+            self.target[rows], self.change[rows], self.each[rows], self.seconds[rows]
+        )
