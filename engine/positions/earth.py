@@ -7,6 +7,7 @@ it. A console in a dome must do neither: `prepare_astropy` says so in one place,
 
 from __future__ import annotations
 
+import warnings
 from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import cache
@@ -34,14 +35,23 @@ FINALS_FIRST_MJD = 41684.0
 UNKNOWN_UT1_S_PER_DAY = 0.001
 
 
-@cache
 def prepare_astropy() -> None:
-    """Tell astropy never to use the network and never to refuse for want of a newer table."""
+    """Tell astropy never to use the network, and never to refuse or warn for want of a newer table.
+
+    What it would say, `earth_table_note` says once and in plain words. Its own positions past the
+    table's end take UT1 = UTC, up to 14 arcsec off. Calling this twice is harmless.
+    """
     from astropy.utils import iers
+    from astropy.utils.exceptions import AstropyWarning
 
     iers.conf.auto_download = False
     iers.conf.auto_max_age = None
-    iers.conf.iers_degraded_accuracy = "warn"
+    iers.conf.iers_degraded_accuracy = "ignore"
+    for message, category in (
+        ("Tried to get polar motions", AstropyWarning),
+        (r".*dubious year", erfa.ErfaWarning),
+    ):
+        warnings.filterwarnings("ignore", message=message, category=category)
 
 
 @dataclass(frozen=True, slots=True)
