@@ -9,7 +9,7 @@ from engine.light.flats import (
     morning_flat_s,
 )
 from engine.light.moonlight import MoonLight
-from engine.light.photometry import implied_throughput, is_plausible
+from engine.light.photometry import implied_throughput, zero_point_doubt
 from engine.light.scintillation import scintillation_rms
 from engine.light.sky import (
     MOONLIGHT_ACCURACY_PERCENT,
@@ -34,9 +34,9 @@ __all__ = [
     "depth_share",
     "evening_flat_s",
     "implied_throughput",
-    "is_plausible",
     "morning_flat_s",
     "scintillation_rms",
     "sky_mag_arcsec2",
     "sky_mags_arcsec2",
+    "zero_point_doubt",
 ]

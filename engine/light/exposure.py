@@ -121,10 +121,10 @@ class ExposureModel:
     ) -> Floats:
         """Return the signal-to-noise of a star in an exposure (s), or in the sum of several.
 
-        Arrays broadcast; NaN where an input is. For few electrons (below about 20 in all) the
-        noise is not Gaussian and the number only a guide.
+        Arrays broadcast; NaN where an input is, and without a time. For few electrons (below about
+        20 in all) the noise is not Gaussian and the number only a guide.
         """
-        time_s = np.asarray(seconds, dtype=float)
+        time_s = _time_s(seconds)
         rate = self._star_rate(magnitude, seen)
         growing, fixed = self._noise(seen)
         variance = (rate + growing + self._flicker(seen) * rate**2) * time_s + fixed
@@ -151,9 +151,9 @@ class ExposureModel:
         """Return the faintest magnitude that reaches a signal-to-noise in an exposure (s).
 
         S = (q^2 + sqrt(q^4 + 4 q^2 N u)) / 2u with u = 1 - q^2 sigma_scint^2. NaN where
-        scintillation alone keeps every star, however bright, below it.
+        scintillation alone keeps every star, however bright, below it, and without a time.
         """
-        time_s = np.asarray(seconds, dtype=float)
+        time_s = _time_s(seconds)
         wanted = np.asarray(signal_to_noise, dtype=float) ** 2
         growing, fixed = self._noise(seen)
         left = 1.0 - wanted * self._flicker(seen) / time_s
@@ -208,8 +208,8 @@ class ExposureModel:
     ) -> Subexposures:
         """Return the most parts of a total time (s) whose read noise costs no more than a share.
 
-        More, shorter parts lose less to a trailed frame or a cloud. ``longest_s`` is what
-        saturation allows, and wins.
+        Both times positive. More, shorter parts lose less to a trailed frame or a cloud.
+        ``longest_s`` is what saturation allows, and wins.
         """
         shortest_s = float(self.sky_limited_s(sky_mag_arcsec2, read_noise_share=read_noise_share))
         count = max(math.floor(total_s / shortest_s), 1)
@@ -238,3 +238,9 @@ class ExposureModel:
     def _flicker(self, seen: Conditions) -> Floats:
         """Return the variance of scintillation in one second, as a fraction squared."""
         return scintillation_rms(self.aperture_m, seen.airmass, 1.0, self.elevation_m) ** 2
+
+
+def _time_s(seconds: ArrayLike) -> Floats:
+    """Return times (s), NaN for what is none."""
+    time_s = np.asarray(seconds, dtype=float)
+    return np.where(time_s > 0.0, time_s, np.nan)

@@ -56,7 +56,14 @@ def implied_throughput(filter_: Filter, telescope: Telescope) -> float:
     return float(10.0 ** (0.4 * filter_.zero_point_mag) / photons_per_s)
 
 
-def is_plausible(throughput: float) -> bool:
-    """Say whether a telescope may have such a throughput: see `PLAUSIBLE_THROUGHPUT`."""
+def zero_point_doubt(filter_: Filter, telescope: Telescope) -> str | None:
+    """Return a sentence when a filter's zero point can't be right for the telescope, else None."""
     low, high = PLAUSIBLE_THROUGHPUT
-    return low <= throughput <= high
+    throughput = implied_throughput(filter_, telescope)
+    if low <= throughput <= high:
+        return None
+    return (
+        f"zero_point_mag {filter_.zero_point_mag:g} in {filter_.name} would mean that "
+        f"{100.0 * throughput:.2g} % of the light is detected, expected {100.0 * low:g} to "
+        f"{100.0 * high:g} %: check it, the aperture and width_nm"
+    )

@@ -19,7 +19,10 @@ from engine.times import MINUTES_PER_DAY
 
 @dataclass(frozen=True, slots=True)
 class SeeingMeasurement:
-    """One seeing value: when (UTC MJD), the zenith FWHM at 500 nm (arcsec), its relative error."""
+    """One seeing value: when (UTC MJD), and the zenith FWHM at 500 nm (arcsec).
+
+    ``error_ln`` is its relative error, more than 0.
+    """
 
     mjd: float
     zenith_arcsec: float

@@ -6,7 +6,7 @@ import math
 
 import numpy as np
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from engine.image import ImageModel
@@ -63,6 +63,7 @@ def test_noise_of_drawn_exposures(magnitude: float, sky_pixels: float, gain: flo
     assert measured.mean() / measured.std() == pytest.approx(expected, rel=0.04)
 
 
+@settings(deadline=None)
 @given(magnitudes, lengths, skies, airmasses)
 def test_time_and_depth_undo_signal_to_noise(
     magnitude: float, seconds: float, sky: float, airmass: float
@@ -84,6 +85,13 @@ def test_scintillation_limits_every_star_however_bright() -> None:
     assert float(model.signal_to_noise(0.0, 10.0, SEEN)) == pytest.approx(1.0 / flicker, rel=1e-3)
     assert math.isnan(float(model.limiting_magnitude(1.01 / flicker, 10.0, SEEN)))
     assert math.isfinite(float(model.limiting_magnitude(0.99 / flicker, 10.0, SEEN)))
+
+
+def test_no_time_is_no_exposure() -> None:
+    model = an_exposure_model()
+    times = np.array([-1.0, 0.0, math.nan, 10.0])
+    assert np.array_equal(np.isnan(model.signal_to_noise(18.0, times, SEEN)), [1, 1, 1, 0])
+    assert np.array_equal(np.isnan(model.limiting_magnitude(5.0, times, SEEN)), [1, 1, 1, 0])
 
 
 def test_everything_broadcasts() -> None:
@@ -143,6 +151,7 @@ def test_aperture_of_a_predicted_image() -> None:
     assert float(model.signal_to_noise(20.0, 60.0, Conditions(1.2, 21.0, aperture))) > 0.98 * best
 
 
+@settings(deadline=None)
 @given(magnitudes, skies, st.floats(0.005, 0.6))
 def test_saturation_fills_the_brightest_pixel(magnitude: float, sky: float, peak: float) -> None:
     model = an_exposure_model()
@@ -155,6 +164,7 @@ def test_saturation_fills_the_brightest_pixel(magnitude: float, sky: float, peak
     assert rate * seconds / model.gain_e_per_adu == pytest.approx(60000.0)
 
 
+@settings(deadline=None)
 @given(st.floats(1.0, 20_000.0), skies, st.floats(0.01, 0.3))
 def test_parts_cost_no_more_read_noise_than_allowed(
     total_s: float, sky: float, share: float

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from engine.light import MoonLight, sky_mag_arcsec2, sky_mags_arcsec2
@@ -50,6 +50,7 @@ def test_shapes_broadcast_and_below_the_horizon_is_no_sky() -> None:
         assert np.array_equal(one, skies[place], equal_nan=True)
 
 
+@settings(deadline=None)
 @given(
     st.floats(-90.0, 90.0),
     st.floats(-90.0, 90.0),
@@ -127,6 +128,7 @@ def test_no_seam_where_the_low_moon_begins() -> None:
     assert below == pytest.approx(above, rel=1e-6)
 
 
+@settings(deadline=None)
 @given(st.floats(0.12, 1.0), st.floats(500.0, 1030.0))
 def test_in_v_the_published_formula_is_left_alone(extinction: float, pressure_hpa: float) -> None:
     shares = ScatteringShares.at(550.0, extinction, pressure_hpa)
