@@ -37,7 +37,13 @@ class Terminal:
             stdout=theirs,
             stderr=theirs,
             start_new_session=True,
-            env={**os.environ, "TERM": "xterm-256color", "COLORTERM": "", **environment},
+            # COLUMNS and LINES of whoever runs the tests would outweigh the terminal's own size.
+            env={
+                **{k: v for k, v in os.environ.items() if k not in ("COLUMNS", "LINES")},
+                "TERM": "xterm-256color",
+                "COLORTERM": "",
+                **environment,
+            },
         )
         os.close(theirs)
 

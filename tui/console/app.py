@@ -204,15 +204,19 @@ class Console(App[None]):
         for finding in opened.findings[:3]:
             self.tell(f"the log: line {finding.line}: {finding.what}", "warn")
         # A planner's tables are ready now: the first plan can begin at once.
-        pace = opened.watch.clock.pace
-        self.set_interval(
-            self._tick_s if pace == 1.0 else min(self._tick_s, QUICK_TICK_S), self._tick
-        )
-        self._tick()
+        quick = opened.watch.clock.pace != 1.0
+        self.set_interval(min(self._tick_s, QUICK_TICK_S) if quick else self._tick_s, self.beat)
+        self.beat()
 
     # The clockwork
 
-    def _tick(self) -> None:
+    @property
+    def is_settled(self) -> bool:
+        """Whether there is a plan and none is being made."""
+        return self.live is not None and self.live.plan is not None and not self._planning
+
+    def beat(self) -> None:
+        """Do what has come due, and show it: called by a timer."""
         watch = self.live
         if watch is None:
             return

@@ -36,7 +36,7 @@ def go_on_label(watch: Watch) -> str:
         Stage.READY: "start the run" if acts.lines_now(watch) else "accept the next",
         Stage.LOST: "go on, time is no longer lost",
         Stage.EXPOSING: "(exposing)",
-        Stage.BETWEEN: "(reading out)",
+        Stage.BETWEEN: "(between two)",
         Stage.CUT_OFF: "K keep, L lost",
     }[watch.stage]
 
@@ -162,8 +162,8 @@ def _between(watch: Watch, width: int) -> list[Line]:
     wait_s = (start_mjd - watch.clock.now_mjd()) * SECONDS_PER_DAY
     return [
         line(
-            Span(" READING OUT  ", "title"),
-            Span(f"{max(wait_s, 0):.0f} s to {step.filter} {step.seconds:g} s", "strong"),
+            Span(f" STARTS IN {max(wait_s, 0):.0f} s  ", "title"),
+            Span(f"{step.filter} {step.seconds:g} s", "strong"),
             Span(f"  {step.number} of {step.of}", "text"),
         ),
         *_proposal(watch, _next(watch), width)[:1],
