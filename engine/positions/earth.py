@@ -134,13 +134,21 @@ def ut1_minus_utc_s(mjd: ArrayLike) -> Floats:
     Interpolated between days, across a leap second without the step; held beyond either end of the
     table.
     """
-    table = earth_table()
-    # A leap second is a step of one second in UT1 - UTC: interpolate the smooth UT1 - TAI.
-    steps = np.cumsum(np.concatenate(([0.0], np.round(np.diff(table.ut1_minus_utc_s)))))
+    table, steps = earth_table(), _steps_s()
     when = np.asarray(mjd, dtype=float)
     smooth = np.interp(when, table.mjd, table.ut1_minus_utc_s - steps)
     place = np.clip(np.searchsorted(table.mjd, when, side="right") - 1, 0, len(steps) - 1)
     return np.asarray(smooth + steps[place])
+
+
+@cache
+def _steps_s() -> Floats:
+    """Return the leap seconds since the table's first day, by day.
+
+    Each is a step of one second in UT1 - UTC: what is interpolated is the smooth UT1 - TAI.
+    """
+    changes = np.diff(earth_table().ut1_minus_utc_s, prepend=earth_table().ut1_minus_utc_s[0])
+    return np.asarray(np.cumsum(np.round(changes)))
 
 
 def pole_rad(mjd: ArrayLike) -> tuple[Floats, Floats]:
