@@ -43,8 +43,9 @@ BAD_SPREAD_LN = 0.7
 # (jumps with slow recovery: Munoz-Tunon et al. 1997); how often and how far: common practice.
 JUMP_SHARE = 0.003
 JUMP_SPREAD_LN = 0.37
-# No filter is ever given up for good: the night may change its manners.
-LEAST_WEIGHT = 1e-9
+# No filter is ever given up for good, since a steady night may turn lively: with this a dozen
+# measurements persuade the bank, and on nights that stay as they are it costs nothing (tried).
+LEAST_WEIGHT = 1e-4
 
 # The bank: factors on the published spread and e-folding time, with what is believed of each
 # before the night. Racine gives 17 +- 5 min; other sites are not his. Common practice, no source.

@@ -135,6 +135,17 @@ def test_in_v_the_published_formula_is_left_alone(extinction: float, pressure_hp
     assert (shares.gas, shares.haze) == pytest.approx((1.0, 1.0))
 
 
+@pytest.mark.parametrize("wavelength_nm", [365.0, 438.0, 641.0, 798.0])
+def test_gas_and_haze_each_scatter_as_they_extinguish(wavelength_nm: float) -> None:
+    """Of a sky made of gas and a known haze, V and a band: each grows by its own law."""
+    haze_v, growth = 0.05, (550.0 / wavelength_nm) ** 1.3
+    gas, gas_v = float(rayleigh_mag(wavelength_nm, 880.0)), float(rayleigh_mag(550.0, 880.0))
+    extinction, extinction_v = gas + haze_v * growth, gas_v + haze_v
+    shares = ScatteringShares.at(wavelength_nm, extinction, 880.0)
+    assert shares.gas * extinction / extinction_v == pytest.approx(gas / gas_v)
+    assert shares.haze * extinction / extinction_v == pytest.approx(growth)
+
+
 def test_moonlight_is_bluer_than_the_moon() -> None:
     """Sky of a full Moon against a dark one: most is added in B, least in I."""
     lit, dark = (

@@ -18,6 +18,7 @@ from engine.seeing.bank import (
     MEASUREMENT_ERROR_LN,
     SPREAD_LN,
     Bank,
+    _merged,
     _updated,
 )
 from tests.engine.seeing_nights import START_MJD, NightKind, mjd_at, scores
@@ -98,6 +99,39 @@ def only_as_published(bank: Bank) -> Bank:
     return replace(only, weight=np.array([[1.0, 0.0]]))
 
 
+def test_two_answers_become_one_with_their_mean_and_spread() -> None:
+    """Against the moments of values drawn from both."""
+    chance = np.random.default_rng(9)
+    weight = np.array([[0.3, 0.7]])
+    mean = np.array([[[0.5, 0.1], [-0.2, 0.4]]])
+    covariance = np.array([[[[0.04, -0.01], [-0.01, 0.09]], [[0.02, 0.0], [0.0, 0.01]]]])
+    total, middle, spread = _merged(weight, mean, covariance)
+    drawn = np.concatenate(
+        [
+            chance.multivariate_normal(mean[0, place], covariance[0, place], count)
+            for place, count in enumerate((60_000, 140_000))
+        ]
+    )
+    assert total == pytest.approx([1.0])
+    assert middle[0] == pytest.approx(drawn.mean(axis=0), abs=0.003)
+    assert spread[0] == pytest.approx(np.cov(drawn.T), abs=0.003)
+
+
+def test_a_night_may_change_its_manners() -> None:
+    """Three steady hours, then a lively one: the bank believes in a larger spread again."""
+    chance = np.random.default_rng(4)
+    steady = [1.3] * 180
+    lively = [1.3 * math.exp(0.45 * each) for each in chance.normal(size=12)]
+
+    def believed_spread_ln(measured: list[SeeingMeasurement]) -> float:
+        bank = nowcast(measured, measured[-1].mjd, TYPICAL).bank
+        return float(np.sum(bank.weight * bank.spread_ln))
+
+    calm = every(1.0, steady)
+    assert believed_spread_ln(calm) < 0.16
+    assert believed_spread_ln([*calm, *every(10.0, lively, start_min=190.0)]) > 0.3
+
+
 def test_before_any_measurement_the_usual_value_with_a_wide_band() -> None:
     forecast = nowcast([], START_MJD, TYPICAL)
     assert not forecast.measured
@@ -174,7 +208,8 @@ def test_a_moment_before_now_gets_the_value_of_now_and_nan_gets_nan() -> None:
 @settings(max_examples=80, deadline=None)
 @given(
     st.lists(
-        st.tuples(st.floats(0.0, 600.0), st.floats(1e-3, 1e3), st.floats(0.01, 0.5)), max_size=30
+        st.tuples(st.floats(0.0, 600.0), st.floats(1e-30, 1e30), st.floats(0.01, 0.5)),
+        max_size=30,
     ),
     st.floats(0.2, 10.0),
 )
