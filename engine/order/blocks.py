@@ -35,7 +35,8 @@ Part = tuple[int, int]
 class Blocks:
     """Every block: its target, parts and minutes, and its value (B, K+1) by the tick it begins.
 
-    ``value`` is `NEVER` where a limit forbids it. What finishing a plan earns is in it when the
+    ``value`` is `NEVER` where a limit forbids it; ``ready`` (B, K+1) is the next tick at which none
+    does, K for never again. What finishing a plan earns is in it when the
     plan is one block; ``pieces`` (N,) counts the blocks of the other plans that can be finished,
     0 for the rest, and ``bonus`` (N,) is what all of them together earn.
     """
@@ -44,6 +45,7 @@ class Blocks:
     parts: tuple[tuple[Part, ...], ...]
     minutes: Singles
     value: Singles
+    ready: Places
     pieces: Places
     bonus: Singles
 
@@ -83,14 +85,23 @@ def cut(problem: Problem) -> Blocks:
             break
     lengths = [_length_min(problem, parts) for _, parts in kept]
     target = np.array([target for target, _ in kept], dtype=np.int64)
+    value = np.concatenate(values) if values else np.zeros((0, _ticks(problem) + 1), np.float32)
     return Blocks(
         target=target,
         parts=tuple(parts for _, parts in kept),
         minutes=np.array(lengths, dtype=np.float32),
-        value=np.concatenate(values) if values else np.zeros((0, _ticks(problem) + 1), np.float32),
+        value=value,
+        ready=_ready(value),
         pieces=_pieces_to_finish(problem, kept),
         bonus=problem.bonus.astype(np.float32),
     )
+
+
+def _ready(value: Singles) -> Places:
+    """Return the next tick (B, K+1) at which each block may begin."""
+    ticks = value.shape[1] - 1
+    possible = np.where(value > NEVER, np.arange(ticks + 1), ticks)
+    return np.minimum.accumulate(possible[:, ::-1], axis=1)[:, ::-1].astype(np.int64)
 
 
 def _pieces_to_finish(problem: Problem, kept: list[tuple[int, tuple[Part, ...]]]) -> Places:

@@ -140,8 +140,6 @@ class _Tables:
     def of(cls, blocks: Blocks, price: Singles, tempers: tuple[Temper, ...]) -> _Tables:
         ticks = blocks.ticks
         possible = blocks.value > NEVER
-        ready = np.where(possible, np.arange(ticks + 1), ticks)
-        ready = np.minimum.accumulate(ready[:, ::-1], axis=1)[:, ::-1]
         length = np.rint(blocks.minutes * TICKS_PER_MIN).astype(np.int64)
         paid = np.zeros(ticks + 1, dtype=np.float32)
         np.cumsum(price, out=paid[1:])
@@ -154,7 +152,7 @@ class _Tables:
             tempers,
             np.arange(len(blocks.target))[None],
             length,
-            ready,
+            blocks.ready,
             blocks.value,
             paid,
             later,

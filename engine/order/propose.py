@@ -29,6 +29,9 @@ HYSTERESIS = 0.003
 BROKEN_SHARE = 0.05
 # Two first orders are made exact beside the one that was searched: the plain rules, always.
 PLAIN = (VALUE_FIRST, URGENT)
+NEAR_SHARE = 0.85
+# Of the time used before the search, the share that is kept back for what comes after it.
+RESERVE = 0.5
 # Milliseconds when none are given: for lists up to so many targets, and for longer ones.
 SHORT_LIST = 100
 COLD_MS, WARM_MS = (50.0, 200.0), (10.0, 40.0)
@@ -138,16 +141,24 @@ def _turn_ahead(problem: Problem, blocks: Blocks, order: Order, start: Start) ->
 def _afresh(problem: Problem, blocks: Blocks, effort: Effort, seed: int) -> Timeline:
     start = _start(problem, blocks)
     price = price_of_time(blocks, start.tick)
-    firsts = [
-        _as_timed(problem, blocks, start, turn)
-        for turn in greedies(blocks, problem.travel, price, start, TEMPERS)
-    ]
-    best = max(firsts, key=lambda each: each.value)
-    search = Search(blocks, problem.travel, start, best, seed)
-    found = search.run(effort)
-    plain = [firsts[TEMPERS.index(temper)] for temper in PLAIN]
-    candidates = [_exact(problem, blocks, each) for each in (found, best, *plain)]
-    return max(candidates, key=lambda timeline: timeline.value())
+    turns = greedies(blocks, problem.travel, price, start, TEMPERS)
+    worths = [_worth(blocks, turn) for turn in turns]
+    search = Search(blocks, problem.travel, start, turns[int(np.argmax(worths))], seed)
+    found = search.run(effort.with_reserve(RESERVE))
+    timeline = _exact(problem, blocks, found)
+    for temper in PLAIN:
+        place = TEMPERS.index(temper)
+        # Filled up, a plain rule may come out ahead, but not from far behind.
+        if worths[place] > NEAR_SHARE * found.value:
+            plain = _exact(problem, blocks, _as_timed(problem, blocks, start, turns[place]))
+            timeline = max(timeline, plain, key=Timeline.value)
+    return timeline
+
+
+def _worth(blocks: Blocks, turn: Turn) -> float:
+    return float(blocks.value[list(turn.blocks), list(turn.ticks)].sum()) + blocks.finishing(
+        list(turn.blocks)
+    )
 
 
 def _start(problem: Problem, blocks: Blocks) -> Start:

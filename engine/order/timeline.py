@@ -187,7 +187,8 @@ class Timeline:
             change = problem.lines[after.runs[0].line].change_min
             way = problem.travel.between(tables.target, np.array(after.target), at)
             onward = way.astype(float) + change
-        moments = begin_min + np.array(SHARES)[None] * (end_min - begin_min)
+        opens_min = max(begin_min, float(self._opens(left, begin_min)) - to.max())
+        moments = opens_min + np.array(SHARES)[None] * (end_min - opens_min)
         start: Floats = moments + to[:, None] + tables.change[:, None]
         minute = np.minimum(start.astype(np.int64), problem.minutes - 1)
         rows = left[:, None]
@@ -210,6 +211,11 @@ class Timeline:
         """Return which lines (L,) may be exposed at some minute of a gap."""
         begin, end = int(begin_min), int(end_min) + 1
         return np.asarray((self.problem.run_end[:, begin:end] >= 0).any(axis=1))
+
+    def _opens(self, lines: NDArray[np.int64], begin_min: float) -> int:
+        """Return the first minute of a gap in which one of some lines may be exposed."""
+        usable = (self.problem.run_end[lines, int(begin_min) :] >= 0).any(axis=0)
+        return int(begin_min) + int(np.argmax(usable))
 
     def _first_lawful(self, place: int, tries: _Tries, end_min: float) -> Stay | None:
         """Return the best of the tried runs that holds to the second; None when none does."""

@@ -88,15 +88,13 @@ def _overlaps(order: Order, night: Night) -> list[str]:
     telescope = observatory.telescope
     runs = _runs(order, observatory)
     found = []
-    for (left, _, _, leaves), (right, filter_, begins, _) in pairwise(runs):
-        need_s = observatory.filter_named(filter_).change_s
-        a, b = _target(night, left.target), _target(night, right.target)
-        way_deg = _way_deg(observatory, a, b, leaves, begins)
+    for (left, right), way_deg in zip(pairwise(runs), _ways_deg(night, runs), strict=True):
+        need_s = observatory.filter_named(right[1]).change_s
         if way_deg > 0.0:
             need_s += way_deg / telescope.slew_deg_per_s + telescope.settle_s
-        if begins + 1.0 * SECOND_DAYS < leaves + need_s * SECOND_DAYS:
-            short_s = (leaves - begins) / SECOND_DAYS + need_s
-            found.append(f"{left.target} to {right.target}: {short_s:.1f} s too early")
+        if right[2] + 1.0 * SECOND_DAYS < left[3] + need_s * SECOND_DAYS:
+            short_s = (left[3] - right[2]) / SECOND_DAYS + need_s
+            found.append(f"{left[0].target} to {right[0].target}: {short_s:.1f} s too early")
     if runs and runs[0][2] < order.from_mjd - SECOND_DAYS:
         found.append("the first exposure begins before the order does")
     found += [f"{v.target} begins after its exposures" for v in order.visits if _early(v)]
@@ -132,29 +130,41 @@ def _hour_angle_h(altitude: Any, azimuth: Any, latitude_deg: float) -> tuple[Any
     return np.degrees(np.arctan2(west, south)) / 15.0, np.degrees(np.arcsin(sin_dec))
 
 
-def _way_deg(observatory: Observatory, a: Target, b: Target, leaves: float, begins: float) -> float:
-    """Return how far the slower axis turns from one target to the other, in degrees."""
-    moments = np.array([leaves, begins])
-    seen = _coordinates([a, b]).transform_to(_frame(observatory, moments))
-    altitudes, azimuths = seen.alt.deg, seen.az.deg
-    if observatory.telescope.mount == "altazimuth":
-        if a.name == b.name:
-            return 0.0
-        at_once = _coordinates([a, b]).transform_to(_frame(observatory, leaves))
-        turn = abs(at_once.az.deg[0] - at_once.az.deg[1])
-        lift = abs(at_once.alt.deg[0] - at_once.alt.deg[1])
-        return float(max(min(turn, 360.0 - turn), lift))
-    angles, declinations = _hour_angle_h(altitudes, azimuths, observatory.site.latitude_deg)
-    across = observatory.telescope.mount == "german" and (angles[0] < 0.0) != (angles[1] < 0.0)
-    if a.name == b.name and not across:
+def _ways_deg(night: Night, runs: list[tuple[Visit, str, float, float]]) -> list[float]:
+    """Return how far the slower axis turns between each run and the next, in degrees."""
+    if len(runs) < 2:
+        return []
+    observatory = night.observatory
+    # Of every pair: the left where it is left, the right at the same moment and where it begins.
+    names = [n for a, b in pairwise(runs) for n in (a[0].target, b[0].target, b[0].target)]
+    moments = np.array([t for a, b in pairwise(runs) for t in (a[3], a[3], b[2])])
+    seen = _coordinates([_target(night, name) for name in names]).transform_to(
+        _frame(observatory, moments)
+    )
+    altitude, azimuth = seen.alt.deg, seen.az.deg
+    angle_h, declination = _hour_angle_h(altitude, azimuth, observatory.site.latitude_deg)
+    columns = (altitude, azimuth, angle_h, declination)
+    return [
+        _way_deg(observatory, names[i] == names[i + 1], *(c[i : i + 3] for c in columns))
+        for i in range(0, len(names), 3)
+    ]
+
+
+def _way_deg(
+    observatory: Observatory, same: bool, altitude: Any, azimuth: Any, angle_h: Any, dec: Any
+) -> float:
+    """Return how far the slower axis turns; angles of left, right at once, right at its begin."""
+    mount = observatory.telescope.mount
+    across = mount == "german" and (angle_h[0] < 0.0) != (angle_h[2] < 0.0)
+    if same and not across:
         return 0.0
-    # Both move on together, so the turn is the difference at one moment.
-    sidereal_h = (begins - leaves) * 24.0 * 1.00273791
-    turn = abs(angles[1] - sidereal_h - angles[0]) * 15.0
-    turn = min(turn % 360.0, 360.0 - turn % 360.0)
-    lift = abs(declinations[1] - declinations[0])
+    if mount == "altazimuth":
+        turn, lift = abs(azimuth[0] - azimuth[1]), abs(altitude[0] - altitude[1])
+    else:
+        turn, lift = abs(angle_h[0] - angle_h[1]) * 15.0, abs(dec[0] - dec[1])
+    turn = min(turn, 360.0 - turn)
     if across:
-        turn, lift = abs(180.0 - turn), 180.0 - abs(declinations).sum()
+        turn, lift = abs(180.0 - turn), 180.0 - abs(dec[0]) - abs(dec[1])
     # A hair less: these angles hold aberration and refraction differently from the mount's.
     return float(max(max(turn, lift) - 0.02, 0.0))
 
@@ -219,7 +229,8 @@ def _limits(order: Order, night: Night, rules: Rules) -> list[str]:
     least_moon = np.array([m.target.minimum_moon_separation_deg or 0.0 for m in moments])
     most_mass = np.array([m.target.maximum_airmass or np.inf for m in moments])
     # Pickering (2002): the air mass that the logbook's limits are meant in.
-    mass = 1.0 / np.sin(np.radians(altitude + 244.0 / (165.0 + 47.0 * altitude**1.1)))
+    up = np.maximum(altitude, 0.1)
+    mass = 1.0 / np.sin(np.radians(up + 244.0 / (165.0 + 47.0 * up**1.1)))
     wrong = {
         "too low": altitude < telescope.minimum_altitude_deg - ALTITUDE_DEG,
         "behind the skyline": altitude < skyline - ALTITUDE_DEG,

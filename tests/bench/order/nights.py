@@ -68,7 +68,7 @@ def random_night(seed: int, targets: int, load: float) -> RandomNight:
     """Return a night made from a seed, with so many targets asking for ``load`` dark times."""
     random = np.random.default_rng([seed, targets])
     observatory = _observatory(random)
-    day = date(2027, 1, 1) + timedelta(days=int(random.integers(365)))
+    day = date(2026, 1, 1) + timedelta(days=int(random.integers(365)))
     empty = _opened(observatory, (ANY,), day)
     dark = np.flatnonzero(empty.dark.all(axis=0))
     if len(dark) < 120:
