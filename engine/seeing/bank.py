@@ -54,6 +54,9 @@ _SPREAD_BELIEF = np.array([0.1, 0.15, 0.25, 0.3, 0.2])
 _TIME_FACTORS = np.array([0.6, 1.0, 1.7])
 _TIME_BELIEF = np.array([0.25, 0.5, 0.25])
 
+_JUMP = JUMP_SPREAD_LN**2 * np.eye(2)
+_STEADY_OR_JUMPED = np.repeat([1.0 - BAD_SHARE - JUMP_SHARE, JUMP_SHARE], 2)
+
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Bank:
@@ -97,23 +100,17 @@ class Bank:
 
     def given(self, value_ln: float, error_ln: float) -> Bank:
         """Return the bank with one measurement taken in, ln(arcsec) and its standard error."""
-        steady = _updated(self.mean, self.covariance, value_ln, error_ln)
-        jump = JUMP_SPREAD_LN**2 * np.eye(2)
-        jumped = _updated(self.mean, self.covariance + jump, value_ln, error_ln)
+        # Four ways to a good one: last good or bad, and since then steady or jumped.
+        likelihood, mean, covariance = _updated(
+            np.concatenate([self.mean, self.mean], axis=1),
+            np.concatenate([self.covariance, self.covariance + _JUMP], axis=1),
+            value_ln,
+            error_ln,
+        )
+        before = np.concatenate([self.weight, self.weight], axis=1) * _STEADY_OR_JUMPED
+        good = _merged(before * likelihood, mean, covariance)
         surprise = value_ln - self.mean.sum(axis=-1)
         variance = self.covariance.sum(axis=(-2, -1)) + error_ln**2 + BAD_SPREAD_LN**2
-        good_weight = np.concatenate(
-            [
-                self.weight * (1.0 - BAD_SHARE - JUMP_SHARE) * steady[0],
-                self.weight * JUMP_SHARE * jumped[0],
-            ],
-            axis=1,
-        )
-        good = _merged(
-            good_weight,
-            np.concatenate([steady[1], jumped[1]], axis=1),
-            np.concatenate([steady[2], jumped[2]], axis=1),
-        )
         bad = _merged(
             self.weight * BAD_SHARE * _density(surprise, variance), self.mean, self.covariance
         )

@@ -48,10 +48,13 @@ def main(nights: int = 250, asked: int = 4) -> None:
             )
             name = ""
     night = draw_night(NightKind(mean_gap_min=5.0), np.random.default_rng(SEED))
-    begin = time.perf_counter()
-    nowcast(night.measurements, mjd_at(NIGHT_MIN), TYPICAL_ARCSEC)
-    spent_ms = 1e3 * (time.perf_counter() - begin)
-    print(f"one forecast from {len(night.measurements)} measurements: {spent_ms:.1f} ms")
+    spent_s = []
+    for _ in range(7):
+        begin = time.perf_counter()
+        nowcast(night.measurements, mjd_at(NIGHT_MIN), TYPICAL_ARCSEC)
+        spent_s.append(time.perf_counter() - begin)
+    count = len(night.measurements)
+    print(f"one forecast from {count} measurements: {1e3 * min(spent_s):.1f} ms")
 
 
 if __name__ == "__main__":
