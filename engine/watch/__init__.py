@@ -9,6 +9,7 @@ from engine.watch.advice import CautionNow, cautions
 from engine.watch.opening import Opened, open_watch
 from engine.watch.plan import Plan
 from engine.watch.planning import Planner
+from engine.watch.reach import Reach, Scene, reach
 from engine.watch.snapshot import Snapshot, order_of_night, snapshot
 from engine.watch.stage import NextExposure, Stage
 from engine.watch.watch import Watch
@@ -19,6 +20,8 @@ __all__ = [
     "Opened",
     "Plan",
     "Planner",
+    "Reach",
+    "Scene",
     "Snapshot",
     "Stage",
     "Watch",
@@ -26,5 +29,6 @@ __all__ = [
     "cautions",
     "open_watch",
     "order_of_night",
+    "reach",
     "snapshot",
 ]

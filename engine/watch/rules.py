@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from engine.log import NightState
+from engine.log import NightState, RunStop
 from engine.order import Rules
 
 
@@ -27,4 +27,16 @@ def rules_from(state: NightState, now_mjd: float) -> Rules:
                 put_off.pop(each.target, None)
                 forbidden.discard(each.filter)
     still = {target: until for target, until in put_off.items() if until > now_mjd}
-    return Rules(frozenset(dropped), still, frozenset(forbidden))
+    return Rules(frozenset(dropped), still, frozenset(forbidden), _held(state))
+
+
+def _held(state: NightState) -> str | None:
+    """Return the target the telescope was sent to, until its run there is over.
+
+    The observer has decided: an order that proposed to leave it again would be of no use.
+    """
+    if state.pointing is None:
+        return None
+    sent_n = state.pointing.n
+    left = any(isinstance(each, RunStop) and each.n > sent_n for each in state.events)
+    return None if left and state.run is None else state.pointing.target

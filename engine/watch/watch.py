@@ -197,7 +197,9 @@ class Watch:
         if because is None:
             return None
         planner, state, before = self.planner, self._state, self.plan
-        now_mjd = self.clock.now_mjd()
+        # An entry of this very millisecond counts: its time in the log may be rounded up.
+        last_mjd = state.events[-1].t_mjd if state.events else 0.0
+        now_mjd = max(self.clock.now_mjd(), last_mjd)
         return lambda: planner.plan(state, now_mjd, because, before)
 
     def adopt(self, plan: Plan) -> None:

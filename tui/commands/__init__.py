@@ -76,6 +76,18 @@ COMMANDS: tuple[Command, ...] = (
         options=(Option("--seeing", "zenith seeing, arcsec at 500 nm", {"type": float}),),
     ),
     Command(
+        "exposure",
+        "print what an exposure of one target reaches: signal, depth, saturation",
+        takes_moment=True,
+        options=(
+            Option("--target", "the target's name", {"required": True, "metavar": "NAME"}),
+            Option("--filter", "one filter of its plan (all of them)", {"metavar": "NAME"}),
+            Option("--seconds", "length of an exposure (the plan's)", {"type": float}),
+            Option("--magnitude", "of the star (the target's)", {"type": float}),
+            Option("--seeing", "zenith seeing, arcsec at 500 nm", {"type": float}),
+        ),
+    ),
+    Command(
         "order",
         "print the proposed order for the rest of the night",
         takes_moment=True,

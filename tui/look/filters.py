@@ -80,7 +80,7 @@ def _levels(style: Style) -> tuple[int, int]:
     ground = _nearest(_brightness(style.bgcolor, 0.0) * 0.9)
     text = max(_nearest(_brightness(style.color, 190.0) * 1.05), DIMMEST_TEXT)
     if abs(text - ground) < LEAST_GAP:
-        text = 255 if ground < 135 else 0
+        text = 255 if ground <= 135 else 0
     return text, ground
 
 

@@ -8,7 +8,7 @@ import numpy as np
 
 from engine.night import FilterNow, TargetNow
 from engine.positions import skyline_altitude_deg
-from engine.watch import Watch
+from engine.watch import Scene, Watch, reach
 from tui.console.panels.local import arcsec, hhmm
 from tui.paint.chart import Chart, Curve, paint_chart
 from tui.paint.figures import bar, pips
@@ -27,7 +27,7 @@ def paint_target(watch: Watch, name: str | None, width: int, height: int) -> lis
     if now is None:
         return [line(Span(" no target is chosen", "dim"))]
     head = _head(watch, now)
-    tail = [*_plan(now), *_terms(watch, now)]
+    tail = [*_plan(now), *_terms(watch, now), *_reach(watch, now)]
     rows = min(height - len(head) - len(tail), MOST_CHART_ROWS)
     chart = _chart(watch, now, width, rows) if rows >= LEAST_CHART_ROWS else []
     return [cut(each, width) for each in [*head, *chart, *tail]][:height]
@@ -91,11 +91,8 @@ def _terms(watch: Watch, now: TargetNow) -> list[Line]:
     """Return the blurs of the first filter still needed, as bars on one scale."""
     if not math.isfinite(now.airmass) or watch.plan is None:
         return []
-    needed = [each for each in now.filters if each.progress.remaining] or list(now.filters)
-    first = needed[0]
-    at = watch.planner.night.index_at(watch.clock.now_mjd())
-    seeing = float(watch.plan.outlook.seeing_arcsec[at])
-    image = watch.planner.model.breakdown(first.filter_index, seeing, now.airmass)
+    first = _first_needed(now)
+    image = watch.planner.model.breakdown(first.filter_index, _seeing(watch), now.airmass)
     terms = image.terms
     pairs = (
         ("atmosphere", terms.atmosphere),
@@ -124,6 +121,50 @@ def _terms(watch: Watch, now: TargetNow) -> list[Line]:
             ]
         rows.append(tuple(spans))
     return rows
+
+
+def _reach(watch: Watch, now: TargetNow) -> list[Line]:
+    """Return what an exposure in the first filter still needed will reach."""
+    if not math.isfinite(now.airmass) or watch.plan is None:
+        return []
+    one = _first_needed(now)
+    scene = Scene(one.filter_index, _seeing(watch), now.airmass, one.sky_mag_arcsec2)
+    plan, observatory = one.progress, watch.planner.logbook.observatory
+    found = reach(observatory, watch.planner.model, scene, plan.seconds, now.target.magnitude)
+    star = (
+        f", S/N {found.signal_to_noise:.0f} at mag {found.magnitude:g}"
+        if math.isfinite(found.magnitude)
+        else ""
+    )
+    parts = found.parts
+    return [
+        line(
+            Span(f" {plan.filter} {plan.seconds:g} s reaches", "dim"),
+            Span(f" mag {found.limiting_magnitude:.1f}", "strong"),
+            Span(f"{star}", "text"),
+            Span(f"  saturates in {found.saturation_s:.0f} s" if found.saturates else "", "bad"),
+        ),
+        line(
+            Span(f" sky-limited from {found.sky_limited_s:.0f} s", "dim"),
+            Span(
+                f"; as {parts.count} × {parts.seconds:.0f} s, read noise "
+                f"+{parts.read_noise_share:.0%}",
+                "dim",
+            ),
+        ),
+    ]
+
+
+def _first_needed(now: TargetNow) -> FilterNow:
+    """Return the first filter of the plan with something left; the first when nothing is."""
+    return next((each for each in now.filters if each.progress.remaining), now.filters[0])
+
+
+def _seeing(watch: Watch) -> float:
+    """Return the zenith seeing of this minute's outlook (arcsec)."""
+    assert watch.plan is not None
+    at = watch.planner.night.index_at(watch.clock.now_mjd())
+    return float(watch.plan.outlook.seeing_arcsec[at])
 
 
 def _chart(watch: Watch, now: TargetNow, width: int, rows: int) -> list[Line]:

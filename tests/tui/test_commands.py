@@ -1,0 +1,167 @@
+"""The printing commands: their JSON as scripts rely on it, their exit status, their errors."""
+
+from __future__ import annotations
+
+import json
+import shutil
+from pathlib import Path
+from typing import Any
+
+import pytest
+
+from engine.logbook import sample_logbook
+from engine.times import mjd_from_iso
+from tui.command import main
+
+AT = "2027-03-25T12:00:00Z"
+NIGHT = "2027-03-25"
+
+
+@pytest.fixture
+def folder(tmp_path: Path) -> Path:
+    """Return a copy of the sample's two files, without its past nights."""
+    folder = tmp_path / "nights"
+    folder.mkdir()
+    for name in ("observatory.toml", "targets.toml"):
+        shutil.copy(sample_logbook() / name, folder)
+    return folder
+
+
+def run_json(capsys: pytest.CaptureFixture[str], *words: str) -> tuple[int, Any]:
+    """Run a command with --json; return its status and what it printed."""
+    status = main([*words, "--json"])
+    return status, json.loads(capsys.readouterr().out)
+
+
+def test_almanac_json(folder: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    """Every key of the contract, ISO UTC or null, in the order of a night."""
+    status, told = run_json(capsys, "almanac", "--logbook", str(folder), "--night", NIGHT)
+    assert status == 0
+    assert list(told) == [
+        "night", "sunset", "civil_dusk", "nautical_dusk", "astronomical_dusk",
+        "astronomical_dawn", "nautical_dawn", "civil_dawn", "sunrise", "moonrise", "moonset",
+        "moon_illumination",
+    ]  # fmt: skip
+    assert told["night"] == NIGHT
+    moments = [mjd_from_iso(told[name]) for name in list(told)[1:9]]
+    assert moments == sorted(moments)
+    assert 0.0 <= told["moon_illumination"] <= 1.0
+
+
+def test_sky_json(folder: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    """Every key of the contract for every target, null where there is no image."""
+    status, told = run_json(capsys, "sky", "--logbook", str(folder), "--at", AT)
+    assert status == 0
+    assert list(told) == ["at", "mjd", "lst_h", "seeing_arcsec", "sun", "moon", "targets"]
+    assert told["mjd"] == pytest.approx(mjd_from_iso(AT))
+    assert set(told["sun"]) == {"altitude_deg", "azimuth_deg"}
+    assert set(told["moon"]) == {"altitude_deg", "azimuth_deg", "illumination"}
+    assert len(told["targets"]) == 62
+    for target in told["targets"]:
+        assert list(target) == [
+            "name", "ra_deg", "dec_deg", "altitude_deg", "apparent_altitude_deg", "azimuth_deg",
+            "hour_angle_h", "parallactic_angle_deg", "airmass", "moon_separation_deg",
+            "observable", "reason", "filters",
+        ]  # fmt: skip
+        assert target["observable"] == (target["reason"] is None)
+        up = target["airmass"] is not None
+        assert up == (target["apparent_altitude_deg"] >= 0.0)
+        for each in target["filters"]:
+            assert list(each) == [
+                "filter", "image_size_arcsec", "image_size_px", "elongation", "terms_arcsec",
+                "sky_mag_arcsec2", "planned", "done", "credit",
+            ]  # fmt: skip
+            assert list(each["terms_arcsec"]) == [
+                "atmosphere", "diffraction", "optics", "tracking", "dispersion", "sampling",
+            ]  # fmt: skip
+            assert (each["image_size_arcsec"] is not None) == up
+
+
+def test_order_json(folder: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    """Visits follow each other inside the span, their exposures inside them."""
+    status, told = run_json(
+        capsys, "order", "--logbook", str(folder), "--night", NIGHT, "--seeing", "1.4"
+    )
+    assert status == 0
+    assert list(told) == [
+        "from", "until", "value", "bound", "visits", "left_out", "compute_ms",
+    ]  # fmt: skip
+    assert told["bound"] is None
+    assert told["value"] > 0.0
+    before = mjd_from_iso(told["from"])
+    for visit in told["visits"]:
+        assert list(visit) == [
+            "target", "start", "end", "exposures", "airmass_start", "airmass_end",
+            "image_size_arcsec", "reason",
+        ]  # fmt: skip
+        start, end = mjd_from_iso(visit["start"]), mjd_from_iso(visit["end"])
+        assert before <= start + 1e-6 < end
+        before = end
+        assert visit["reason"]
+        for each in visit["exposures"]:
+            assert list(each) == ["filter", "seconds", "count", "start"]
+            assert start <= mjd_from_iso(each["start"]) < end
+    assert before <= mjd_from_iso(told["until"]) + 1.5 / 1440.0
+    assert all(each["reason"] for each in told["left_out"])
+
+
+def test_exposure_json(folder: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    """Longer reaches deeper; a brighter star has a better signal and saturates sooner."""
+    words = ("exposure", "--logbook", str(folder), "--target", "M 67", "--at", AT)
+    _, short = run_json(capsys, *words, "--filter", "V", "--seconds", "30")
+    _, long = run_json(capsys, *words, "--filter", "V", "--seconds", "300")
+    _, bright = run_json(capsys, *words, "--filter", "V", "--seconds", "30", "--magnitude", "8")
+    short, long, bright = (told["filters"][0] for told in (short, long, bright))
+    assert long["limiting_magnitude"] > short["limiting_magnitude"] + 1.0
+    assert long["signal_to_noise"] > short["signal_to_noise"]
+    assert bright["signal_to_noise"] > short["signal_to_noise"]
+    assert bright["saturation_s"] < short["saturation_s"]
+
+
+@pytest.mark.parametrize(
+    ("words", "status", "said"),
+    [
+        (("sky", "--at", "2027-03-25T03:00:00Z"), 1, ""),
+        (("order", "--at", "2027-03-25T22:00:00Z"), 1, "no darkness is left"),
+        (("exposure", "--target", "M 76", "--at", AT), 1, "nearest is 'M 6"),
+        (("exposure", "--target", "M 67", "--filter", "U", "--at", AT), 2, "B, V, I"),
+    ],
+)
+def test_no_is_an_answer(
+    folder: Path,
+    capsys: pytest.CaptureFixture[str],
+    words: tuple[str, ...],
+    status: int,
+    said: str,
+) -> None:
+    """Status 1 where the answer is no, 2 for a fault in the input, one line on stderr."""
+    assert main([*words, "--logbook", str(folder)]) == status
+    told = capsys.readouterr()
+    assert said in told.err
+    assert "Traceback" not in told.err
+
+
+def test_check_says_what_the_logbook_holds(
+    folder: Path, capsys: pytest.CaptureFixture[str]
+) -> None:
+    """A sound logbook is described; a faulty one gives every fault and status 2."""
+    assert main(["check", "--logbook", str(folder)]) == 0
+    assert "targets: 62" in capsys.readouterr().out
+    text = (folder / "observatory.toml").read_text()
+    bad = text.replace("latitude_deg = -31.27", "latitude_deg = -131.27").replace(
+        'mount = "german"', 'mounting = "german"'
+    )
+    (folder / "observatory.toml").write_text(bad)
+    assert main(["check", "--logbook", str(folder)]) == 2
+    lines = capsys.readouterr().err.splitlines()
+    assert len(lines) == 3
+    assert all(line.startswith(f"{folder / 'observatory.toml'}:") for line in lines)
+    assert any("site.latitude_deg: -131.27" in line for line in lines)
+    assert any("mounting: unknown key" in line and "'mount'" in line for line in lines)
+
+
+def test_a_logbook_that_is_not_there(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    """Each command says so in a line."""
+    for name in ("check", "almanac", "sky", "order"):
+        assert main([name, "--logbook", str(tmp_path / "none")]) == 2
+        assert "is missing, expected a file" in capsys.readouterr().err
