@@ -1,13 +1,13 @@
-"""No published row is forgotten: each is checked by one module here, or said not to be, and why.
+"""Every published row is checked in one module, or said there not to be used, with a reason.
 
-A module checks a row when one of its tests is parametrised with it; it leaves rows out by a
-module-level ``NOT_USED``, from prefixes of ids to reasons.
+A module of published checks claims rows with ``@pytest.mark.parametrize("row", rows(...))`` and
+lists the others of its field in ``NOT_USED``: the beginning of the ids, and why.
 """
 
 from __future__ import annotations
 
 import importlib
-from dataclasses import dataclass
+from collections import defaultdict
 from pathlib import Path
 from types import ModuleType
 
@@ -15,66 +15,60 @@ import pytest
 
 from tests.published.rows import all_rows
 
-IDS = [str(row["id"]) for row in all_rows()]
+MODULES = sorted(
+    path.stem
+    for path in Path(__file__).parent.glob("test_*.py")
+    if path.stem != Path(__file__).stem
+)
+IDS = frozenset(row["id"] for row in all_rows())
 
 
-@dataclass(frozen=True, slots=True)
-class Claims:
-    """What one module says of the rows: ids it checks, prefixes it leaves out with reasons."""
-
-    module: str
-    checked: frozenset[str]
-    not_used: dict[str, str]
-
-    def leaves_out(self, row_id: str) -> bool:
-        """Return whether a row is left out here, with a reason."""
-        return row_id.startswith(tuple(self.not_used))
+def module_named(name: str) -> ModuleType:
+    """Return one module of published checks."""
+    return importlib.import_module(f"tests.published.{name}")
 
 
-def claims_of(module: ModuleType) -> Claims:
-    """Return what a module says: from the parameters of its tests, and its ``NOT_USED``."""
-    marks = [
-        mark
-        for name, test in vars(module).items()
-        if name.startswith("test_")
-        for mark in getattr(test, "pytestmark", [])
-        if mark.name == "parametrize" and mark.args[0] == "row"
-    ]
-    checked = {parameter.values[0]["id"] for mark in marks for parameter in mark.args[1]}
-    return Claims(module.__name__, frozenset(checked), getattr(module, "NOT_USED", {}))
+def claimed_by(module: ModuleType) -> set[str]:
+    """Return the ids of the rows that the module's own tests are run with."""
+    found = set()
+    for name, test in vars(module).items():
+        if not name.startswith("test_") or getattr(test, "__module__", "") != module.__name__:
+            continue
+        for mark in getattr(test, "pytestmark", []):
+            if mark.name == "parametrize" and mark.args[0] == "row":
+                found |= {str(parameter.values[0]["id"]) for parameter in mark.args[1]}
+    return found
 
 
-CLAIMS = [
-    claims_of(importlib.import_module(f"tests.published.{path.stem}"))
-    for path in sorted(Path(__file__).parent.glob("test_*.py"))
-    if path != Path(__file__)
-]
+def left_out_by(module: ModuleType) -> dict[str, str]:
+    """Return what the module says of rows it doesn't use: beginning of the id, and why."""
+    return dict(getattr(module, "NOT_USED", {}))
 
 
 def test_ids_are_unique() -> None:
-    assert len(set(IDS)) == len(IDS)
+    assert len(IDS) == len(all_rows()) > 300
 
 
-def test_every_row_is_checked_or_left_out_for_a_reason() -> None:
-    forgotten = [
-        row_id
-        for row_id in IDS
-        if not any(row_id in each.checked or each.leaves_out(row_id) for each in CLAIMS)
-    ]
-    assert forgotten == []
+@pytest.mark.parametrize("name", MODULES)
+def test_what_a_module_leaves_out_exists_has_a_reason_and_is_not_claimed(name: str) -> None:
+    module = module_named(name)
+    claimed = claimed_by(module)
+    assert claimed, f"{name} checks no published row"
+    for prefix, reason in left_out_by(module).items():
+        assert any(each.startswith(prefix) for each in IDS), f"no row begins with {prefix!r}"
+        assert len(reason.split()) > 3, f"{prefix}: {reason!r} is no reason"
+        assert not [each for each in claimed if each.startswith(prefix)], f"{prefix} is claimed"
 
 
-def test_no_row_is_claimed_twice() -> None:
-    claimed = {
-        row_id: [each.module for each in CLAIMS if row_id in each.checked]
-        + [f"{each.module} NOT_USED" for each in CLAIMS if each.leaves_out(row_id)]
-        for row_id in IDS
-    }
-    assert {row_id: by for row_id, by in claimed.items() if len(by) > 1} == {}
-
-
-@pytest.mark.parametrize("claims", CLAIMS, ids=lambda each: each.module)
-def test_what_is_left_out_exists_and_says_why(claims: Claims) -> None:
-    for prefix, reason in claims.not_used.items():
-        assert any(row_id.startswith(prefix) for row_id in IDS), prefix
-        assert reason.strip()
+def test_every_row_is_claimed_once_or_left_out_once() -> None:
+    owners: dict[str, list[str]] = defaultdict(list)
+    for name in MODULES:
+        module = module_named(name)
+        prefixes = tuple(left_out_by(module))
+        left_out = {each for each in IDS if prefixes and each.startswith(prefixes)}
+        for each in claimed_by(module) | left_out:
+            owners[each].append(name)
+    unknown = sorted(IDS - set(owners))
+    assert not unknown, f"{len(unknown)} rows that no module speaks of: {unknown}"
+    twice = {each: names for each, names in owners.items() if len(names) > 1}
+    assert not twice, f"rows that several modules speak of: {twice}"
