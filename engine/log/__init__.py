@@ -1,7 +1,8 @@
 """The night on disk, and the state of the night as a fold over it.
 
 ``NightLog.open`` locks and recovers a log, ``LogWorker`` appends to it off the clock's path,
-``read_log`` reads any log and changes none, ``fold`` turns events into a `NightState`.
+``read_log`` reads any log and changes none, `Follower` reads on in one that grows, ``fold`` turns
+events into a `NightState`.
 """
 
 from engine.log.disk import Disk
@@ -26,6 +27,7 @@ from engine.log.events import (
     RunStart,
     RunStop,
 )
+from engine.log.follow import Follower
 from engine.log.header import Header
 from engine.log.reader import LogReading, audit, night_logs, read_log
 from engine.log.state import (
@@ -59,6 +61,7 @@ __all__ = [
     "Exposure",
     "ExposureStart",
     "Focus",
+    "Follower",
     "Foreign",
     "Header",
     "Latest",

@@ -11,25 +11,13 @@ import re
 import tomllib
 import zlib
 from dataclasses import dataclass
-from datetime import date, datetime
-from itertools import pairwise
-from typing import Any
 
-import tomli_w
+from engine.log.values import Value, as_read, quick_values, value_text
 
-from engine.times import iso_from_datetime
-
-Value = str | int | float | bool | date | datetime | list[Any]
-
-_CRC_LINE = re.compile(rb'crc = "([0-9a-f]{8})"\n')
-_HEAD_LINE = re.compile(rb"\[\[([A-Za-z0-9_-]+)\]\]\n")
-
-# What tomli_w writes raw and a terminal or a parser could act on: C1 controls, line and paragraph
-# separators, invisible and bidi format characters.
-_ESCAPED = re.compile(
-    "[\x7f-\x9f\u00ad\u061c\u180e\u200b-\u200f\u2028-\u202f\u2060-\u206f\ufeff\ufff9-\ufffb]"
-)
-_SURROGATE = re.compile("[\ud800-\udfff]")
+_HEAD_LINE = re.compile(rb"\[\[([A-Za-z0-9_-]+)\]\]\r?\n")
+_CRC_LINE = re.compile(rb'crc = "([0-9a-f]{8})"\r?\n')
+_BLANK_LINES = re.compile(rb"[\r\n]*+")
+_CRC_BEGINS = b'\ncrc = "'
 
 
 def crc_of(data: bytes) -> str:
@@ -43,91 +31,105 @@ def block_bytes(kind: str, values: dict[str, Value]) -> bytes:
     ValueError when what was made does not read back as what was meant: nothing doubtful may reach
     the disk.
     """
-    lines = "".join(_line(key, value) for key, value in values.items())
+    lines = "".join(f"{key} = {value_text(value)}\n" for key, value in values.items())
     body = f"[[{kind}]]\n{lines}".encode()
     data = body + f'crc = "{crc_of(body)}"\n'.encode()
-    read = tomllib.loads(data.decode())[kind][0]
-    crc = read.pop("crc")
-    if read != {key: _as_read(value) for key, value in values.items()} or crc != crc_of(body):
-        raise ValueError(f"a block of kind {kind!r} does not read back as it was meant")
+    meant = {key: as_read(value) for key, value in values.items()}
+    meant["crc"] = crc_of(body)
+    if tomllib.loads(data.decode()) != {kind: [meant]} or not split_blocks(data)[0].is_sound:
+        raise ValueError(f"an entry of kind {kind!r} does not read back as it was meant")
     return b"\n" + data
-
-
-def _line(key: str, value: Value) -> str:
-    return f"{key} = {_written(value)}\n"
-
-
-def _written(value: Value) -> str:
-    """Return a value on one line: times with T and Z, which every parser takes, nothing raw."""
-    if isinstance(value, list):
-        return f"[{', '.join(_written(each) for each in value)}]"
-    if isinstance(value, datetime):
-        return iso_from_datetime(value)
-    text = tomli_w.dumps({"v": _without_surrogates(value)}, multiline_strings=False)
-    text = text.removeprefix("v = ").removesuffix("\n")
-    return _ESCAPED.sub(lambda found: f"\\u{ord(found[0]):04X}", text)
-
-
-def _without_surrogates(value: Value) -> Value:
-    return _SURROGATE.sub("\ufffd", value) if isinstance(value, str) else value
-
-
-def _as_read(value: Value) -> Value:
-    """Return a value as a reader will see it: times to the millisecond, no lone surrogates."""
-    if isinstance(value, list):
-        return [_as_read(each) for each in value]
-    if isinstance(value, datetime):
-        return datetime.fromisoformat(iso_from_datetime(value))
-    return _without_surrogates(value)
 
 
 @dataclass(frozen=True, slots=True)
 class Block:
-    """One stretch of the file that begins with a ``[[kind]]`` line.
+    """One stretch of a log: a block, whatever state it is in, or text that is none.
 
-    ``sound`` says that its crc is right, ``whole`` that it ends in a crc line at all: one that was
-    cut short does not. ``line`` is where it begins, from 1; ``values`` is None when it does not
-    even parse.
+    ``is_whole`` says that it ends in its crc line: one that was cut short does not. ``is_sound``
+    says that the crc is right, too, and ``has_crlf`` that it is so once the line ends of another
+    system are made ours again. ``values`` is None when it does not even parse. ``line`` is where it
+    begins, from 1, and ``offset`` the same in bytes.
     """
 
     kind: str
     values: dict[str, Value] | None
-    sound: bool
-    whole: bool
+    is_whole: bool
+    is_sound: bool
+    has_crlf: bool
     line: int
     offset: int
     raw: bytes
 
+    @property
+    def is_finished(self) -> bool:
+        """Whether it was finished once: it can be read, and its end is in place."""
+        return self.is_whole and self.values is not None
+
+    @property
+    def end(self) -> int:
+        """Where it ends, in bytes."""
+        return self.offset + len(self.raw)
+
+    @property
+    def last_line(self) -> int:
+        """The last line with anything of it."""
+        return self.line + self.raw.rstrip(b"\r\n").count(b"\n")
+
 
 def split_blocks(data: bytes, offset: int = 0, line: int = 1) -> list[Block]:
-    """Return the blocks in a stretch of a log, whatever state they are in; never raises.
+    """Return the stretches of a log, in whatever state they are; never raises.
 
-    ``offset`` and ``line`` say where in the file the stretch begins. Text before the first block,
-    blank lines apart, comes back as a block without a kind.
+    ``offset`` and ``line`` say where in the file the data begins. Blank lines between blocks belong
+    to none. A block ends with its crc line: what follows it up to the next ``[[`` at the beginning
+    of a line is a stretch of its own, so that a torn beginning of the next block can't spoil it.
     """
-    starts = [found.start() for found in re.finditer(rb"^\[\[", data, re.MULTILINE)]
-    edges = [*starts, len(data)]
-    blocks = []
-    if data[: edges[0]].strip():
-        blocks.append(Block("", None, False, False, line, offset, data[: edges[0]]))
-    at_line = line + data[: edges[0]].count(b"\n")
-    for begin, end in pairwise(edges):
-        raw = data[begin:end]
-        blocks.append(_block(raw, at_line, offset + begin))
-        at_line += raw.count(b"\n")
+    blocks: list[Block] = []
+    at = 0
+    while at < len(data):
+        begin = _BLANK_LINES.match(data, at).end()  # type: ignore[union-attr]
+        line += data.count(b"\n", at, begin)
+        if begin == len(data):
+            break
+        following = data.find(b"\n[[", begin)
+        raw = data[begin : len(data) if following < 0 else following + 1]
+        block = _block(raw, line, offset + begin)
+        blocks.append(block)
+        line += block.raw.count(b"\n")
+        at = begin + len(block.raw)
     return blocks
 
 
 def _block(raw: bytes, line: int, offset: int) -> Block:
+    """Return the block that stretches over raw bytes, or over the first of them up to its crc."""
     head = _HEAD_LINE.match(raw)
-    kind = head[1].decode() if head else ""
-    crc = _CRC_LINE.search(raw)
-    whole = bool(head and crc and not raw[crc.end() :].strip())
-    sound = bool(whole and crc and crc_of(raw[: crc.start()]) == crc[1].decode())
-    return Block(kind, _values(raw, kind), sound, whole, line, offset, raw)
+    if head is None:
+        return Block("", None, False, False, False, line, offset, raw)
+    kind = head[1].decode()
+    crc_at = raw.find(_CRC_BEGINS) + 1
+    crc = _CRC_LINE.match(raw, crc_at) if crc_at else None
+    if crc is None:
+        return Block(kind, _parsed(raw, kind), False, False, False, line, offset, raw)
+    raw = raw[: crc.end()]
+    told = crc[1].decode()
+    if crc_of(raw[:crc_at]) == told:
+        values = _sound_values(raw, head.end(), crc_at, kind)
+        return Block(kind, values, True, values is not None, False, line, offset, raw)
+    has_crlf = crc_of(raw[:crc_at].replace(b"\r\n", b"\n")) == told
+    values = _parsed(raw, kind)
+    return Block(kind, values, True, has_crlf and values is not None, has_crlf, line, offset, raw)
 
 
-def _values(raw: bytes, kind: str) -> dict[str, Value] | None:
+def _sound_values(raw: bytes, begin: int, end: int, kind: str) -> dict[str, Value] | None:
+    try:
+        values = quick_values(raw[begin:end].decode())
+    except UnicodeDecodeError:
+        return None
+    if values is None or "crc" in values:
+        return _parsed(raw, kind)
+    return values
+
+
+def _parsed(raw: bytes, kind: str) -> dict[str, Value] | None:
     """Return a block's values without its crc, or None when it is no block of that kind."""
     try:
         tables = tomllib.loads(raw.decode())

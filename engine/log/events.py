@@ -1,31 +1,24 @@
-"""What can happen in a night: one dataclass a kind, and how each stands in the file.
+"""What can happen in a night: one dataclass a kind.
 
-The fields are the key table. In the file a field named ``..._mjd`` is a UTC date-time under the
-name without that ending (``t_mjd`` is ``t``, ``start_mjd`` is ``start``); None and empty text are
-left out; tuples are lists. To add a kind, add a dataclass here: reading, writing, checking and the
-reference page follow.
+The fields are the key table (see `engine.log.keys`). To add a kind, add a dataclass here and to
+``KINDS``: reading, writing, checking and the reference page follow.
 """
 
 from __future__ import annotations
 
 import math
-import types
-import typing
-from dataclasses import MISSING, dataclass, field, fields, replace
-from datetime import datetime
-from typing import Any, ClassVar, Self
+from dataclasses import dataclass, field, replace
+from typing import ClassVar, Self
 
-from engine.log.blocks import Value
-from engine.times import datetime_from_mjd, mjd_from_datetime
-
-MJD = "_mjd"
+from engine.log.values import Value
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Event:
     """What all events share: one counter for all kinds, and the moment of logging (UTC MJD).
 
-    ``extra`` holds keys that this version does not know; they are kept and shown.
+    ``extra`` holds keys that this version does not know, and values that don't fit their keys; they
+    are kept and shown.
     """
 
     kind: ClassVar[str] = ""
@@ -284,117 +277,3 @@ KINDS: dict[str, type[Event]] = {
         LostTime, Note, OrderProposed, Override, Amendment, ClockStep, Recovery, Close,
     )
 }  # fmt: skip
-
-
-@dataclass(frozen=True, slots=True)
-class Key:
-    """One key of a kind: the field behind it, what may stand there, whether it must."""
-
-    name: str
-    field: str
-    types: tuple[type, ...]
-    is_time: bool
-    is_list: bool
-    required: bool
-
-
-def _keys_of(kind: type[Event]) -> tuple[Key, ...]:
-    """Return the key table of a kind, in the order in which the keys are written."""
-    hints = typing.get_type_hints(kind)
-    table = []
-    for each in fields(kind):
-        if each.name == "extra":
-            continue
-        hint = hints[each.name]
-        parts = typing.get_args(hint) if isinstance(hint, types.UnionType) else (hint,)
-        parts = tuple(part for part in parts if part is not type(None))
-        is_list = typing.get_origin(parts[0]) is tuple
-        inner = typing.get_args(parts[0])[0] if is_list else parts[0]
-        is_time = each.name.endswith(MJD)
-        allowed = (datetime,) if is_time else (float, int) if inner is float else (inner,)
-        required = each.default is MISSING and each.name not in ("n", "t_mjd")
-        table.append(
-            Key(each.name.removesuffix(MJD), each.name, allowed, is_time, is_list, required)
-        )
-    return tuple(table)
-
-
-KEYS: dict[str, tuple[Key, ...]] = {name: _keys_of(kind) for name, kind in KINDS.items()}
-
-
-def to_values(event: Event) -> tuple[str, dict[str, Value]]:
-    """Return an event's kind and its keys and values as they stand in the file."""
-    if isinstance(event, Foreign):
-        return event.kind_in_file, {"n": event.n, "t": _moment(event.t_mjd), **event.extra}
-    values: dict[str, Value] = {}
-    for key in KEYS[event.kind]:
-        value = getattr(event, key.field)
-        empty = value is None or value is False or (isinstance(value, str | tuple) and not value)
-        if empty and not key.required:
-            continue
-        values[key.name] = _written(value, key)
-    return event.kind, values | event.extra
-
-
-def _written(value: Any, key: Key) -> Value:
-    if key.is_list:
-        return [_moment(each) if key.is_time else each for each in value]
-    written: Value = _moment(value) if key.is_time else value
-    if isinstance(written, float) and not math.isfinite(written):
-        raise ValueError(f"{key.name} is {written}, expected a finite number")
-    return written
-
-
-def _moment(mjd: float) -> datetime:
-    return datetime_from_mjd(mjd)
-
-
-def from_values(kind: str, values: dict[str, Value]) -> Event:
-    """Return the event that keys and values of a kind stand for.
-
-    Never raises: what is of an unknown kind, or lacks a key its kind needs, or holds a value of the
-    wrong type, comes back as `Foreign` with the complaint.
-    """
-    n, t = values.get("n"), values.get("t")
-    stamp: dict[str, Any] = {
-        "n": n if isinstance(n, int) and not isinstance(n, bool) else 0,
-        "t_mjd": mjd_from_datetime(t) if isinstance(t, datetime) and t.tzinfo else math.nan,
-    }
-    said = {key: value for key, value in values.items() if key not in ("n", "t")}
-    made = KINDS.get(kind)
-    if made is None:
-        return Foreign(**stamp, kind_in_file=kind, complaint="unknown kind", extra=said)
-    arguments: dict[str, Any] = {}
-    rest = dict(said)
-    for key in KEYS[kind]:
-        if key.name in ("n", "t"):
-            continue
-        if key.name in rest:
-            read = _read(rest.pop(key.name), key)
-            if read is None:
-                complaint = f"{key.name} is of the wrong type"
-                return Foreign(**stamp, kind_in_file=kind, complaint=complaint, extra=said)
-            arguments[key.field] = read
-        elif key.required:
-            complaint = f"{key.name} is missing"
-            return Foreign(**stamp, kind_in_file=kind, complaint=complaint, extra=said)
-    return made(**stamp, **arguments, extra=rest)
-
-
-def _read(value: Value, key: Key) -> Any:
-    if key.is_list:
-        if not isinstance(value, list):
-            return None
-        parts = [_read_one(each, key) for each in value]
-        return None if None in parts else tuple(parts)
-    return _read_one(value, key)
-
-
-def _read_one(value: Any, key: Key) -> Any:
-    if not isinstance(value, key.types) or (isinstance(value, bool) and bool not in key.types):
-        return None
-    if isinstance(value, datetime):
-        return mjd_from_datetime(value) if value.tzinfo else None
-    if isinstance(value, int) and float in key.types:
-        return float(value)
-    return value

@@ -1,21 +1,28 @@
 """Reading a log, whatever happened to it: everything sound is used, everything else is said.
 
-Readers never change a file. A damaged stretch in the middle is shown and passed over; a block that
-parses but whose crc is wrong was changed by hand or damaged: it is used, and said.
+Readers never change a file. A damaged stretch in the middle is shown and passed over. An entry that
+has its crc line and can be read, though the crc is wrong, was changed by hand or damaged: it is
+used, and said. One without its crc line was cut short: it is never used, since what is left of it
+may say something that was never written.
 """
 
 from __future__ import annotations
 
 from dataclasses import dataclass
+from datetime import date
 from pathlib import Path
 
 from engine.errors import Fault, LogError
 from engine.log.blocks import Block, split_blocks
-from engine.log.events import Event, Foreign, from_values
-from engine.log.header import Header, header_end, read_header
+from engine.log.events import ClockStep, Event
+from engine.log.header import SCHEMA, Header, is_unfinished, read_header
+from engine.log.keys import complaints, from_values
 from engine.logbook.text import visible
+from engine.times import SECONDS_PER_DAY
 
 RAW_SHOWN = 60
+# Times in the file are rounded to the millisecond: less than this is no step back.
+ROUNDING_S = 0.002
 
 
 @dataclass(frozen=True, slots=True)
@@ -32,10 +39,11 @@ class LogReading:
     findings: tuple[Fault, ...]
     sound_end: int
     torn: int
+    schema: object = SCHEMA
 
 
 def read_log(path: Path) -> LogReading:
-    """Return everything a log holds; LogError when it can't be read or has no header."""
+    """Return everything a log holds; LogError when it can't be read or is no night log."""
     try:
         data = path.read_bytes()
     except OSError as error:
@@ -44,93 +52,136 @@ def read_log(path: Path) -> LogReading:
 
 
 def read_log_bytes(path: Path, data: bytes) -> LogReading:
-    """Return everything the bytes of a log hold; LogError when they have no header."""
-    end = header_end(data)
-    if end is None:
-        raise LogError(f"{path}:1: the header is not whole, expected one that ends with its crc")
+    """Return everything the bytes of a log hold; LogError when they are no night log."""
     try:
-        header, sound = read_header(data[:end])
+        head = read_header(data, _night_named(path))
     except ValueError as error:
-        raise LogError(f"{path}:1: {error}") from None
-    findings = [] if sound else [_fault(path, 1, "header", "changed by hand or damaged; used")]
-    blocks = split_blocks(data[end:], end, data[:end].count(b"\n") + 1)
-    sound_end = max((b.offset + len(b.raw) for b in blocks if _stands(b)), default=end)
-    kept = [b for b in blocks if b.offset < sound_end]
-    tail = len(data) - sound_end if data[sound_end:].strip() else 0
-    if tail:
-        line = data[:sound_end].count(b"\n") + 1
-        findings.append(
-            _fault(path, line, "", f"{tail} bytes at the end are torn: {_raw(data[sound_end:])}")
-        )
-    events, found = _events(path, kept)
-    return LogReading(path, header, tuple(events), tuple(findings + found), sound_end, tail)
+        what = "the header was never finished" if is_unfinished(data) else str(error)
+        raise LogError(f"{path}:1: {what}") from None
+    findings = [Fault(path, 1, "header", what) for what in head.findings]
+    blocks = split_blocks(data[head.end :], head.end, data.count(b"\n", 0, head.end) + 1)
+    torn = 0
+    if blocks and not blocks[-1].is_finished:
+        tail = blocks.pop()
+        torn = len(data) - tail.offset
+        what = f"{torn} bytes at the end are torn, or just being written: {_raw(tail.raw)}"
+        findings.append(Fault(path, tail.line, "", what))
+    events, found = _events(path, blocks)
+    findings += [*found, *_about_numbers(path, events), *_about_times(path, events)]
+    sound_end = blocks[-1].end if blocks else head.end
+    kept = tuple(event for _, event in events)
+    return LogReading(path, head.header, kept, tuple(findings), sound_end, torn, head.schema)
 
 
-def _stands(block: Block) -> bool:
-    """Say whether a block was finished once: sound, or changed since but with its end in place."""
-    return block.sound or (block.whole and block.values is not None)
+def _night_named(path: Path) -> date | None:
+    try:
+        return date.fromisoformat(path.stem)
+    except ValueError:
+        return None
 
 
-def _events(path: Path, blocks: list[Block]) -> tuple[list[Event], list[Fault]]:
-    events: list[Event] = []
+Placed = tuple[Block, Event]
+
+
+def _events(path: Path, blocks: list[Block]) -> tuple[list[Placed], list[Fault]]:
+    """Return the entries that are used, with where they stand, and what is wrong with blocks."""
+    placed: list[Placed] = []
     findings: list[Fault] = []
-    seen: dict[int, int] = {}
-    before = 0
-    for block in blocks:
-        if block.values is None:
-            last = block.line + block.raw.rstrip().count(b"\n")
-            what = f"damaged to line {last}, passed over: {_raw(block.raw)}"
-            findings.append(_fault(path, block.line, "", what))
+    crlf = [block for block in blocks if block.has_crlf]
+    if crlf:
+        what = f"the line ends of {len(crlf)} entries are those of another system; used"
+        findings.append(Fault(path, crlf[0].line, "", what))
+    seen: dict[int, Block] = {}
+    for place, block in enumerate(blocks):
+        if block.values is None or not block.is_whole:
+            findings.append(Fault(path, block.line, "", _damage(blocks, place)))
             continue
         event = from_values(block.kind, block.values)
         key = f"{block.kind} {event.n}"
-        if not block.sound:
-            findings.append(_fault(path, block.line, key, "changed by hand or damaged; used"))
-        if isinstance(event, Foreign):
-            findings.append(_fault(path, block.line, key, event.complaint))
-        if event.n in seen:
-            what = f"its number stands at line {seen[event.n]} already; passed over"
-            findings.append(_fault(path, block.line, key, what))
-            continue
-        if event.n < before:
-            findings.append(
-                _fault(path, block.line, key, f"it stands behind entry {before}; moved")
+        if not block.is_sound:
+            what = f"changed by hand or damaged; used: {_raw(block.raw)}"
+            findings.append(Fault(path, block.line, key, what))
+        findings += [Fault(path, block.line, key, what) for what in complaints(event)]
+        before = seen.setdefault(event.n, block)
+        if event.n and before is not block:
+            is_same = before.raw == block.raw
+            what = f"its number stands at line {before.line} already" + (
+                ", and all the rest of it too; passed over" if is_same else ", with other values"
             )
-        seen[event.n] = block.line
-        before = max(before, event.n)
-        events.append(event)
-    return events, findings + _missing(path, seen)
+            findings.append(Fault(path, block.line, key, what))
+            if is_same:
+                continue
+        placed.append((block, event))
+    return placed, findings
 
 
-def _missing(path: Path, seen: dict[int, int]) -> list[Fault]:
-    """Return a finding for each gap in the numbers, at the line of the entry behind it."""
+def _damage(blocks: list[Block], place: int) -> str:
+    """Return what is said of a stretch that is not used: how far it goes, where, and its text."""
+    block = blocks[place]
+    lines = f"to line {block.last_line} " if block.last_line > block.line else ""
+    around = []
+    for word, found in (
+        ("after", next((b for b in reversed(blocks[:place]) if b.is_finished), None)),
+        ("before", next((b for b in blocks[place + 1 :] if b.is_finished), None)),
+    ):
+        if found is not None and found.values is not None:
+            around.append(f"{word} {found.kind} {found.values.get('n', '?')}")
+    where = f"({' and '.join(around)}) " if around else ""
+    state = "cut short or damaged" if block.kind else "no entry"
+    return f"{state}, {lines}{where}passed over: {_raw(block.raw)}"
+
+
+def _about_numbers(path: Path, events: list[Placed]) -> list[Fault]:
+    """Return a finding for each entry without a number or out of turn, and for each gap."""
     findings = []
-    numbers = sorted(seen)
+    lines: dict[int, int] = {}
+    greatest = 0
+    for block, event in events:
+        key = f"{block.kind} {event.n}"
+        if event.n == 0:
+            findings.append(Fault(path, block.line, block.kind, "it has no number"))
+        elif event.n < greatest:
+            what = f"it stands behind entry {greatest}; moved"
+            findings.append(Fault(path, block.line, key, what))
+        lines.setdefault(event.n, block.line)
+        greatest = max(greatest, event.n)
+    numbers = sorted(lines.keys() - {0})
     for before, after in zip([0, *numbers], numbers, strict=False):
         if after - before > 1:
             gap = f"{before + 1}" if after - before == 2 else f"{before + 1} to {after - 1}"
-            findings.append(_fault(path, seen[after], "", f"entry {gap} is missing before this"))
+            findings.append(Fault(path, lines[after], "", f"entry {gap} is missing before this"))
     return findings
 
 
-def _fault(path: Path, line: int, key: str, what: str) -> Fault:
-    return Fault(path, line, key, what)
+def _about_times(path: Path, events: list[Placed]) -> list[Fault]:
+    """Return a finding for each entry without a time, or earlier than the one before it.
+
+    A clock that was set back is no finding where the log says so itself.
+    """
+    findings = []
+    latest: Event | None = None
+    for block, event in sorted(events, key=lambda placed: placed[1].n):
+        key = f"{block.kind} {event.n}"
+        if event.t_mjd != event.t_mjd:
+            findings.append(Fault(path, block.line, key, "it has no time"))
+            continue
+        if latest is not None and not isinstance(event, ClockStep):
+            back_s = (latest.t_mjd - event.t_mjd) * SECONDS_PER_DAY
+            if back_s > ROUNDING_S:
+                what = f"its time is {back_s:.3f} s before that of entry {latest.n}"
+                findings.append(Fault(path, block.line, key, what))
+        latest = event
+    return findings
 
 
 def _raw(data: bytes) -> str:
-    text = visible(data.decode("utf-8", "replace").strip())
+    text = visible(data[: 4 * RAW_SHOWN].decode("utf-8", "replace").strip())
     return text if len(text) <= RAW_SHOWN else text[:RAW_SHOWN] + "..."
 
 
 def is_night_log(path: Path) -> bool:
     """Say whether a file's name is that of a night log: a date and ``.toml``."""
-    from datetime import date
-
-    try:
-        date.fromisoformat(path.stem)
-    except ValueError:
-        return False
-    return path.suffix == ".toml"
+    return path.suffix == ".toml" and _night_named(path) is not None
 
 
 def night_logs(folder: Path) -> list[Path]:
@@ -145,5 +196,6 @@ def audit(folder: Path) -> list[Fault]:
         try:
             findings += read_log(path).findings
         except LogError as error:
-            findings.append(Fault(path, 1, "", str(error).removeprefix(f"{path}:1: ")))
+            what = str(error).removeprefix(f"{path}:").removeprefix("1:").strip()
+            findings.append(Fault(path, 1, "", what))
     return findings

@@ -8,7 +8,6 @@ from __future__ import annotations
 
 from collections.abc import Iterable
 from dataclasses import dataclass, field, replace
-from typing import Any
 
 from engine.log.events import (
     Amendment,
@@ -17,7 +16,6 @@ from engine.log.events import (
     Event,
     Exposure,
     ExposureStart,
-    Foreign,
     LostTime,
     Note,
     OrderProposed,
@@ -25,9 +23,9 @@ from engine.log.events import (
     Pointing,
     RunStart,
     RunStop,
-    from_values,
-    to_values,
 )
+from engine.log.keys import changed
+from engine.log.values import Value
 
 OpenExposure = ExposureStart
 
@@ -88,6 +86,10 @@ class NightState:
 
     ``events`` is the whole log as written; all the rest is of the effective night, with amendments
     carried out and what was withdrawn left out.
+
+    ``exposing`` is the last exposure that began and has no record. It outlives a close: when the
+    night is taken up again the observer says what became of it. One that begins after it takes its
+    place, and then only the log still shows it.
     """
 
     events: tuple[Event, ...] = ()
@@ -124,7 +126,7 @@ class NightState:
 
     def after(self, event: Event) -> NightState:
         """Return the state with one more event: the same as folding everything again."""
-        if isinstance(event, Amendment):
+        if isinstance(event, Amendment) or (self.events and event.n < self.events[-1].n):
             return fold((*self.events, event))
         return _apply(replace(self, events=(*self.events, event)), event)
 
@@ -132,8 +134,9 @@ class NightState:
 def fold(events: Iterable[Event]) -> NightState:
     """Return the state after all events, in the order of their numbers.
 
-    Amendments are carried out from the last to the first, so that one can withdraw another; then
-    the effective events are applied in order.
+    An amendment concerns an entry before it. What is withdrawn is gone, and an amendment that is
+    itself withdrawn by a later one never was. Changes are carried out in order; those of another
+    amendment are not, it can only be withdrawn. Then the effective events are applied in order.
     """
     written = tuple(sorted(events, key=lambda event: event.n))
     withdrawn = _withdrawn(written)
@@ -155,35 +158,30 @@ def last_undoable(state: NightState) -> Event | None:
 
 
 def _withdrawn(events: tuple[Event, ...]) -> frozenset[int]:
+    """Return the numbers of what is withdrawn, worked out from the last entry to the first.
+
+    So whatever could withdraw an entry is settled before the entry itself is looked at.
+    """
+    amendments = [event for event in events if isinstance(event, Amendment)]
     gone: set[int] = set()
-    for event in reversed(events):
-        if isinstance(event, Amendment) and event.withdrawn and event.n not in gone:
+    for event in reversed(amendments):
+        if event.with_n is not None and event.with_n in gone:
+            gone.add(event.n)
+        if event.withdrawn and event.of < event.n and event.n not in gone:
             gone.add(event.of)
-            gone.update(
-                other.n
-                for other in events
-                if isinstance(other, Amendment) and other.with_n == event.of
-            )
     return frozenset(gone)
 
 
 def _effective(events: tuple[Event, ...], withdrawn: frozenset[int]) -> list[Event]:
-    changes: dict[int, dict[str, Any]] = {}
+    changes: dict[int, dict[str, Value]] = {}
     for event in events:
-        if isinstance(event, Amendment) and not event.withdrawn and event.n not in withdrawn:
+        if isinstance(event, Amendment) and event.of < event.n and event.n not in withdrawn:
             changes.setdefault(event.of, {}).update(event.changes)
     return [
-        _changed(event, changes[event.n]) if event.n in changes else event
+        changed(event, changes[event.n]) if event.n in changes else event
         for event in events
         if event.n not in withdrawn
     ]
-
-
-def _changed(event: Event, changes: dict[str, Any]) -> Event:
-    """Return an event with other values; unchanged when they don't fit its kind."""
-    kind, values = to_values(event)
-    amended = from_values(kind, values | changes)
-    return event if isinstance(amended, Foreign) else amended
 
 
 def _apply(state: NightState, event: Event) -> NightState:
