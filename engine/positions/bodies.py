@@ -106,12 +106,12 @@ def _cirs_matrix(mjd: Floats) -> Floats:
 
 
 def _site_cirs_km(mjd: Floats, site: Site) -> Floats:
-    longitude, latitude = local_axes(mjd, site)
-    sin_p, cos_p = np.sin(latitude), np.cos(latitude)
+    axes = local_axes(mjd, site)
+    sin_p, cos_p = np.sin(axes.latitude_rad), np.cos(axes.latitude_rad)
     flat = (1.0 - EARTH_FLATTENING) ** 2
     curve = EARTH_RADIUS_KM / np.sqrt(cos_p**2 + flat * sin_p**2)
     height_km = site.elevation_m / 1000.0
-    turn = rotation_angle_rad(mjd) + longitude
+    turn = rotation_angle_rad(mjd) + axes.longitude_rad
     across = (curve + height_km) * cos_p
     return np.stack(
         [

@@ -9,8 +9,9 @@ import pytest
 from astropy.time import Time
 from astropy.utils import iers
 
-from engine.positions import prepare_astropy, sidereal_time_h
+from engine.positions import earth, prepare_astropy, sidereal_time_h
 from engine.positions.earth import (
+    EarthTable,
     earth_table,
     pole_rad,
     table_of_finals,
@@ -71,6 +72,16 @@ def test_a_strange_file_is_refused() -> None:
     text = (files("astropy_iers_data") / "data" / "finals2000A.all").read_text(encoding="ascii")
     with pytest.raises(ValueError, match="days"):
         table_of_finals([line[1:] for line in text.splitlines()[:20]])
+
+
+def test_astropys_reader_is_the_way_out(monkeypatch: pytest.MonkeyPatch) -> None:
+    def refuse(lines: list[str]) -> EarthTable:
+        raise ValueError("strange")
+
+    monkeypatch.setattr(earth, "table_of_finals", refuse)
+    found = earth_table.__wrapped__()  # past the cache
+    assert np.array_equal(found.mjd, earth_table().mjd)
+    assert found.last_mjd == earth_table().last_mjd
 
 
 def test_terrestrial_time_is_astropys() -> None:

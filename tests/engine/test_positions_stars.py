@@ -29,19 +29,23 @@ from engine.positions.stars import DIURNAL_ABERRATION_RAD
 
 ARCSEC_PER_DEG = 3600.0
 STAR_COUNT = 30
-# Invented places: both poles nearly, both sides of the date line, the equator, the sea and a peak.
+# What is left: the apparent place of mid-night serves seven hours either way. Less of a difference
+# than polar motion or diurnal aberration, so that neither can be forgotten or turned round.
+APART_ARCSEC = 0.2
+# Invented places: a pole, both poles nearly, both sides of the date line, the equator, a peak.
 SITES = [
+    (90.0, 0.0, 0.0),
     (89.9, 12.0, 0.0),
     (-89.9, -71.0, 2800.0),
     (0.0, -179.95, 3.0),
     (-17.3, 179.95, 900.0),
     (-33.2, -70.6, 2300.0),
     (52.1, 5.2, 10.0),
-    (28.4, -16.6, 2390.0),
+    (75.0, 120.0, 2390.0),
     (-44.0, 170.4, 1030.0),
 ]
 # The evenings (UTC MJD), from January 2024 to October 2027.
-EVENINGS_MJD = [60310.9, 60488.3, 60676.1, 60855.7, 61041.2, 61222.6, 61402.4, 61694.8]
+EVENINGS_MJD = [60310.9, 60402.2, 60488.3, 60676.1, 60855.7, 61041.2, 61222.6, 61402.4, 61694.8]
 
 
 def site_at(latitude_deg: float, longitude_deg: float, elevation_m: float = 1000.0) -> Site:
@@ -71,9 +75,7 @@ def stars(seed: int) -> tuple[np.ndarray, np.ndarray]:
 
 
 @pytest.mark.parametrize(("number", "place"), list(enumerate(SITES)))
-def test_all_night_within_an_arcsecond_of_astropy(
-    number: int, place: tuple[float, float, float]
-) -> None:
+def test_all_night_with_astropy(number: int, place: tuple[float, float, float]) -> None:
     prepare_astropy()
     site = site_at(*place)
     ra_deg, dec_deg = stars(number)
@@ -85,8 +87,7 @@ def test_all_night_within_an_arcsecond_of_astropy(
         apart_arcsec = ARCSEC_PER_DEG * separation_deg(
             ours.azimuth_deg, ours.altitude_deg, theirs.az.deg, theirs.alt.deg
         )
-        assert float(apart_arcsec.max()) < 1.0
-        assert float(np.abs(ours.altitude_deg - theirs.alt.deg).max()) * ARCSEC_PER_DEG < 1.0
+        assert float(apart_arcsec.max()) < APART_ARCSEC
 
 
 def test_proper_motion_and_its_epoch_agree_with_astropy() -> None:
@@ -119,7 +120,7 @@ def test_proper_motion_and_its_epoch_agree_with_astropy() -> None:
         apart_deg = separation_deg(
             ours.azimuth_deg, ours.altitude_deg, theirs.az.deg, theirs.alt.deg
         )
-        assert float(apart_deg.max()) * ARCSEC_PER_DEG < 1.0
+        assert float(apart_deg.max()) * ARCSEC_PER_DEG < APART_ARCSEC
 
 
 def test_parallactic_angle_is_erfas() -> None:

@@ -57,7 +57,7 @@ def at_hour_angle(hour_angle_rad: float, dec_rad: float, latitude_rad: float) ->
         elevation_m=0.0,
         timezone="UTC",
     )
-    longitude_rad, _ = local_axes(ANY_MJD, site)
+    longitude_rad = local_axes(ANY_MJD, site).longitude_rad
     ra_rad = float(rotation_angle_rad(ANY_MJD)) + longitude_rad - hour_angle_rad
     return horizontal_of(np.array(ra_rad), np.array(dec_rad), np.array(ANY_MJD), site)
 
