@@ -54,12 +54,15 @@ class ImageModel:
         observatory: Observatory,
         air: Air | None = None,
         *,
-        dispersion_corrected: bool = False,
+        dispersion_corrected: bool | None = None,
     ) -> None:
         """Take standard air at the site's height unless ``air`` is given.
 
-        ``dispersion_corrected`` says that a corrector takes all dispersion away.
+        ``dispersion_corrected`` says whether a corrector takes all dispersion away; as the
+        observatory's telescope says when None.
         """
+        if dispersion_corrected is None:
+            dispersion_corrected = observatory.telescope.dispersion_corrector
         self.observatory = observatory
         self.air = air or Air.standard(observatory.site.elevation_m)
         self.dispersion_corrected = dispersion_corrected

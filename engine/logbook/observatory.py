@@ -46,6 +46,10 @@ class Site(FileModel):
         default=(),
     )
 
+    airmass_model: Literal["pickering", "kasten_young", "young", "hardie", "secant"] = key(
+        "the formula for airmass; Pickering 2002 where nothing is said", default="pickering"
+    )
+
     @field_validator("timezone")
     @classmethod
     def _known_timezone(cls, value: str) -> str:
@@ -101,6 +105,10 @@ class Telescope(FileModel):
     optics_fwhm_arcsec: float = key("blur of the optics, as a FWHM", unit="arcsec", ge=0, le=30)
     tracking_fwhm_arcsec: float = key(
         "blur of tracking and guiding, as a FWHM", unit="arcsec", ge=0, le=30
+    )
+
+    dispersion_corrector: bool = key(
+        "whether an atmospheric dispersion corrector is in the beam", default=False
     )
 
     @field_validator("hour_angle_limits_h")

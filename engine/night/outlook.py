@@ -11,7 +11,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from engine.image import ImageModel, Prepared
-from engine.light import Reference, credit
+from engine.light import Reference, clear_share, depth_share
 from engine.night.tables import Night
 
 Singles = NDArray[np.float32]
@@ -37,12 +37,18 @@ class Outlooks:
     """Makes one outlook after another for the same night: what can be kept between them is kept."""
 
     def __init__(self, night: Night, model: ImageModel) -> None:
-        self._night = night
         self._prepared: Prepared = model.prepare(night.airmass)
+        filters = night.observatory.filters
         self._references = tuple(
-            Reference.of(night.observatory, model, index)
-            for index in range(len(night.observatory.filters))
+            Reference.of(night.observatory, model, index) for index in range(len(filters))
         )
+        # Sky and extinction do not mind the seeing: their half of the credit is worked out once.
+        self._clear = [
+            clear_share(sky, night.airmass, each, reference).astype(np.float32)
+            for sky, each, reference in zip(
+                night.sky_mag_arcsec2, filters, self._references, strict=True
+            )
+        ]
         limits = [target.maximum_image_size_arcsec for target in night.targets]
         self._limit_arcsec = np.array(
             [np.inf if limit is None else limit for limit in limits], dtype=np.float32
@@ -50,18 +56,11 @@ class Outlooks:
 
     def given(self, seeing_arcsec: NDArray[np.float64]) -> Outlook:
         """Return the outlook for a zenith seeing (T,) at 500 nm, in arcsec."""
-        night = self._night
         sizes = self._prepared.sizes_arcsec(seeing_arcsec)
         quality = np.stack(
             [
-                credit(
-                    sizes[index],
-                    night.sky_mag_arcsec2[index],
-                    night.airmass,
-                    each,
-                    self._references[index],
-                )
-                for index, each in enumerate(night.observatory.filters)
+                depth_share(size, clear, reference)
+                for size, clear, reference in zip(sizes, self._clear, self._references, strict=True)
             ]
         ).astype(np.float32)
         return Outlook(

@@ -15,7 +15,7 @@ from datetime import date
 import numpy as np
 from numpy.typing import NDArray
 
-from engine.light import MoonLight, sky_mag_arcsec2
+from engine.light import MoonLight, sky_mags_arcsec2
 from engine.logbook import Logbook, Observatory, Target
 from engine.night.limits import limit_bits
 from engine.positions import (
@@ -139,7 +139,7 @@ def tables(
         places=places,
         where=where,
         apparent_altitude_deg=seen_deg,
-        airmass=airmass(seen_deg),
+        airmass=airmass(seen_deg, site.airmass_model, air),
         moon_separation_deg=from_moon_deg,
         sun_separation_deg=from_sun_deg,
         sun=the_sun,
@@ -159,14 +159,11 @@ def _sky(night: Night) -> NDArray[np.float32]:
         separation_deg=night.moon_separation_deg,
         phase_angle_deg=night.moon.phase_angle_deg,
     )
-    return np.stack(
-        [
-            sky_mag_arcsec2(
-                each,
-                altitude_deg=night.where.altitude_deg,
-                sun_altitude_deg=night.sun.altitude_deg,
-                moon=moonlight,
-            ).astype(np.float32)
-            for each in night.observatory.filters
-        ]
+    return sky_mags_arcsec2(
+        night.observatory.filters,
+        altitude_deg=night.where.altitude_deg,
+        sun_altitude_deg=night.sun.altitude_deg,
+        moon=moonlight,
+        pressure_hpa=night.air.pressure_hpa,
+        precision=np.float32,
     )

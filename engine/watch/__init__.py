@@ -8,7 +8,7 @@ from engine.watch import acts
 from engine.watch.advice import CautionNow, cautions
 from engine.watch.opening import Opened, open_watch
 from engine.watch.plan import Plan
-from engine.watch.planning import Planner
+from engine.watch.planning import Planned, Planner
 from engine.watch.reach import Reach, Scene, reach
 from engine.watch.snapshot import Snapshot, order_of_night, snapshot
 from engine.watch.stage import NextExposure, Stage
@@ -19,6 +19,7 @@ __all__ = [
     "NextExposure",
     "Opened",
     "Plan",
+    "Planned",
     "Planner",
     "Reach",
     "Scene",

@@ -6,7 +6,7 @@ on a worker thread and adopts the result on its own.
 
 from __future__ import annotations
 
-from dataclasses import replace
+from dataclasses import dataclass, replace
 from datetime import date
 
 import numpy as np
@@ -19,9 +19,23 @@ from engine.night import Night, Outlook, Outlooks, Plans, open_night, plans
 from engine.order import build_problem, propose
 from engine.positions import Air
 from engine.seeing import SeeingForecast, SeeingMeasurement, nowcast
+from engine.times import HOURS_PER_DAY
 from engine.watch.news import news
 from engine.watch.plan import Plan
 from engine.watch.rules import rules_from
+
+# How long a typed value of the air is taken to hold, and from which change on the tables are made
+# anew: common practice, no source. Each step is worth under 2 % of the dispersion.
+AIR_HOLDS_H = 4.0
+AIR_STEP_HPA, AIR_STEP_C, AIR_STEP_PERCENT = 8.0, 4.0, 40.0
+
+
+@dataclass(frozen=True, slots=True)
+class Planned:
+    """A plan, and the planner that made it: another one when the air has changed."""
+
+    planner: Planner
+    plan: Plan
 
 
 class Planner:
@@ -42,6 +56,17 @@ class Planner:
         self.model = ImageModel(logbook.observatory, self.night.air)
         self._outlooks = Outlooks(self.night, self.model)
         self._done_before = done_before
+
+    def in_air_of(self, state: NightState, now_mjd: float) -> Planner:
+        """Return this planner, or one for the air that was measured since if that is another.
+
+        Refraction and dispersion hardly mind a degree or a hectopascal: small changes keep the
+        tables.
+        """
+        air = measured_air(state, now_mjd, self.night.air)
+        if not _differs(air, self.night.air):
+            return self
+        return Planner(self.logbook, self.night.almanac.night, self._done_before, air)
 
     def plans(self, state: NightState) -> Plans:
         """Return every target's plan with past nights and this one counted in."""
@@ -73,6 +98,29 @@ class Planner:
         if before is None:
             return fresh
         return replace(fresh, news=news(self.night, before, fresh, remaining))
+
+
+def measured_air(state: NightState, now_mjd: float, otherwise: Air) -> Air:
+    """Return the air (pressure, temperature, humidity) from what was entered in the last hours."""
+
+    def latest(quantity: str, known: float) -> float:
+        entered = state.latest(quantity)
+        fresh = entered is not None and (now_mjd - entered.mjd) * HOURS_PER_DAY < AIR_HOLDS_H
+        return entered.value if entered is not None and fresh else known
+
+    return Air(
+        pressure_hpa=latest("pressure_hpa", otherwise.pressure_hpa),
+        temperature_c=latest("temperature_c", otherwise.temperature_c),
+        humidity_percent=latest("humidity_percent", otherwise.humidity_percent),
+    )
+
+
+def _differs(one: Air, other: Air) -> bool:
+    return (
+        abs(one.pressure_hpa - other.pressure_hpa) > AIR_STEP_HPA
+        or abs(one.temperature_c - other.temperature_c) > AIR_STEP_C
+        or abs(one.humidity_percent - other.humidity_percent) > AIR_STEP_PERCENT
+    )
 
 
 def forecast_of(state: NightState, now_mjd: float, typical_arcsec: float) -> SeeingForecast:

@@ -52,7 +52,8 @@ def exposure_record(
     mjd = np.array([began.start_mjd, middle_mjd, ending.end_mjd])
 
     where = horizontal(night.places.only(index), mjd, site)
-    masses = airmass(apparent_altitude_deg(where.altitude_deg[0], night.air))
+    seen_deg = apparent_altitude_deg(where.altitude_deg[0], night.air)
+    masses = airmass(seen_deg, site.airmass_model, night.air)
     the_moon = moon(mjd, site)
     from_moon_deg = float(
         separation_deg(
@@ -72,6 +73,7 @@ def exposure_record(
                 separation_deg=from_moon_deg,
                 phase_angle_deg=the_moon.phase_angle_deg[1],
             ),
+            pressure_hpa=night.air.pressure_hpa,
         )
     )
     image = _image(model, place, seeing_arcsec, float(masses[1]))

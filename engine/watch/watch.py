@@ -24,7 +24,7 @@ from engine.log import (
 from engine.night import Plans, TargetNow, targets_at
 from engine.times import MINUTES_PER_DAY, SECONDS_PER_DAY
 from engine.watch.plan import Plan
-from engine.watch.planning import Planner
+from engine.watch.planning import Planned, Planner
 from engine.watch.record import Ending, exposure_record
 from engine.watch.stage import NextExposure, Stage, next_in_run, stage_of
 
@@ -187,7 +187,7 @@ class Watch:
 
     # Planning
 
-    def planning(self) -> Callable[[], Plan] | None:
+    def planning(self) -> Callable[[], Planned] | None:
         """Return the work that is wanted, to be done on any thread; None when none is.
 
         The result is handed to `adopt`. Asking takes the wish away: what happens meanwhile asks
@@ -200,11 +200,17 @@ class Watch:
         # An entry of this very millisecond counts: its time in the log may be rounded up.
         last_mjd = state.events[-1].t_mjd if state.events else 0.0
         now_mjd = max(self.clock.now_mjd(), last_mjd)
-        return lambda: planner.plan(state, now_mjd, because, before)
 
-    def adopt(self, plan: Plan) -> None:
+        def work() -> Planned:
+            fit = planner.in_air_of(state, now_mjd)
+            return Planned(fit, fit.plan(state, now_mjd, because, before))
+
+        return work
+
+    def adopt(self, planned: Planned) -> None:
         """Put a plan in force; a changed turn of targets goes into the log."""
-        before, self.plan = self.plan, plan
+        plan = planned.plan
+        before, self.plan, self.planner = self.plan, plan, planned.planner
         self.version += 1
         ahead = plan.order.visits[:ORDER_LOGGED]
         if before is None or [v.target for v in ahead[:1]] != _first_ahead(before, plan.made_mjd):
@@ -216,13 +222,6 @@ class Watch:
                     why=plan.because,
                 )
             )
-
-    def replace_planner(self, planner: Planner, because: str) -> None:
-        """Go on with other tables: the list or the air was changed."""
-        self.planner = planner
-        self.plan = None
-        self.version += 1
-        self._wanted = because
 
 
 def _first_ahead(plan: Plan, now_mjd: float) -> list[str]:

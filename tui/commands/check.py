@@ -5,6 +5,7 @@ from __future__ import annotations
 import argparse
 
 from engine.errors import Fault, LogbookFaults
+from engine.light import zero_point_doubt
 from engine.log import audit
 from engine.logbook import describe, load_logbook
 from tui.commands.output import print_json
@@ -23,6 +24,11 @@ def run(arguments: argparse.Namespace) -> int:
     if faults:
         raise LogbookFaults(faults)
     print("\n".join(describe(logbook)))
+    observatory = logbook.observatory
+    for each in observatory.filters:
+        doubt = zero_point_doubt(each, observatory.telescope)
+        if doubt:
+            print(f"{each.name}: {doubt}")
     return 0
 
 

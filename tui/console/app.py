@@ -28,7 +28,7 @@ from tui.paint.spans import Line, Span, cut, line
 from tui.widgets import Entry, LiveList, Question, Sheet
 
 if TYPE_CHECKING:
-    from engine.watch import Opened, Plan, Watch
+    from engine.watch import Opened, Planned, Watch
     from tui.console.deeds import Deeds
     from tui.console.view import View
 
@@ -238,12 +238,12 @@ class Console(App[None]):
             self._planning = True
             self.run_worker(work, name="planning", group="plan", thread=True, exit_on_error=False)
 
-    def _planned(self, plan: Plan) -> None:
+    def _planned(self, planned: Planned) -> None:
         self._planning = False
         if self.live is None:
             return
-        self.live.adopt(plan)
-        for said in reversed(plan.news):
+        self.live.adopt(planned)
+        for said in reversed(planned.plan.news):
             self.tell(said, "now")
         self._plan_if_wanted(self.live)
         self.paint()

@@ -103,11 +103,14 @@ def _terms(watch: Watch, now: TargetNow) -> list[Line]:
         ("sampling", terms.sampling),
     )
     most = max(value for _, value in pairs)
+    blame = image.blame
+    without = getattr(image.without, blame)
     rows = [
         line(
             Span(f" what makes {first.progress.filter} {arcsec(image.size_arcsec)}", "dim"),
             Span(f", {image.size_px:.1f} px", "warn" if image.undersampled else "dim"),
             Span(" (undersampled)" if image.undersampled else "", "warn"),
+            Span(f"; without {blame} {arcsec(without)}", "dim"),
             Span(f", elongated {image.elongation:.2f}" if image.elongation > 1.02 else "", "dim"),
         )
     ]
@@ -116,7 +119,7 @@ def _terms(watch: Watch, now: TargetNow) -> list[Line]:
         for label, value in (left, right):
             spans += [
                 Span(f"{label:<12}", "dim"),
-                Span(bar(value / most, TERM_BAR), "accent" if value == most else "text"),
+                Span(bar(value / most, TERM_BAR), "accent" if label == blame else "text"),
                 Span(f" {value:.2f}  ", "text"),
             ]
         rows.append(tuple(spans))
