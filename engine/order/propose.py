@@ -25,6 +25,8 @@ from engine.times import MINUTES_PER_DAY
 KEEPING_BONUS = 0.05
 # The order in force is changed in itself only for more than this share of its value.
 HYSTERESIS = 0.003
+# And what the search makes of it is taken only for more than this.
+CLEAR_GAIN = 0.01
 # An order that loses more than this share of its minutes is made afresh.
 BROKEN_SHARE = 0.05
 # Two first orders are made exact beside the one that was searched: the plain rules, always.
@@ -57,10 +59,9 @@ def propose(
     until_s = None if budget_ms is None else begun_s + budget_ms / 1e3
     effort = Effort(until_s=until_s, steps=steps, begun_s=begun_s)
     blocks = cut(problem)
-    timeline = None
-    if in_force is not None:
+    if in_force is not None and in_force.visits:
         timeline = _carried_on(problem, blocks, in_force, effort, seed)
-    if timeline is None:
+    else:
         timeline = _afresh(problem, blocks, effort, seed)
     visits = [_visit(problem, stay) for stay in timeline.stays]
     visits = [replace(visit, reason=reason_for(problem, visit)) for visit in visits]
@@ -85,31 +86,27 @@ def plain_order(problem: Problem, temper: Temper) -> Timeline:
 
 def _carried_on(
     problem: Problem, blocks: Blocks, in_force: Order, effort: Effort, seed: int
-) -> Timeline | None:
-    """Return the order in force carried on, changed for clear gains alone; None for a fresh one.
+) -> Timeline:
+    """Return the order in force carried on, changed for clear gains alone.
 
     A fresh order is tried when what is ahead has become impossible, and taken for a gain of more
     than the bonus for keeping.
     """
+    kept = Timeline(problem)
+    lost_share = kept.repeat(in_force)
+    kept.fill()
+    kept.set_out()
     start = _start(problem, blocks)
     ahead = _turn_ahead(problem, blocks, in_force, start)
     search = Search(blocks, problem.travel, start, ahead, seed)
-    broken = _is_broken(blocks, ahead, search.best.blocks)
-    found = search.run(effort, wander=0.0, least=HYSTERESIS)
-    kept = _exact(problem, blocks, found)
-    if not broken:
+    better = _exact(problem, blocks, search.run(effort.with_reserve(RESERVE), 0.0, HYSTERESIS))
+    wanted_first = problem.rules.first is not None
+    if wanted_first or better.value() > (1.0 + CLEAR_GAIN) * kept.value():
+        kept = better
+    if lost_share < BROKEN_SHARE and not wanted_first:
         return kept
     fresh = _afresh(problem, blocks, effort, seed)
     return fresh if fresh.value() > (1.0 + KEEPING_BONUS) * kept.value() else kept
-
-
-def _is_broken(blocks: Blocks, ahead: Turn, possible: tuple[int, ...]) -> bool:
-    """Say whether the next visit, or much of what was ahead, has become impossible."""
-    if not ahead.blocks or not possible or ahead.blocks[0] not in possible[:1]:
-        return True
-    lost = set(ahead.blocks) - set(possible)
-    lost_min = float(blocks.minutes[list(lost)].sum())
-    return lost_min > BROKEN_SHARE * float(blocks.minutes[list(ahead.blocks)].sum())
 
 
 def _turn_ahead(problem: Problem, blocks: Blocks, order: Order, start: Start) -> Turn:

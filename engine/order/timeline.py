@@ -6,6 +6,7 @@ the grid's minutes before and after every exposure, and at all between.
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 from dataclasses import dataclass, field
 
@@ -15,7 +16,9 @@ from numpy.typing import NDArray
 from engine.order.blocks import TICKS_PER_MIN, Blocks
 from engine.order.improve import Timed
 from engine.order.merit import exposure_worth
+from engine.order.order import Order, PlacedExposures
 from engine.order.problem import Problem
+from engine.times import MINUTES_PER_DAY
 
 Floats = NDArray[np.float64]
 
@@ -63,13 +66,59 @@ class Timeline:
             wanted_min = (max(float(tick), start_tick)) / TICKS_PER_MIN
             self._append(int(blocks.target[block]), blocks.parts[block], wanted_min)
 
-    def _append(self, target: int, parts: Sequence[tuple[int, int]], wanted_min: float) -> None:
+    def repeat(self, order: Order) -> float:
+        """Take over the visits of an order still ahead, at their times; return the share lost.
+
+        The share is of the minutes of exposures, counted as what is still wanted of them.
+        """
+        problem = self.problem
+        known = {target.name: index for index, target in enumerate(problem.targets)}
+        ahead_min = 0.0
+        for visit in order.visits:
+            if visit.target not in known or visit.end_mjd <= problem.from_mjd:
+                continue
+            parts: list[tuple[int, int]] = []
+            begins_min: list[float] = []
+            for run in visit.exposures:
+                begin_min = (run.start_mjd - problem.mjd_at(0.0)) * MINUTES_PER_DAY
+                found = self._parts_ahead(known[visit.target], run, begin_min)
+                if found is not None:
+                    parts.append(found)
+                    begins_min.append(begin_min)
+                    ahead_min += found[1] * problem.lines[found[0]].each_min
+            if parts:
+                change_min = problem.lines[parts[0][0]].change_min
+                self._append(known[visit.target], parts, begins_min[0] - change_min, 0.0)
+        taken_min = sum(stay.end_min - stay.runs[0].begin_min for stay in self.stays)
+        return max(1.0 - taken_min / ahead_min, 0.0) if ahead_min > 0.0 else 1.0
+
+    def _parts_ahead(
+        self, target: int, run: PlacedExposures, begin_min: float
+    ) -> tuple[int, int] | None:
+        """Return the line of a run and how many of its exposures are ahead and still wanted."""
+        problem = self.problem
+        for line in problem.lines_of(target):
+            each = problem.lines[line]
+            name = problem.night.observatory.filters[each.filter].name
+            if name == run.filter and each.seconds == run.seconds:
+                gone = math.ceil((problem.start_min - begin_min) / each.each_min - 1e-6)
+                count = min(run.count - max(gone, 0), int(self.left[line]))
+                return (line, count) if count > 0 else None
+        return None
+
+    def _append(
+        self,
+        target: int,
+        parts: Sequence[tuple[int, int]],
+        wanted_min: float,
+        put_off_min: float = PUT_OFF_MIN,
+    ) -> None:
         problem = self.problem
         last = self.stays[-1] if self.stays else None
         leave_min = last.end_min if last else problem.start_min
         here = last.target if last else problem.pointing
         arrive_min = leave_min + problem.travel.exact_min(here, leave_min, target, leave_min)
-        if wanted_min > arrive_min + PUT_OFF_MIN:
+        if wanted_min > arrive_min + put_off_min:
             arrive_min = wanted_min
         stay = Stay(target, leave_min, arrive_min)
         for line, count in parts:

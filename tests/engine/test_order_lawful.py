@@ -71,3 +71,15 @@ def test_the_checker_finds_what_is_wrong(night: RandomNight) -> None:
     many = tuple(replace(r, count=r.count + 1) for r in first.exposures)
     assert any("asked for" in each for each in wrong(replace(first, exposures=many), second))
     assert any("too light" in each for each in wrong(first, moved(0.5)))
+
+
+@pytest.mark.parametrize("seed", range(4))
+def test_an_order_carried_on_is_lawful(seed: int) -> None:
+    """Two hours later and under another seeing, what is kept of an order breaks nothing."""
+    night = random_night(300 + seed, 15, LOADS[seed])
+    before = propose(night.problem(), steps=20)
+    from_mjd = before.visits[0].exposures[0].start_mjd + 2.013 / 24.0
+    problem = night.problem(1.08, from_mjd)
+    after = propose(problem, before, steps=10)
+    assert after.visits
+    assert faults(after, night.night, night.outlook(1.08), night.plans, Rules()) == []
