@@ -165,7 +165,7 @@ def _withdrawn(events: tuple[Event, ...]) -> frozenset[int]:
     amendments = [event for event in events if isinstance(event, Amendment)]
     gone: set[int] = set()
     for event in reversed(amendments):
-        if event.with_n is not None and event.with_n in gone:
+        if event.with_n is not None and event.with_n < event.n and event.with_n in gone:
             gone.add(event.n)
         if event.withdrawn and event.of < event.n and event.n not in gone:
             gone.add(event.of)

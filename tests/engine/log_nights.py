@@ -47,8 +47,8 @@ def full_header() -> Header:
 
 
 def open_log(folder: Path, disk: Disk | None = None) -> NightLog:
-    """Open the invented night's log in a folder."""
-    return NightLog.open(folder, header(), DUSK_MJD, disk)
+    """Open the invented night's log in a folder, ten hours into the night."""
+    return NightLog.open(folder, header(), at(600.0), disk)
 
 
 def blocks_of(events: list[Event]) -> bytes:

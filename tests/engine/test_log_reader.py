@@ -126,7 +126,7 @@ def test_what_is_no_night_log_is_an_error_with_its_line(data: bytes) -> None:
 
 
 def test_an_entry_changed_by_hand_is_used_and_said() -> None:
-    """It parses and has its end, so it is what somebody wants; its crc tells that it was changed."""
+    """It parses and has its end, so it is what somebody wants; its crc tells of the change."""
     data = log_bytes(notes(1, 2, 3)).replace(b"note 2", b"note two")
     found = reading(data)
     assert [event.text for event in found.events if isinstance(event, Note)] == [
