@@ -120,7 +120,7 @@ class Player:
         """Start the run, or go on to the next target when this one has had its run."""
         here = watch.state.pointing
         plan = watch.plan
-        if here is None or plan is None or plan.made_mjd < here.t_mjd:
+        if here is None or plan is None:
             return []
         wanted = next((v for v in plan.order.visits if v.end_mjd > now_mjd), None)
         if wanted is None or wanted.target != here.target:

@@ -130,7 +130,7 @@ def test_progress_counts_by_filter_and_length(logbook: Logbook) -> None:
         Took("nobody's", "B", 90.0),
     ]
     lines = {line.filter: line for line in plans([target], taken)[name]}
-    assert (lines["B"].done, lines["B"].credit, lines["B"].remaining) == (1, 0.5, 4)
+    assert (lines["B"].done, lines["B"].credit, lines["B"].remaining) == (1, 0.5, 7)
     assert lines["V"].done == 2
     assert lines["I"].done == 0
 
