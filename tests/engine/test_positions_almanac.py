@@ -132,6 +132,23 @@ def test_moonlight_of_a_night_is_astroplans(site: Site, night: date) -> None:
     assert float(moon(mjd, site).illumination[0]) == pytest.approx(float(theirs), abs=0.01)
 
 
+@pytest.mark.parametrize("site", SITES.values(), ids=SITES.keys())
+def test_phase_is_that_of_the_triangle_from_the_site(site: Site) -> None:
+    """I = atan2(R sin psi, D - R cos psi) (Meeus ch. 48), all three seen from the site."""
+    mjd = 61200.0 + np.linspace(0.0, 29.5, 60)
+    to_sun, to_moon = sun(mjd, site), moon(mjd, site)
+    elongation_rad = np.deg2rad(
+        separation_deg(to_sun.ra_deg, to_sun.dec_deg, to_moon.ra_deg, to_moon.dec_deg)
+    )
+    phase_rad = np.arctan2(
+        to_sun.distance_km * np.sin(elongation_rad),
+        to_moon.distance_km - to_sun.distance_km * np.cos(elongation_rad),
+    )
+    # Aberration, 20 arcsec, is in the Sun's place and not in the phase.
+    assert to_moon.phase_angle_deg == pytest.approx(np.rad2deg(phase_rad), abs=0.01)
+    assert to_moon.illumination == pytest.approx((1.0 + np.cos(phase_rad)) / 2.0, abs=1e-4)
+
+
 @pytest.mark.parametrize(("site", "night"), CASES[::3])
 @pytest.mark.parametrize(("ra_deg", "dec_deg"), [(83.6, 22.0), (201.3, -11.2), (10.7, 1.3)])
 def test_a_target_rises_and_sets_when_astroplan_says(
