@@ -70,7 +70,12 @@ assert (earth_table_note(mjd) is not None) is (mjd > earth_table().last_mjd)
 
 ASTROPYS = """
 prepare_astropy()
+prepare_astropy()  # twice is harmless
 import astropy.units as u
+from astropy.utils import iers
+
+# With a fresh table nothing would be fetched anyway: ask for the promise itself.
+assert iers.conf.auto_download is False
 from astropy.coordinates import AltAz, EarthLocation, SkyCoord, get_body
 from astropy.time import Time
 
