@@ -21,7 +21,7 @@ Places = NDArray[np.int64]
 
 TICKS_PER_MIN = 2
 # A plan longer than the first is cut into pieces of about the second, so that it can be fitted in.
-WHOLE_MIN, PIECE_MIN = 40.0, 28.0
+WHOLE_MIN, PIECE_MIN = 60.0, 40.0
 # How often a block that fits nowhere is halved before what is left of it is left to the filling.
 HALVINGS = 4
 # The value of beginning where a block may not: worse than anything it could win.
