@@ -31,9 +31,8 @@ CLEAR_GAIN = 0.01
 BROKEN_SHARE = 0.05
 # Two first orders are made exact beside the one that was searched: the plain rules, always.
 PLAIN = (VALUE_FIRST, URGENT)
-NEAR_SHARE = 0.85
 # Of the time used before the search, the share that is kept back for what comes after it.
-RESERVE = 0.5
+RESERVE = 0.8
 # Milliseconds when none are given: for lists up to so many targets, and for longer ones.
 SHORT_LIST = 100
 COLD_MS, WARM_MS = (50.0, 200.0), (10.0, 40.0)
@@ -144,11 +143,10 @@ def _afresh(problem: Problem, blocks: Blocks, effort: Effort, seed: int) -> Time
     found = search.run(effort.with_reserve(RESERVE))
     timeline = _exact(problem, blocks, found)
     for temper in PLAIN:
-        place = TEMPERS.index(temper)
-        # Filled up, a plain rule may come out ahead, but not from far behind.
-        if worths[place] > NEAR_SHARE * found.value:
-            plain = _exact(problem, blocks, _as_timed(problem, blocks, start, turns[place]))
-            timeline = max(timeline, plain, key=Timeline.value)
+        # Always: once gaps are filled, a plain rule may come out ahead from well behind.
+        turn = turns[TEMPERS.index(temper)]
+        plain = _exact(problem, blocks, _as_timed(problem, blocks, start, turn))
+        timeline = max(timeline, plain, key=Timeline.value)
     return timeline
 
 
