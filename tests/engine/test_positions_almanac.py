@@ -12,7 +12,7 @@ from datetime import date, timedelta
 from functools import cache
 
 import astropy.units as u
-import ephem  # type: ignore[import-untyped]  # it ships no type information
+import ephem
 import numpy as np
 import pytest
 from astroplan import FixedTarget, Observer

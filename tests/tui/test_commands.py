@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+import re
 import shutil
 from pathlib import Path
 from typing import Any
@@ -46,6 +47,17 @@ def test_almanac_json(folder: Path, capsys: pytest.CaptureFixture[str]) -> None:
     moments = [mjd_from_iso(told[name]) for name in list(told)[1:9]]
     assert moments == sorted(moments)
     assert 0.0 <= told["moon_illumination"] <= 1.0
+
+
+def test_almanac_can_be_doubted(folder: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    """Beside each time stands astroplan's; they agree to two seconds."""
+    assert main(["almanac", "--logbook", str(folder), "--night", NIGHT, "--doubt"]) == 0
+    apart_s = [
+        abs(float(each))
+        for each in re.findall(r"astroplan ([+-][\d.]+) s", capsys.readouterr().out)
+    ]
+    assert len(apart_s) == 10
+    assert max(apart_s) < 2.0
 
 
 def test_sky_json(folder: Path, capsys: pytest.CaptureFixture[str]) -> None:

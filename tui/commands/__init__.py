@@ -68,7 +68,12 @@ COMMANDS: tuple[Command, ...] = (
         ),
     ),
     Command("check", "print every fault in the logbook, or what it holds"),
-    Command("almanac", "print the night's Sun, twilight and Moon times", takes_night=True),
+    Command(
+        "almanac",
+        "print the night's Sun, twilight and Moon times",
+        takes_night=True,
+        options=(Option("--doubt", "set astroplan's times beside ours", {"action": "store_true"}),),
+    ),
     Command(
         "sky",
         "print every target at one moment: where, how soft, may it be observed",

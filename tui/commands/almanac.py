@@ -3,12 +3,14 @@
 from __future__ import annotations
 
 import argparse
+from datetime import UTC
 from zoneinfo import ZoneInfo
 
 from engine.clock import SystemClock
 from engine.logbook import load_logbook
 from engine.positions import almanac, earth_table_note
-from engine.times import night_of
+from engine.positions.second_opinion import astroplans_almanac
+from engine.times import SECONDS_PER_DAY, night_of
 from tui.commands.output import clock_time, iso_or_none, print_columns, print_json
 
 # Field of the almanac, and what a person calls it, in the order of an ordinary night.
@@ -40,14 +42,18 @@ def run(arguments: argparse.Namespace) -> int:
         return 0
     zone = ZoneInfo(site.timezone)
     print(f"{site.name}, night of {night.isoformat()}: the Sun {times.sun_state}")
-    moments = [(getattr(times, name), label) for name, label in EVENTS]
-    known = sorted((mjd, label) for mjd, label in moments if mjd is not None)
+    theirs = astroplans_almanac(site, times) if arguments.doubt else None
+    rows = []
+    for name, label in EVENTS:
+        mjd = getattr(times, name)
+        if mjd is not None:
+            rows.append((mjd, label if theirs is None else f"{label}{_apart(mjd, theirs[name])}"))
     print_columns(
         ("local", "UTC", ""),
-        [(clock_time(m, zone), str(iso_or_none(m))[11:16], label) for m, label in known],
+        [(clock_time(m, zone), clock_time(m, UTC), label) for m, label in sorted(rows)],
         left=2,
     )
-    missing = [label for mjd, label in moments if mjd is None]
+    missing = [label for name, label in EVENTS if getattr(times, name) is None]
     if missing:
         print(f"not this night: {'; '.join(missing)}")
     print(f"Moon at the middle of the night: {times.moon_illumination:.0%} lit")
@@ -55,3 +61,10 @@ def run(arguments: argparse.Namespace) -> int:
     if note:
         print(note)
     return 0
+
+
+def _apart(mjd: float, theirs_mjd: float | None) -> str:
+    """Return how far astroplan's time of an event lies from ours."""
+    if theirs_mjd is None:
+        return "; astroplan finds none"
+    return f"; astroplan {(theirs_mjd - mjd) * SECONDS_PER_DAY:+.1f} s"
