@@ -34,15 +34,13 @@ def limit_bits(night: Night) -> Bits:
         "below_horizon": seen_deg <= 0.0,
         "sun_near": (night.sun_separation_deg < observatory.caution.sun_separation_deg)
         & (night.sun.altitude_deg > SUN_UP_ALTITUDE_DEG),
-        "daylight": ~np.array([_any_filter_dark(night, each) for each in targets]).reshape(
-            seen_deg.shape
-        ),
+        "daylight": ~_of_each([_any_filter_dark(night, each) for each in targets], seen_deg.shape),
         "skyline": seen_deg
         < skyline_altitude_deg(observatory.site.horizon, night.where.azimuth_deg),
         "too_low": seen_deg < telescope.minimum_altitude_deg,
         "too_high": seen_deg > telescope.maximum_altitude_deg,
         "hour_angle": (hour_angle_h < least_h) | (hour_angle_h > greatest_h),
-        "window": ~np.array([_in_windows(night, each) for each in targets]).reshape(seen_deg.shape),
+        "window": ~_of_each([_in_windows(night, each) for each in targets], seen_deg.shape),
         # A target below the horizon has no airmass (NaN): it breaks that limit above already.
         "airmass": night.airmass > _own(targets, "maximum_airmass", np.inf),
         "moon_near": (night.moon_separation_deg < _own(targets, "minimum_moon_separation_deg", 0.0))
@@ -52,6 +50,11 @@ def limit_bits(night: Night) -> Bits:
     for code, mask in broken.items():
         bits |= np.where(mask, np.uint32(bit_of(code)), np.uint32(0))
     return bits
+
+
+def _of_each(rows: list[Mask], shape: tuple[int, ...]) -> Mask:
+    """Return one row a target as a table (N, T), of no rows too."""
+    return np.array(rows, dtype=bool).reshape(shape)
 
 
 def _own(targets: tuple[Target, ...], name: str, otherwise: float) -> NDArray[np.float64]:

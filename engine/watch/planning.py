@@ -16,7 +16,7 @@ from engine.image import ImageModel
 from engine.log import Exposure, NightState
 from engine.logbook import Logbook
 from engine.night import Night, Outlook, Outlooks, Plans, open_night, plans
-from engine.order import build_problem, propose
+from engine.order import Problem, build_problem, propose
 from engine.positions import Air
 from engine.seeing import SeeingForecast, SeeingMeasurement, nowcast
 from engine.times import HOURS_PER_DAY
@@ -84,20 +84,23 @@ class Planner:
         """Return a new plan for the rest of the night from a moment (UTC MJD) on."""
         forecast = self.forecast(state, now_mjd)
         outlook = self.outlook(forecast.at(self.night.mjd)[0])
-        remaining = self.plans(state)
-        problem = build_problem(
-            self.night,
-            outlook,
-            remaining,
-            rules_from(state, now_mjd),
-            from_mjd=now_mjd,
-            pointing=state.pointing.target if state.pointing else None,
-        )
+        problem = self.problem(state, outlook, now_mjd)
         order = propose(problem, in_force=before.order if before else None)
         fresh = Plan(now_mjd, because, forecast, outlook, order)
         if before is None:
             return fresh
-        return replace(fresh, news=news(self.night, before, fresh, remaining))
+        return replace(fresh, news=news(self.night, before, fresh, problem.plans))
+
+    def problem(self, state: NightState, outlook: Outlook, from_mjd: float) -> Problem:
+        """Return the rest of the night from a moment (UTC MJD) as the search takes it."""
+        return build_problem(
+            self.night,
+            outlook,
+            self.plans(state),
+            rules_from(state, from_mjd),
+            from_mjd=from_mjd,
+            pointing=state.pointing.target if state.pointing else None,
+        )
 
 
 def measured_air(state: NightState, now_mjd: float, otherwise: Air) -> Air:

@@ -13,12 +13,11 @@ from engine.image import ImageModel
 from engine.log import NightState, fold, night_logs, read_log
 from engine.logbook import Logbook
 from engine.night import Night, Outlooks, TargetNow, plans, tables, targets_at
-from engine.order import Order, build_problem, propose
+from engine.order import Order, propose, upper_limit
 from engine.positions import almanac
 from engine.times import night_of
 from engine.watch.opening import done_before
 from engine.watch.planning import Planner, forecast_of
-from engine.watch.rules import rules_from
 
 
 @dataclass(frozen=True, slots=True)
@@ -69,34 +68,31 @@ def state_of_night(logbook: Logbook, night: date, until_mjd: float) -> NightStat
 
 
 def order_of_night(
-    logbook: Logbook, night: date | None, at_mjd: float | None, seeing_arcsec: float | None
+    logbook: Logbook,
+    night: date | None,
+    at_mjd: float | None,
+    seeing_arcsec: float | None,
+    *,
+    with_bound: bool = False,
 ) -> Order:
     """Return the order for what remains of a night.
 
-    From ``at_mjd`` (UTC MJD) if given, else from now if now is in the night, else from its dusk.
-    NoAnswer when the night has no dark time left.
+    From ``at_mjd`` (UTC MJD) if given, else from now if now is in the night, else from its
+    beginning. ``with_bound`` proves an upper limit too, which takes seconds and needs the extra
+    ``bound``. NoAnswer when the night has no dark time left.
     """
     now_mjd = SystemClock().now_mjd()
-    timezone = logbook.observatory.site.timezone
     moment = now_mjd if at_mjd is None else at_mjd
-    night = night or night_of(moment, timezone)
+    night = night or night_of(moment, logbook.observatory.site.timezone)
     state = state_of_night(logbook, night, moment)
     planner = Planner(logbook, night, done_before(logbook.folder, night))
     grid = planner.night.mjd
-    start_mjd = moment if at_mjd is not None else float(np.clip(now_mjd, grid[0], grid[-1]))
-    if at_mjd is None and not grid[0] < now_mjd < grid[-1]:
-        start_mjd = float(grid[0])
+    inside = at_mjd is not None or grid[0] < now_mjd < grid[-1]
+    start_mjd = moment if inside else float(grid[0])
     if not planner.night.dark[:, planner.night.index_at(start_mjd) :].any():
         raise NoAnswer(f"no darkness is left in the night of {night.isoformat()}")
-    if seeing_arcsec is None:
-        return planner.plan(state, start_mjd, "asked for", None).order
-    outlook = planner.outlook(np.full(len(grid), seeing_arcsec))
-    problem = build_problem(
-        planner.night,
-        outlook,
-        planner.plans(state),
-        rules_from(state, start_mjd),
-        from_mjd=start_mjd,
-        pointing=state.pointing.target if state.pointing else None,
-    )
-    return replace(propose(problem), from_mjd=start_mjd)
+    forecast = planner.forecast(state, start_mjd).at(grid)[0]
+    seeing = forecast if seeing_arcsec is None else np.full(len(grid), seeing_arcsec)
+    problem = planner.problem(state, planner.outlook(seeing), start_mjd)
+    order = propose(problem)
+    return replace(order, bound=upper_limit(problem)) if with_bound else order

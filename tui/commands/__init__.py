@@ -97,6 +97,13 @@ COMMANDS: tuple[Command, ...] = (
         "print the proposed order for the rest of the night",
         takes_moment=True,
         takes_night=True,
-        options=(Option("--seeing", "zenith seeing, arcsec at 500 nm", {"type": float}),),
+        options=(
+            Option("--seeing", "zenith seeing, arcsec at 500 nm", {"type": float}),
+            Option(
+                "--bound",
+                "prove an upper limit to any order's worth too (needs the extra 'bound')",
+                {"action": "store_true"},
+            ),
+        ),
     ),
 )

@@ -21,6 +21,7 @@ def run(arguments: argparse.Namespace) -> int:
         night=arguments.night,
         at_mjd=arguments.at,
         seeing_arcsec=arguments.seeing,
+        with_bound=arguments.bound,
     )
     if arguments.json:
         print_json(_as_json(order))
