@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Mapping
 from dataclasses import dataclass
 
 from engine.logbook import Target
@@ -51,21 +52,36 @@ class TargetNow:
         return max(each.image_size_arcsec for each in needed)
 
 
-def targets_at(night: Night, outlook: Outlook, mjd: float, plans: Plans) -> tuple[TargetNow, ...]:
-    """Return every target of the night at the minute nearest to a moment (UTC MJD)."""
+def targets_at(
+    night: Night,
+    outlook: Outlook,
+    mjd: float,
+    plans: Plans,
+    decided: Mapping[str, str] | None = None,
+) -> tuple[TargetNow, ...]:
+    """Return every target of the night at the minute nearest to a moment (UTC MJD).
+
+    ``decided`` holds, by target, the code of a reason that the observer made: dropped, put off.
+    """
     at = night.index_at(mjd)
+    codes = decided or {}
     return tuple(
-        _target_at(night, outlook, index, at, plans[target.name])
+        _target_at(night, outlook, index, at, plans[target.name], codes.get(target.name))
         for index, target in enumerate(night.targets)
     )
 
 
 def _target_at(
-    night: Night, outlook: Outlook, index: int, at: int, plan: tuple[Progress, ...]
+    night: Night,
+    outlook: Outlook,
+    index: int,
+    at: int,
+    plan: tuple[Progress, ...],
+    decided: str | None,
 ) -> TargetNow:
     where = night.where
     filters = tuple(_filter_at(night, outlook, index, at, line) for line in plan)
-    bits = int(night.limits[index, at])
+    bits = int(night.limits[index, at]) | (bit_of(decided) if decided else 0)
     if is_finished(plan):
         bits |= bit_of("finished")
     needed = [each for each in filters if each.progress.remaining]

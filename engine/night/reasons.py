@@ -38,7 +38,6 @@ REASONS: tuple[Reason, ...] = tuple(
             ("airmass", "airmass", "its airmass is above its own limit"),
             ("moon_near", "Moon", "it is closer to the Moon than it may be"),
             ("too_soft", "soft", "its images would be larger than its own limit"),
-            ("no_filter", "filter", "each filter it still needs was put aside for tonight"),
         )
     )
 )

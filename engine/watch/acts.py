@@ -21,8 +21,9 @@ from engine.log import (
     title,
 )
 from engine.night import Progress
-from engine.times import SECONDS_PER_DAY
+from engine.times import MINUTES_PER_DAY, SECONDS_PER_DAY
 from engine.watch.record import Ending, credit_measured
+from engine.watch.rules import rules_from
 from engine.watch.stage import Stage
 from engine.watch.watch import Watch
 
@@ -107,6 +108,33 @@ def start_run(watch: Watch, lines: tuple[Progress, ...]) -> Event:
     )
     watch.tick()
     return event
+
+
+# The observer's rules
+
+
+def drop(watch: Watch, name: str) -> Event:
+    """Drop a target for tonight, or take it back when it was dropped or put off."""
+    rules = rules_from(watch.state, watch.clock.now_mjd())
+    back = name in rules.dropped or name in rules.put_off
+    action = "release" if back else "drop"
+    said = "taken back" if back else "dropped"
+    return watch.submit(Override(action=action, target=name), because=f"{name} was {said}")
+
+
+def put_off(watch: Watch, name: str, minutes: float) -> Event:
+    """Leave a target out of the order for so many minutes."""
+    until_mjd = watch.clock.now_mjd() + minutes / MINUTES_PER_DAY
+    override = Override(action="put_off", target=name, until_mjd=until_mjd)
+    return watch.submit(override, because=f"{name} was put off")
+
+
+def put_filter_aside(watch: Watch, name: str) -> Event:
+    """Use a filter no more tonight, or again when it was put aside."""
+    back = name in rules_from(watch.state, watch.clock.now_mjd()).forbidden_filters
+    action = "release" if back else "forbid"
+    said = "used again" if back else "put aside"
+    return watch.submit(Override(action=action, filter=name), because=f"{name} is {said}")
 
 
 # Exposures

@@ -11,6 +11,7 @@ from engine.log import Amendment, Conditions, read_log
 from engine.rehearsal import NIGHT
 from engine.watch import Stage
 from tests.tui.trial import Trial, a_logbook, after_dusk_mjd, play
+from tui.widgets import LiveList
 
 
 @pytest.fixture
@@ -142,6 +143,42 @@ def test_a_rejected_exposure_comes_back_on_the_plan(folder: Path) -> None:
         assert sum(line.done for line in trial.watch.plans()[name]) == done - 1
         await trial.press("u")
         assert sum(line.done for line in trial.watch.plans()[name]) == done
+
+    play(folder, story)
+
+
+def test_the_order_works_around_the_observers_rules(folder: Path) -> None:
+    """Drop, put off, a filter put aside: each leaves the order and comes back."""
+
+    async def story(trial: Trial) -> None:
+        def ordered() -> list[str]:
+            assert trial.watch.plan is not None
+            return [visit.target for visit in trial.watch.plan.order.visits]
+
+        first = ordered()[0]
+        assert trial.console.query_one("#list", LiveList).key == first
+        await trial.press("d")
+        assert first not in ordered()
+        assert any(
+            each.target == first and "dropped" in each.reason
+            for each in (trial.watch.plan.order.left_out if trial.watch.plan else ())
+        )
+        (dropped,) = (each for each in trial.watch.targets_now() if each.target.name == first)
+        assert dropped.reasons[0].code == "dropped"
+        trial.console.query_one("#list", LiveList).move_to(first)
+        await trial.press("d")
+        assert first in ordered()
+        await trial.press("p")
+        await trial.type("90")
+        assert trial.watch.plan is not None
+        begins = {visit.target: visit.start_mjd for visit in trial.watch.plan.order.visits}
+        assert begins[first] >= trial.clock.now_mjd() + 80.0 / 1440.0
+        await trial.press("w", "2")
+        filters = {e.filter for v in trial.watch.plan.order.visits for e in v.exposures}
+        assert "V" not in filters
+        await trial.press("w", "2")
+        filters = {e.filter for v in trial.watch.plan.order.visits for e in v.exposures}
+        assert "V" in filters
 
     play(folder, story)
 

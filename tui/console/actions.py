@@ -96,6 +96,27 @@ ACTIONS: tuple[Action, ...] = (
         GROUPS[3],
         footer=8,
     ),
+    Action(
+        "drop",
+        ("d",),
+        "drop",
+        "Drop the target under the cursor for tonight, or take it back.",
+        GROUPS[3],
+    ),
+    Action(
+        "put_off",
+        ("p",),
+        "put off",
+        "Leave the target under the cursor out of the order for some minutes.",
+        GROUPS[3],
+    ),
+    Action(
+        "filter_aside",
+        ("w",),
+        "filter aside",
+        "Put a filter of the wheel aside for tonight, or use it again.",
+        GROUPS[3],
+    ),
     Action("note", ("n",), "note", "Write a note into the log.", GROUPS[3], footer=9),
     Action(
         "undo",

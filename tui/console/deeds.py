@@ -76,13 +76,43 @@ class Deeds:
 
     def choose(self) -> None:
         """Point at the target under the cursor."""
-        key = self._console.query_one("#list", LiveList).key
-        if key is None:
-            raise acts.NotNow("no target is under the cursor")
+        key = self._under_cursor()
         now = next((each for each in self._watch.targets_now() if each.target.name == key), None)
         acts.point_at(self._watch, key)
         if now is not None and now.reasons:
             self._console.tell(f"{key}: {now.reasons[0].sentence}", "warn")
+
+    # The observer's rules
+
+    def _under_cursor(self) -> str:
+        key = self._console.query_one("#list", LiveList).key
+        if key is None:
+            raise acts.NotNow("no target is under the cursor")
+        return key
+
+    def drop(self) -> None:
+        """Drop the target under the cursor for tonight, or take it back."""
+        acts.drop(self._watch, self._under_cursor())
+
+    def put_off(self) -> None:
+        """Put the target under the cursor off for some minutes."""
+        name = self._under_cursor()
+        self._ask(
+            f"put {name} off for, minutes",
+            number_between(1.0, 720.0, "minutes"),
+            lambda minutes: acts.put_off(self._watch, name, minutes),
+        )
+
+    def filter_aside(self) -> None:
+        """Put a filter aside for tonight, or use it again."""
+        wheel = self._watch.planner.logbook.observatory.filters
+        choices = tuple((str(place), each.name) for place, each in enumerate(wheel[:9], start=1))
+        self._ask(
+            "which filter",
+            str,
+            lambda number: acts.put_filter_aside(self._watch, wheel[int(number) - 1].name),
+            choices,
+        )
 
     # Exposures
 
