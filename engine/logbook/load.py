@@ -2,26 +2,26 @@
 
 from __future__ import annotations
 
-import tomllib
-from collections.abc import Callable, Iterator
+import unicodedata
 from dataclasses import dataclass
 from pathlib import Path
-from typing import Any, TypeVar
+from typing import Protocol, TypeVar
 
 from pydantic import ValidationError
 
 from engine.errors import Fault, LogbookFaults
-from engine.logbook.faults import Path as KeyPath
-from engine.logbook.faults import key_text, nearest, problems, shown
-from engine.logbook.lines import LineFinder, split_syntax_error
+from engine.logbook.faults import KeyPath, key_text, problems, unknown
+from engine.logbook.files import TABLE_ENDINGS, Unreadable, parse_toml, read_text, target_files
+from engine.logbook.lines import LineIndex
 from engine.logbook.observatory import FileModel, Observatory
-from engine.logbook.tables import FORMATS, read_rows
 from engine.logbook.targets import Programme, Target
+from engine.logbook.text import nearest, shown
 
 Model = TypeVar("Model", bound=FileModel)
 
-# No list of targets is longer; what is was put there by mistake.
-LARGEST_BYTES = 16_000_000
+# A file with more faults than this is no logbook.
+MOST_FAULTS = 200
+SHORT_LIST = 12
 
 
 @dataclass(frozen=True, slots=True)
@@ -38,202 +38,218 @@ class Logbook:
         return Logbook(self.folder, self.observatory, self.programmes, (*self.targets, target))
 
 
-_MODELS: dict[str, type[Programme] | type[Target]] = {"programme": Programme, "target": Target}
-
-
-@dataclass(frozen=True, slots=True)
-class _OneLine:
-    """Where a table's row stands: every key of it on one line."""
-
-    line: int
+class _Lines(Protocol):
+    """Something that knows on which line a key of its file stands."""
 
     def line_of(self, path: KeyPath) -> int:
-        """Return the row's line."""
-        return self.line
+        """Return the line of a path of keys and places."""
+        ...
+
+
+class _File:
+    """One file of the logbook: where its keys stand, and the faults found in it."""
+
+    def __init__(self, path: Path, values: object = None, lines: _Lines | None = None) -> None:
+        self.path = path
+        self.values = values
+        self.faults: list[Fault] = []
+        self.refused: set[str] = set()  # columns of a table that are told once, not in each row
+        self._lines = lines
+
+    @property
+    def is_full(self) -> bool:
+        """Whether as many faults are noted as will be told."""
+        return len(self.faults) >= MOST_FAULTS
+
+    def line_of(self, key: KeyPath) -> int:
+        """Return the line on which a key stands."""
+        return self._lines.line_of(key) if self._lines else 1
+
+    def note(self, key: KeyPath, what: str) -> None:
+        """Note a fault of a key."""
+        if not self.is_full:
+            place = key_text(key, self.values)
+            self.faults.append(Fault(self.path, self.line_of(key), place, what))
+
+    def refuse(self, why: Unreadable) -> None:
+        """Note that the file can't be read at all."""
+        self.faults.append(Fault(self.path, why.line, "", str(why)))
+
+    def told(self) -> list[Fault]:
+        """Return the faults, and a line that says so where no more of them were noted."""
+        if not self.is_full:
+            return self.faults
+        last = max(each.line for each in self.faults)
+        what = f"there may be more: only {MOST_FAULTS} faults of a file are told, expected none"
+        return [*self.faults, Fault(self.path, last, "", what)]
 
 
 @dataclass(frozen=True, slots=True)
-class _Found:
-    """A target or programme, and where it stands."""
+class _Entry:
+    """A target or a programme as its file gives it, sound or not."""
 
-    item: Target | Programme
-    path: Path
-    lines: LineFinder | _OneLine
+    file: _File
     key: KeyPath
+    values: object
+
+    def get(self, name: str) -> object:
+        """Return the value of a key; None without one."""
+        return self.values.get(name) if isinstance(self.values, dict) else None
 
     @property
-    def line(self) -> int:
-        """The line on which it begins."""
-        return self.lines.line_of(self.key)
+    def name(self) -> str | None:
+        """Its name, in one spelling where Unicode has several."""
+        name = self.get("name")
+        return _spelt(name) if isinstance(name, str) and name else None
 
-    def fault(self, what: str, *where: str | int) -> Fault:
-        """Return a fault of one of its keys."""
-        key = (*self.key, *where)
-        return Fault(self.path, self.lines.line_of(key), key_text(key), what)
+    def note(self, what: str, *where: str | int) -> None:
+        """Note a fault of one of its keys."""
+        self.file.note((*self.key, *where), what)
 
 
 def load_logbook(folder: Path) -> Logbook:
     """Return the logbook in a folder; LogbookFaults with all that is wrong in any of its files."""
+    head, observatory, wheel = _read_observatory(folder / "observatory.toml")
     faults: list[Fault] = []
-    observatory, wheel = _observatory(folder / "observatory.toml", faults)
-    found: list[_Found] = []
-    files = list(_target_files(folder))
-    if not files and folder.is_dir():
-        faults.append(
-            Fault(folder / "targets.toml", 1, "", "is missing, expected a list of targets")
-        )
-    for path in files:
-        found += _from_toml(path, faults) if path.suffix == ".toml" else _from_table(path, faults)
-    _check_names(found, faults)
-    _check_filters(found, wheel, faults)
+    files: list[_File] = [head]
+    entries: list[_Entry] = []
+    for path in target_files(folder, faults):
+        file, found = _read_table(path) if _is_table(path) else _read_toml(path)
+        files.append(file)
+        entries += found
+    programmes = [each for each in entries if each.key[0] == "programme"]
+    targets = [each for each in entries if each.key[0] == "target"]
+    sound_programmes = _sound(programmes, Programme)
+    sound_targets = _sound(targets, Target)
+    _check_names(programmes)
+    _check_names(targets)
+    _check_programmes(targets, programmes)
+    _check_filters(targets, wheel)
+    faults += [fault for file in files for fault in file.told()]
+    if not targets and not faults:
+        faults.append(Fault(files[-1].path, 1, "", "no target, expected at least one [[target]]"))
     if faults or observatory is None:
         raise LogbookFaults(faults)
-    return Logbook(
-        folder,
-        observatory,
-        tuple(each.item for each in found if isinstance(each.item, Programme)),
-        tuple(each.item for each in found if isinstance(each.item, Target)),
-    )
+    return Logbook(folder, observatory, tuple(sound_programmes), tuple(sound_targets))
 
 
-def _target_files(folder: Path) -> Iterator[Path]:
-    endings = (".toml", *FORMATS)
-    yield from (path for end in endings if (path := folder / f"targets{end}").exists())
-    inside = folder / "targets"
-    if inside.is_dir():
-        yield from sorted(path for path in inside.iterdir() if path.suffix in endings)
+def _is_table(path: Path) -> bool:
+    return path.suffix.lower() in TABLE_ENDINGS
 
 
-def _text(path: Path, faults: list[Fault]) -> str | None:
-    """Return a file's text, or None with the fault noted."""
+def _open_toml(path: Path) -> _File:
+    """Return a TOML file with its values, or with the fault that kept it from being read."""
     try:
-        if path.is_file() and path.stat().st_size > LARGEST_BYTES:
-            what = f"{path.stat().st_size} bytes, expected at most {LARGEST_BYTES}"
-            faults.append(Fault(path, 1, "", what))
-            return None
-        return path.read_bytes().decode("utf-8-sig")
-    except UnicodeDecodeError as error:
-        line = error.object[: error.start].count(b"\n") + 1
-        faults.append(Fault(path, line, "", "not UTF-8, expected a text file in UTF-8"))
-    except FileNotFoundError:
-        faults.append(Fault(path, 1, "", "is missing, expected a file"))
-    except OSError as error:
-        faults.append(Fault(path, 1, "", f"{error.strerror}, expected a file that can be read"))
-    return None
+        text = read_text(path)
+        return _File(path, parse_toml(text), LineIndex(text))
+    except Unreadable as why:
+        file = _File(path)
+        file.refuse(why)
+        return file
 
 
-def _tables(path: Path, faults: list[Fault]) -> tuple[dict[str, Any], LineFinder] | None:
-    """Return a TOML file's tables and a finder of lines in it, or None with the fault noted."""
-    text = _text(path, faults)
-    if text is None:
-        return None
+def _validated(model: type[Model], values: object, file: _File, key: KeyPath = ()) -> Model | None:
+    """Return values as their model, or None with the faults noted."""
     try:
-        return tomllib.loads(text), LineFinder(text)
-    except (ValueError, RecursionError) as error:
-        line, what = split_syntax_error(str(error))
-        faults.append(Fault(path, line, "", f"{what}, expected TOML"))
-        return None
-
-
-def _checked(
-    values: object, model: type[Model], key: KeyPath, path: Path, line_of: Callable[[KeyPath], int]
-) -> tuple[Model | None, list[Fault]]:
-    """Return a table as its model, or None and what is wrong with it."""
-    try:
-        return model.model_validate(values, by_alias=True, by_name=False), []
+        return model.model_validate(values, by_alias=True, by_name=False)
     except ValidationError as error:
-        return None, [
-            Fault(path, line_of((*key, *where)), key_text((*key, *where)), what)
-            for where, what in problems(error, model)
-        ]
+        for where, what in problems(error, model):
+            if file.is_full:
+                break
+            if where[:1] not in {(name,) for name in file.refused}:
+                file.note((*key, *where), what)
+        return None
 
 
-def _observatory(path: Path, faults: list[Fault]) -> tuple[Observatory | None, tuple[str, ...]]:
-    """Return the observatory, and the names in its wheel even if something else is wrong in it."""
-    read = _tables(path, faults)
-    if read is None:
-        return None, ()
-    tables, finder = read
-    observatory, found = _checked(tables, Observatory, (), path, finder.line_of)
-    faults += found
-    filters = tables.get("filter")
-    wheel = (
-        [each.get("name") for each in filters if isinstance(each, dict)]
-        if isinstance(filters, list)
-        else []
-    )
-    return observatory, tuple(name for name in wheel if isinstance(name, str))
+def _read_observatory(path: Path) -> tuple[_File, Observatory | None, tuple[str, ...]]:
+    """Return the observatory, and the names in its wheel even if something else is wrong."""
+    file = _open_toml(path)
+    if not isinstance(file.values, dict):
+        return file, None, ()
+    observatory = _validated(Observatory, file.values, file)
+    filters = file.values.get("filter")
+    wheel = filters if isinstance(filters, list) else []
+    names = [each.get("name") for each in wheel if isinstance(each, dict)]
+    return file, observatory, tuple(name for name in names if isinstance(name, str))
 
 
-def _from_toml(path: Path, faults: list[Fault]) -> list[_Found]:
-    """Return what is sound in one targets.toml; the faults of the rest are noted."""
-    read = _tables(path, faults)
-    if read is None:
-        return []
-    tables, finder = read
-    found: list[_Found] = []
-    for name, items in tables.items():
-        model = _MODELS.get(name)
-        if model is None or not isinstance(items, list):
-            what = (
-                f"unknown key, expected [[programme]] or [[target]]{nearest(name, _MODELS)}"
-                if model is None
-                else f"{shown(items)}, expected a list of tables, [[{name}]]"
-            )
-            faults.append(Fault(path, finder.line_of((name,)), key_text((name,)), what))
-            continue
-        for place, values in enumerate(items):
-            key: KeyPath = (name, place)
-            item, wrong = _checked(values, model, key, path, finder.line_of)
-            faults += wrong
-            if item is not None:
-                found.append(_Found(item, path, finder, key))
-    return found
+def _read_toml(path: Path) -> tuple[_File, list[_Entry]]:
+    """Return the entries of one TOML file of targets."""
+    file = _open_toml(path)
+    known = ["programme", "target"]
+    entries: list[_Entry] = []
+    for name, items in (file.values if isinstance(file.values, dict) else {}).items():
+        if name not in known:
+            file.note((name,), unknown(name, known))
+        elif isinstance(items, list):
+            entries += [_Entry(file, (name, n), item) for n, item in enumerate(items)]
+        else:
+            file.note((name,), f"{shown(items)}, expected a list of tables, [[{name}]]")
+    return file, entries
 
 
-def _from_table(path: Path, faults: list[Fault]) -> list[_Found]:
-    if _text(path, faults) is None:
-        return []
+def _read_table(path: Path) -> tuple[_File, list[_Entry]]:
+    """Return the entries of one table of targets, one a row."""
+    from engine.logbook.tables import read_table
+
     try:
-        rows = read_rows(path)
-    except ValueError as error:
-        faults.append(Fault(path, 1, "", f"{error}, expected a table with one row a target"))
-        return []
-    found = []
-    for place, (line, values) in enumerate(rows):
-        key: KeyPath = ("row", place)
-        where = _OneLine(line)
-        target, wrong = _checked(values, Target, key, path, where.line_of)
-        faults += wrong
-        if target is not None:
-            found.append(_Found(target, path, where, key))
-    return found
+        table = read_table(read_text(path), path.suffix.lower())
+    except Unreadable as why:
+        file = _File(path)
+        file.refuse(why)
+        return file, []
+    file = _File(path, {"target": table.rows}, table)
+    file.refused = table.refused
+    for key, what in table.problems:
+        file.note(key, what)
+    return file, [_Entry(file, ("target", n), row) for n, row in enumerate(table.rows)]
 
 
-def _check_names(found: list[_Found], faults: list[Fault]) -> None:
-    programmes = {each.item.name for each in found if isinstance(each.item, Programme)}
-    first: dict[tuple[type, str], _Found] = {}
-    for each in found:
-        before = first.setdefault((type(each.item), each.item.name), each)
-        if before is not each:
-            place = f"{before.path}:{before.line}"
-            what = f"{shown(each.item.name)} stands at {place} already, expected each name once"
-            faults.append(each.fault(what, "name"))
-        if isinstance(each.item, Target) and programmes:
-            name = each.item.programme
-            if name and name not in programmes:
-                what = f"{shown(name)}, expected a [[programme]]{nearest(name, programmes)}"
-                faults.append(each.fault(what, "programme"))
+def _sound(entries: list[_Entry], model: type[Model]) -> list[Model]:
+    """Return the entries that are sound; the faults of the others are noted."""
+    found = (_validated(model, each.values, each.file, each.key) for each in entries)
+    return [each for each in found if each is not None]
 
 
-def _check_filters(found: list[_Found], wheel: tuple[str, ...], faults: list[Fault]) -> None:
-    for each in found:
-        if not isinstance(each.item, Target) or not wheel:
+def _check_names(entries: list[_Entry]) -> None:
+    first: dict[str, _Entry] = {}
+    for each in entries:
+        if each.name is None:
             continue
-        for place, planned in enumerate(each.item.exposures):
-            if planned.filter not in wheel:
-                what = (
-                    f"{shown(planned.filter)} is not in the wheel, expected one of "
-                    f"{', '.join(wheel)}{nearest(planned.filter, wheel)}"
-                )
-                faults.append(each.fault(what, "exposures", place, "filter"))
+        before = first.setdefault(each.name, each)
+        if before is not each:
+            place = f"{before.file.path}:{before.file.line_of((*before.key, 'name'))}"
+            each.note(f"{shown(each.name)} stands at {place}, expected each name once", "name")
+
+
+def _check_programmes(targets: list[_Entry], programmes: list[_Entry]) -> None:
+    declared = {each.name: None for each in programmes if each.name}
+    for each in targets if declared else ():
+        name = each.get("programme")
+        if each.file.is_full or not isinstance(name, str) or not name or _spelt(name) in declared:
+            continue
+        what = f"{shown(name)} is no [[programme]], {_one_of(name, tuple(declared))}"
+        each.note(what, "programme")
+
+
+def _check_filters(targets: list[_Entry], wheel: tuple[str, ...]) -> None:
+    known = {_spelt(name) for name in wheel}
+    for each in targets if wheel else ():
+        plan = each.get("exposures")
+        for place, planned in enumerate(plan if isinstance(plan, list) else ()):
+            name = planned.get("filter") if isinstance(planned, dict) else None
+            if each.file.is_full or not isinstance(name, str) or not name or _spelt(name) in known:
+                continue
+            what = f"{shown(name)} is not in the wheel, {_one_of(name, wheel)}"
+            each.note(what, "exposures", place, "filter")
+
+
+def _spelt(name: str) -> str:
+    """Return a name in the one spelling that the models keep."""
+    return unicodedata.normalize("NFC", name)
+
+
+def _one_of(name: str, known: tuple[str, ...]) -> str:
+    listed = ", ".join(shown(each) for each in known[:SHORT_LIST])
+    more = " and more" if len(known) > SHORT_LIST else ""
+    return f"expected one of {listed}{more}{nearest(name, known)}"

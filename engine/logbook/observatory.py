@@ -7,21 +7,33 @@ Names are fixed by the file's contract: add keys freely, rename none.
 from __future__ import annotations
 
 import math
-from typing import Annotated, Any, Literal, Self
-from zoneinfo import ZoneInfo
+from typing import Annotated, Any, Literal, Self, TypeGuard
+from zoneinfo import ZoneInfo, available_timezones
 
 from pydantic import AfterValidator, BaseModel, ConfigDict, Field, field_validator, model_validator
 
-from engine.logbook.text import clean_name
+from engine.logbook.faults import KeyPath, Misfits
+from engine.logbook.text import clean_name, nearest, shown
 
 ARCSEC_PER_RADIAN = 206264.806247
 
 Name = Annotated[str, AfterValidator(clean_name)]
 
 
-def key(help_text: str, *, unit: str = "", **limits: Any) -> Any:
-    """Declare a key of a file: its help, its unit, and pydantic's own limits."""
-    return Field(description=help_text, json_schema_extra={"unit": unit}, **limits)
+MOST_FILTERS = 100
+
+
+def key(help_text: str, *, unit: str = "", form: str = "", **limits: Any) -> Any:
+    """Declare a key of a file: its help, its unit, and pydantic's own limits.
+
+    ``form`` says in words what is expected where type, unit and limits do not.
+    """
+    return Field(description=help_text, json_schema_extra={"unit": unit, "form": form}, **limits)
+
+
+def is_number(value: object, low: float, high: float) -> TypeGuard[float]:
+    """Say whether a value from a file is a number between limits; NaN and true are not."""
+    return isinstance(value, int | float) and not isinstance(value, bool) and low <= value <= high
 
 
 class FileModel(BaseModel):
@@ -35,14 +47,18 @@ class FileModel(BaseModel):
 class Site(FileModel):
     """Where the telescope stands."""
 
-    name: Name = key("the site's name, as it goes into the log")
+    name: Name = key("the site's name, as it goes into the log", min_length=1)
     latitude_deg: float = key("geodetic latitude, north positive", unit="deg", ge=-90, le=90)
     longitude_deg: float = key("longitude, east positive", unit="deg", ge=-180, le=360)
     elevation_m: float = key("height above the sea", unit="m", ge=-450, le=9000)
-    timezone: str = key("IANA time zone; a night is named by the local date of its evening")
-    horizon: Annotated[tuple[tuple[float, float], ...], Field(strict=False)] = key(
-        "the skyline as [azimuth_deg, altitude_deg] pairs by rising azimuth; closes on itself",
+    timezone: str = key(
+        "a night is named by the local date of its evening",
+        form="an IANA time zone such as 'Europe/Madrid'",
+    )
+    horizon: tuple[tuple[float, float], ...] = key(
+        "the skyline as [azimuth_deg, altitude_deg] pairs; closes on itself",
         unit="deg",
+        form="pairs [azimuth_deg, altitude_deg] by rising azimuth",
         default=(),
     )
 
@@ -56,39 +72,44 @@ class Site(FileModel):
         try:
             ZoneInfo(value)
         except (KeyError, ValueError, OSError):
-            raise ValueError("expected an IANA time zone such as 'Europe/Madrid'") from None
+            close = nearest(value, sorted(available_timezones()))
+            what = f"{shown(value)}, expected an IANA time zone such as 'Europe/Madrid'{close}"
+            raise ValueError(what) from None
         return value
 
     @field_validator("horizon", mode="before")
     @classmethod
-    def _pairs(cls, value: object) -> object:
-        if isinstance(value, list):
-            return tuple(tuple(pair) if isinstance(pair, list) else pair for pair in value)
-        return value
-
-    @field_validator("horizon")
-    @classmethod
-    def _ordered_horizon(
-        cls, value: tuple[tuple[float, float], ...]
-    ) -> tuple[tuple[float, float], ...]:
-        before = -1.0
-        for azimuth_deg, altitude_deg in value:
-            if not (math.isfinite(azimuth_deg) and 0 <= azimuth_deg < 360):
-                raise ValueError(f"azimuth {azimuth_deg:g}, expected 0 or more and less than 360")
-            if not (math.isfinite(altitude_deg) and 0 <= altitude_deg <= 90):
-                raise ValueError(f"altitude {altitude_deg:g}, expected 0 to 90")
-            if azimuth_deg <= before:
-                raise ValueError(
-                    f"azimuth {azimuth_deg:g} after {before:g}, expected azimuths that rise"
-                )
-            before = azimuth_deg
-        return value
+    def _rising_horizon(cls, value: object) -> tuple[tuple[float, float], ...]:
+        if not isinstance(value, list | tuple):
+            wanted = "a list of [azimuth_deg, altitude_deg] pairs"
+            raise ValueError(f"{shown(value)}, expected {wanted}")
+        wrong: list[tuple[KeyPath, str]] = []
+        skyline: list[tuple[float, float]] = []
+        for place, pair in enumerate(value):
+            match pair:
+                case (azimuth, altitude) if is_number(azimuth, 0, 360) and azimuth < 360:
+                    if not is_number(altitude, 0, 90):
+                        what = f"altitude {shown(altitude)}, expected degrees from 0 to 90"
+                    elif skyline and azimuth <= skyline[-1][0]:
+                        before = skyline[-1][0]
+                        what = f"azimuth {azimuth:g} after {before:g}, expected azimuths that rise"
+                    else:
+                        skyline.append((float(azimuth), float(altitude)))
+                        continue
+                case (azimuth, _):
+                    what = f"azimuth {shown(azimuth)}, expected degrees from 0 to less than 360"
+                case _:
+                    what = f"{shown(pair)}, expected a pair [azimuth_deg, altitude_deg]"
+            wrong.append(((place,), what))
+        if wrong:
+            raise Misfits(wrong)
+        return tuple(skyline)
 
 
 class Telescope(FileModel):
     """The telescope: its optics, its mount and where it can't go."""
 
-    name: Name = key("the telescope's name, as it goes into the log")
+    name: Name = key("the telescope's name, as it goes into the log", min_length=1)
     aperture_m: float = key("diameter of the entrance pupil", unit="m", gt=0, le=50)
     obstruction: float = key("central obstruction as a fraction of the diameter", ge=0, lt=0.95)
     focal_length_m: float = key("effective focal length", unit="m", gt=0, le=500)
@@ -97,8 +118,11 @@ class Telescope(FileModel):
     maximum_altitude_deg: float = key(
         "highest altitude it can track", unit="deg", gt=0, le=90, default=90.0
     )
-    hour_angle_limits_h: Annotated[tuple[float, float], Field(strict=False)] = key(
-        "least and greatest hour angle", unit="h", default=(-12.0, 12.0)
+    hour_angle_limits_h: tuple[float, float] = key(
+        "least and greatest hour angle",
+        unit="h",
+        form="a rising pair of hours from -12 to 12",
+        default=(-12.0, 12.0),
     )
     slew_deg_per_s: float = key("slewing speed of each axis", unit="deg/s", gt=0, le=90)
     settle_s: float = key("time to settle after a slew", unit="s", ge=0, le=3600)
@@ -111,21 +135,21 @@ class Telescope(FileModel):
         "whether an atmospheric dispersion corrector is in the beam", default=False
     )
 
-    @field_validator("hour_angle_limits_h")
+    @field_validator("hour_angle_limits_h", mode="before")
     @classmethod
-    def _ordered_limits(cls, value: tuple[float, float]) -> tuple[float, float]:
-        low, high = value
-        if not (-12 <= low < high <= 12):
-            raise ValueError(f"{low:g} to {high:g}, expected a rising pair within -12 to 12")
-        return value
+    def _rising_limits(cls, value: object) -> tuple[float, float]:
+        match value:
+            case (least, most) if is_number(least, -12, 12) and is_number(most, least, 12):
+                if least < most:
+                    return float(least), float(most)
+        raise ValueError(f"{shown(value)}, expected a rising pair of hours from -12 to 12")
 
     @model_validator(mode="after")
     def _room_between_altitudes(self) -> Self:
-        if self.minimum_altitude_deg >= self.maximum_altitude_deg:
-            raise ValueError(
-                f"minimum_altitude_deg {self.minimum_altitude_deg:g} is not below "
-                f"maximum_altitude_deg {self.maximum_altitude_deg:g}, expected room between them"
-            )
+        least, most = self.minimum_altitude_deg, self.maximum_altitude_deg
+        if least >= most:
+            what = f"{least:g}, expected less than maximum_altitude_deg, {most:g}"
+            raise Misfits([(("minimum_altitude_deg",), what)])
         return self
 
     @property
@@ -146,13 +170,15 @@ class Camera(FileModel):
         "dark current per pixel", unit="electron/s", ge=0, le=10_000, default=0.0
     )
     gain_e_per_adu: float = key("electrons per count", unit="electron/adu", gt=0, le=1000)
-    saturation_adu: int = key("count at which a pixel is no longer linear", unit="adu", gt=0)
+    saturation_adu: int = key(
+        "count at which a pixel is no longer linear", unit="adu", gt=0, le=10**9
+    )
 
 
 class Filter(FileModel):
     """One filter in the wheel, and the sky and zero point that belong to it."""
 
-    name: Name = key("the name, as plans and the log use it")
+    name: Name = key("the name, as plans and the log use it", min_length=1)
     wavelength_nm: float = key("effective wavelength", unit="nm", ge=300, le=1100)
     width_nm: float = key("width at half transmission", unit="nm", gt=0, le=800)
     extinction_mag: float = key("extinction per airmass", unit="mag", ge=0, le=5)
@@ -213,8 +239,10 @@ class Observatory(FileModel):
     site: Site
     telescope: Telescope
     camera: Camera
-    filters: Annotated[tuple[Filter, ...], Field(strict=False, min_length=1)] = Field(
-        alias="filter", description="the filters in the wheel"
+    filters: Annotated[
+        tuple[Filter, ...], Field(strict=False, min_length=1, max_length=MOST_FILTERS)
+    ] = key(
+        "the filters in the wheel", form=f"[[filter]] tables, 1 to {MOST_FILTERS}", alias="filter"
     )
     seeing: Seeing
     caution: Caution = Caution()
@@ -222,11 +250,14 @@ class Observatory(FileModel):
     @field_validator("filters")
     @classmethod
     def _one_of_each(cls, value: tuple[Filter, ...]) -> tuple[Filter, ...]:
-        seen: set[str] = set()
-        for each in value:
-            if each.name in seen:
-                raise ValueError(f"two filters are called {each.name!r}, expected each name once")
-            seen.add(each.name)
+        first: dict[str, int] = {}
+        wrong: list[tuple[KeyPath, str]] = []
+        for place, each in enumerate(value):
+            if first.setdefault(each.name, place) != place:
+                what = f"{shown(each.name)} is filter {first[each.name] + 1} already"
+                wrong.append(((place, "name"), f"{what}, expected each name once"))
+        if wrong:
+            raise Misfits(wrong)
         return value
 
     @property

@@ -8,10 +8,18 @@ from typing import Annotated, Literal
 
 from pydantic import BeforeValidator, Field, field_validator
 
+from engine.logbook.faults import KeyPath, Misfits
 from engine.logbook.observatory import FileModel, Name, key
+from engine.logbook.text import shown
 from engine.times import mjd_from_datetime
 
-_SEXAGESIMAL = re.compile(r"([+-]?)(\d{1,3})[: ](\d{1,2})(?:[: ](\d{1,2}(?:\.\d*)?))?\Z")
+_SEXAGESIMAL = re.compile(
+    r"([+-]?)([0-9]{1,3})[: ]([0-9]{1,2})(?:[: ]([0-9]{1,2}(?:\.[0-9]*)?))?\Z"
+)
+RIGHT_ASCENSION = "hours 'hh:mm:ss.s', or degrees from 0 to less than 360"
+DECLINATION = "'+dd:mm:ss', or degrees from -90 to 90"
+MOMENTS = ("2027-03-14T11:00:00Z", "2027-03-14T12:20:00Z")
+WINDOW = f"[{', '.join(MOMENTS)}], or {'/'.join(MOMENTS)} in a table"
 
 
 def parse_angle(text: str) -> float:
@@ -34,7 +42,7 @@ def _right_ascension_deg(value: object) -> object:
     except ValueError:
         hours = -1.0
     if not (0 <= hours < 24) or value.strip().startswith("-"):
-        raise ValueError(f"{value!r}, expected hours 'hh:mm:ss.s' from 0 to 24, or degrees")
+        raise ValueError(f"{shown(value)}, expected {RIGHT_ASCENSION}")
     return hours * 15.0
 
 
@@ -46,21 +54,21 @@ def _declination_deg(value: object) -> object:
     except ValueError:
         degrees = 999.0
     if not (-90 <= degrees <= 90):
-        raise ValueError(f"{value!r}, expected '+dd:mm:ss' from -90 to +90, or degrees")
+        raise ValueError(f"{shown(value)}, expected {DECLINATION}")
     return degrees
 
 
 class Programme(FileModel):
     """A programme of observations and who answers for it."""
 
-    name: Name = key("the programme's name")
+    name: Name = key("the programme's name", min_length=1)
     investigator: Name = key("who it is for", default="")
 
 
 class PlannedExposures(FileModel):
     """So many exposures of so many seconds in one filter."""
 
-    filter: Name = key("a filter in the wheel")
+    filter: Name = key("a filter in the wheel", min_length=1)
     seconds: float = key("length of one exposure", unit="s", gt=0, le=86400)
     count: int = key("how many", ge=1, le=100_000)
 
@@ -71,30 +79,41 @@ class Target(FileModel):
     name: Name = key("the target's name; each name once", min_length=1)
     programme: Name = key("the programme it belongs to", default="")
     ra_deg: Annotated[float, BeforeValidator(_right_ascension_deg)] = key(
-        "right ascension, ICRS: hours 'hh:mm:ss.s', or degrees as a number",
+        "right ascension, ICRS",
         unit="deg",
+        form=RIGHT_ASCENSION,
         ge=0,
         lt=360,
         alias="ra",
     )
     dec_deg: Annotated[float, BeforeValidator(_declination_deg)] = key(
-        "declination, ICRS: '+dd:mm:ss', or degrees as a number",
+        "declination, ICRS",
         unit="deg",
+        form=DECLINATION,
         ge=-90,
         le=90,
         alias="dec",
     )
     pm_ra_mas_per_yr: float = key(
-        "proper motion in right ascension, with cos(dec)", unit="mas/yr", default=0.0
+        "proper motion in right ascension, with cos(dec)",
+        unit="mas/yr",
+        ge=-20_000,
+        le=20_000,
+        default=0.0,
     )
-    pm_dec_mas_per_yr: float = key("proper motion in declination", unit="mas/yr", default=0.0)
+    pm_dec_mas_per_yr: float = key(
+        "proper motion in declination", unit="mas/yr", ge=-20_000, le=20_000, default=0.0
+    )
     epoch_yr: float = key(
         "epoch of the coordinates (Julian year)", unit="yr", ge=1800, le=2200, default=2000.0
     )
-    magnitude: float | None = key("magnitude, for exposure advice", unit="mag", default=None)
+    magnitude: float | None = key(
+        "magnitude, for exposure advice", unit="mag", ge=-30, le=40, default=None
+    )
     priority: int = key("1 to 5, 5 first", ge=1, le=5, default=3)
     exposures: Annotated[tuple[PlannedExposures, ...], Field(strict=False, min_length=1)] = key(
-        "the plan: a list of { filter, seconds, count }"
+        "the plan, in the order in which it is taken",
+        form='a list of { filter = "V", seconds = 60, count = 5 }, or V:60x5 in a table',
     )
     maximum_airmass: float | None = key("not beyond this airmass", ge=1, le=40, default=None)
     maximum_image_size_arcsec: float | None = key(
@@ -103,8 +122,8 @@ class Target(FileModel):
     minimum_moon_separation_deg: float | None = key(
         "not closer to the Moon while it is up", unit="deg", ge=0, le=180, default=None
     )
-    windows: Annotated[tuple[tuple[datetime, datetime], ...], Field(strict=False)] = key(
-        "only inside these [begin, end] pairs, UTC", default=()
+    windows: tuple[tuple[datetime, datetime], ...] = key(
+        "only inside these", form=f"a list of {WINDOW}", default=()
     )
     contiguous_min: float | None = key(
         "wants this long without leaving", unit="min", gt=0, le=1440, default=None
@@ -113,22 +132,28 @@ class Target(FileModel):
 
     @field_validator("windows", mode="before")
     @classmethod
-    def _pairs(cls, value: object) -> object:
-        if isinstance(value, list):
-            return tuple(tuple(pair) if isinstance(pair, list) else pair for pair in value)
-        return value
-
-    @field_validator("windows")
-    @classmethod
-    def _forward_windows(
-        cls, value: tuple[tuple[datetime, datetime], ...]
-    ) -> tuple[tuple[datetime, datetime], ...]:
-        for begin, end in value:
-            if begin.tzinfo is None or end.tzinfo is None:
-                raise ValueError("a time without a zone, expected UTC such as 2027-03-14T11:00:00Z")
-            if end <= begin:
-                raise ValueError("a window ends before it begins, expected [begin, end]")
-        return value
+    def _forward_windows(cls, value: object) -> tuple[tuple[datetime, datetime], ...]:
+        if not isinstance(value, list | tuple):
+            raise ValueError(f"{shown(value)}, expected a list of {WINDOW}")
+        wrong: list[tuple[KeyPath, str]] = []
+        windows: list[tuple[datetime, datetime]] = []
+        for place, pair in enumerate(value):
+            match pair:
+                case (datetime() as begin, datetime() as end):
+                    naive = next((each for each in pair if each.tzinfo is None), None)
+                    if naive is not None:
+                        what = f"{shown(naive)} has no time zone, expected UTC with a Z at its end"
+                    elif end <= begin:
+                        what = f"ends at {shown(end)}, expected later than its begin"
+                    else:
+                        windows.append((begin, end))
+                        continue
+                case _:
+                    what = f"{shown(pair)}, expected {WINDOW}"
+            wrong.append(((place,), what))
+        if wrong:
+            raise Misfits(wrong)
+        return tuple(windows)
 
     @property
     def windows_mjd(self) -> tuple[tuple[float, float], ...]:
