@@ -15,6 +15,7 @@ from engine.logbook.observatory import (
     Site,
     Telescope,
 )
+from engine.logbook.reference import ReferenceRow, reference_rows
 from engine.logbook.sample import sample_logbook
 from engine.logbook.targets import PlannedExposures, Programme, Target
 
@@ -26,6 +27,7 @@ __all__ = [
     "Observatory",
     "PlannedExposures",
     "Programme",
+    "ReferenceRow",
     "Seeing",
     "Site",
     "Target",
@@ -33,5 +35,6 @@ __all__ = [
     "describe",
     "load_logbook",
     "planned_hours",
+    "reference_rows",
     "sample_logbook",
 ]

@@ -13,22 +13,34 @@ def planned_hours(targets: tuple[Target, ...]) -> float:
 
 def describe(logbook: Logbook) -> list[str]:
     """Return what the logbook holds, a line each."""
-    observatory = logbook.observatory
+    observatory, targets = logbook.observatory, logbook.targets
     site, telescope, camera = observatory.site, observatory.telescope, observatory.camera
-    field_arcmin = observatory.pixel_arcsec * camera.columns / 60.0
+    across, down = (
+        observatory.pixel_arcsec * pixels / 60.0 for pixels in (camera.columns, camera.rows)
+    )
+    filters = (f"{each.name} {each.wavelength_nm:g} nm" for each in observatory.filters)
     lines = [
         f"{site.name}: latitude {site.latitude_deg:+.4f}°, longitude {site.longitude_deg:+.4f}°, "
         f"{site.elevation_m:g} m, {site.timezone}",
         f"{telescope.name}: {telescope.aperture_m:g} m aperture, {telescope.focal_length_m:g} m "
         f"focal length, {telescope.mount} mount",
-        f"camera: {observatory.pixel_arcsec:.3f} arcsec a pixel, {field_arcmin:.1f} arcmin across",
-        "filters: " + ", ".join(f"{f.name} {f.wavelength_nm:g} nm" for f in observatory.filters),
-        f"targets: {len(logbook.targets)}, asking for {planned_hours(logbook.targets):.1f} h",
+        f"camera: {observatory.pixel_arcsec:.3f} arcsec a pixel, {across:.1f} x {down:.1f} arcmin",
+        f"filters: {', '.join(filters)}",
+        f"seeing: {observatory.seeing.typical_arcsec:g} arcsec until something is measured",
+        f"targets: {len(targets)}, asking for {planned_hours(targets):.1f} h",
     ]
-    names = [programme.name for programme in logbook.programmes]
-    for name in [*names, ""]:
-        own = tuple(target for target in logbook.targets if target.programme == name)
-        if own:
-            label = name or "no programme"
-            lines.append(f"  {label}: {len(own)} targets, {planned_hours(own):.1f} h")
-    return lines
+    investigators = {each.name: each.investigator for each in logbook.programmes}
+    names = dict.fromkeys([*investigators, *(each.programme for each in targets)])
+    return lines + [_programme(name, investigators.get(name, ""), targets) for name in names]
+
+
+def _programme(name: str, investigator: str, targets: tuple[Target, ...]) -> str:
+    own = tuple(target for target in targets if target.programme == name)
+    standards = sum(target.role == "standard" for target in own)
+    label = name or "no programme"
+    if investigator:
+        label += f" ({investigator})"
+    counted = f"{len(own)} target{'' if len(own) == 1 else 's'}"
+    if standards:
+        counted += f", {standards} of them standard{'' if standards == 1 else 's'}"
+    return f"  {label}: {counted}, {planned_hours(own):.1f} h"
