@@ -12,7 +12,7 @@ import tomllib
 import zlib
 from dataclasses import dataclass
 
-from engine.log.values import Value, as_read, quick_values, value_text
+from engine.log.values import Value, as_read, parse_doubtful, quick_values, value_text
 
 _HEAD_LINE = re.compile(rb"\[\[([A-Za-z0-9_-]+)\]\]\r?\n")
 _CRC_LINE = re.compile(rb'crc = "([0-9a-f]{8})"\r?\n')
@@ -125,14 +125,14 @@ def _sound_values(raw: bytes, begin: int, end: int, kind: str) -> dict[str, Valu
     except UnicodeDecodeError:
         return None
     if values is None or "crc" in values:
-        return _parsed(raw, kind)
+        return _parsed(raw, kind, is_trusted=True)
     return values
 
 
-def _parsed(raw: bytes, kind: str) -> dict[str, Value] | None:
+def _parsed(raw: bytes, kind: str, *, is_trusted: bool = False) -> dict[str, Value] | None:
     """Return a block's values without its crc, or None when it is no block of that kind."""
     try:
-        tables = tomllib.loads(raw.decode())
+        tables = tomllib.loads(raw.decode()) if is_trusted else parse_doubtful(raw)
         values = dict(tables[kind][0])
     except (ValueError, KeyError, TypeError, IndexError, RecursionError):
         return None

@@ -3,13 +3,12 @@
 from __future__ import annotations
 
 import re
-import tomllib
 from dataclasses import dataclass
 from datetime import date
 from typing import TYPE_CHECKING, Any
 
 from engine.log.blocks import crc_of
-from engine.log.values import as_read, value_text
+from engine.log.values import as_read, parse_doubtful, value_text
 
 if TYPE_CHECKING:
     from engine.logbook import Observatory
@@ -114,8 +113,8 @@ def read_header(data: bytes, named: date | None) -> HeaderReading:
 def _read_tables(data: bytes, named: date | None) -> tuple[Header, object, list[str]]:
     """Return what the tables of a header say, its schema, and what is wrong with them."""
     try:
-        tables = tomllib.loads(data.decode())
-    except (ValueError, RecursionError) as error:
+        tables = parse_doubtful(data)
+    except ValueError as error:
         what = f"the header can't be read ({error}); the file's name says which night it is"
         return Header(named or date.min, (), "", {}), SCHEMA, [what]
     schema, night = tables.pop("schema", None), tables.pop("night", {})

@@ -92,9 +92,9 @@ def _events(path: Path, blocks: list[Block]) -> tuple[list[Placed], list[Fault]]
         what = f"the line ends of {len(crlf)} entries are those of another system; used"
         findings.append(Fault(path, crlf[0].line, "", what))
     seen: dict[int, Block] = {}
-    for place, block in enumerate(blocks):
+    for block, around in zip(blocks, _neighbours(blocks), strict=True):
         if block.values is None or not block.is_whole:
-            findings.append(Fault(path, block.line, "", _damage(blocks, place)))
+            findings.append(Fault(path, block.line, "", _damage(block, around)))
             continue
         event = from_values(block.kind, block.values)
         key = f"{block.kind} {event.n}"
@@ -115,18 +115,28 @@ def _events(path: Path, blocks: list[Block]) -> tuple[list[Placed], list[Fault]]
     return placed, findings
 
 
-def _damage(blocks: list[Block], place: int) -> str:
+def _neighbours(blocks: list[Block]) -> list[str]:
+    """Return, for each stretch, between which entries that can be used it stands, in words."""
+    before, after = "", ""
+    befores, afters = [], []
+    for block in blocks:
+        befores.append(before)
+        before = f"after {_called(block)}" if block.is_finished else before
+    for block in reversed(blocks):
+        afters.append(after)
+        after = f"before {_called(block)}" if block.is_finished else after
+    pairs = zip(befores, reversed(afters), strict=True)
+    return [" and ".join(word for word in pair if word) for pair in pairs]
+
+
+def _called(block: Block) -> str:
+    return visible(f"{block.kind} {(block.values or {}).get('n', '?')}"[:RAW_SHOWN])
+
+
+def _damage(block: Block, around: str) -> str:
     """Return what is said of a stretch that is not used: how far it goes, where, and its text."""
-    block = blocks[place]
     lines = f"to line {block.last_line} " if block.last_line > block.line else ""
-    around = []
-    for word, found in (
-        ("after", next((b for b in reversed(blocks[:place]) if b.is_finished), None)),
-        ("before", next((b for b in blocks[place + 1 :] if b.is_finished), None)),
-    ):
-        if found is not None and found.values is not None:
-            around.append(f"{word} {found.kind} {found.values.get('n', '?')}")
-    where = f"({' and '.join(around)}) " if around else ""
+    where = f"({around}) " if around else ""
     state = "cut short or damaged" if block.kind else "no entry"
     return f"{state}, {lines}{where}passed over: {_raw(block.raw)}"
 

@@ -60,6 +60,22 @@ def as_read(value: Value) -> Value:
     return _SURROGATE.sub("\ufffd", value) if isinstance(value, str) else value
 
 
+# Keys of very many parts, on which tomllib takes time with the square of their number. Nothing of
+# ours has parts at all; what looks so was made of a damaged file.
+_PART = rb"""[A-Za-z0-9_"'-]"""
+_MANY_PARTS = re.compile(rb"(?<!%b)(?:%b++[ \t]*+\.[ \t]*+){64}" % (_PART, _PART))
+
+
+def parse_doubtful(data: bytes) -> dict[str, Any]:
+    """Return the tables of TOML that may be damaged; ValueError for whatever is wrong with it."""
+    if _MANY_PARTS.search(data):
+        raise ValueError("a key has too many parts")
+    try:
+        return tomllib.loads(data.decode())
+    except RecursionError:
+        raise ValueError("it is nested too deeply") from None
+
+
 # One line of what we write: bare key, then text without an escape, a UTC date-time, a float, an
 # integer, a truth value, or a list (which tomllib reads).
 _QUICK_LINE = (
