@@ -49,14 +49,19 @@ class Tally:
     lost: int = 0
     invented: int = 0
 
-    def count(self, acknowledged: Iterable[Event], read: Iterable[Event]) -> None:
-        """Compare what was acknowledged with what is read; recoveries are the writer's own."""
+    def count(
+        self, acknowledged: Iterable[Event], read: Iterable[Event], handed_over: Event | None = None
+    ) -> None:
+        """Compare what was acknowledged with what is read; recoveries are the writer's own.
+
+        What was handed over and not acknowledged may be there or not, but only as it was.
+        """
         meant = {event.n: event for event in acknowledged}
         found = {event.n: event for event in read if not isinstance(event, Recovery)}
         self.tried += 1
         self.acknowledged += len(meant)
         self.lost += sum(found.get(n) != event for n, event in meant.items())
-        self.invented += sum(n not in meant for n in found)
+        self.invented += sum(n not in meant and event != handed_over for n, event in found.items())
 
 
 def sample(count: int = 4) -> list[Event]:
@@ -379,7 +384,7 @@ def fail_at_random(nights: int, folder: Path, seed: int, entries: int = 40) -> T
             while len(done) < n:
                 with contextlib.suppress(OSError):
                     done.append(log.append(event_number(n)))
-                tally.count(done, read_log(here / NAME).events)
+                tally.count(done, read_log(here / NAME).events, event_number(n))
         disk.share = 0.0
         log.close()
         again = open_log(here)
