@@ -138,9 +138,9 @@ class Watch:
         record = exposure_record(self.planner.night, self.planner.model, began, ending, seeing)
         return self.submit(record, because="an exposure ended")
 
-    def close(self) -> bool:
+    def close(self, why: str = "left by the observer") -> bool:
         """Log that the console was left, wait for the disk; return whether all is on it."""
-        self.submit(Close(why="left by the observer"))
+        self.submit(Close(why=why))
         return self._worker.close()
 
     # The clockwork

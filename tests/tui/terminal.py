@@ -99,6 +99,10 @@ class Terminal:
             self.read()
         return self.child.wait(1)
 
+    def hang_up(self) -> None:
+        """Take the terminal away from under the program."""
+        os.close(self._ours)
+
     def close(self) -> None:
         """Let the terminal go, and the program with it if it still runs."""
         if self.child.poll() is None:

@@ -3,10 +3,13 @@
 from __future__ import annotations
 
 import re
+import signal
 import tomllib
 import zlib
 from pathlib import Path
 from typing import Any
+
+import pytest
 
 from tests.tui.terminal import Terminal
 from tests.tui.trial import a_logbook
@@ -136,3 +139,40 @@ def check_crcs(data: bytes) -> None:
     assert len(blocks) == data.count(b"\nn = ")
     for body, crc in blocks:
         assert f"{zlib.crc32(body):08x}".encode() == crc
+
+
+@pytest.mark.parametrize(
+    ("number", "status"), [(signal.SIGHUP, 129), (signal.SIGTERM, 143)], ids=["SIGHUP", "SIGTERM"]
+)
+def test_a_signal_ends_it_cleanly(tmp_path: Path, number: signal.Signals, status: int) -> None:
+    """Told to end in mid-exposure, it closes the log and ends; the night can be taken up again."""
+    folder = a_logbook(tmp_path / "nights")
+    terminal = Terminal(demo(folder))
+    try:
+        terminal.wait_for("NEXT")
+        for wanted in ("MOVING TO", "ON TARGET", "EXPOSING"):
+            terminal.press(" ")
+            terminal.wait_for(wanted)
+        terminal.child.send_signal(number)
+        assert terminal.wait() == status
+    finally:
+        terminal.close()
+    events = events_of(folder / "2027-03-25.toml")
+    assert events[-1]["kind"] == "close"
+    assert number.name in events[-1]["why"]
+
+    terminal = Terminal(demo(folder))
+    try:
+        terminal.wait_for("CUT OFF")
+    finally:
+        terminal.kill()
+
+
+def test_a_terminal_that_is_gone_is_left(tmp_path: Path) -> None:
+    """When the terminal hangs up, as a dropped ssh does, the log is closed and the program ends."""
+    folder = a_logbook(tmp_path / "nights")
+    terminal = Terminal(demo(folder))
+    terminal.wait_for("NEXT")
+    terminal.hang_up()
+    assert terminal.child.wait(20) == 129
+    assert events_of(folder / "2027-03-25.toml")[-1]["kind"] == "close"

@@ -245,6 +245,32 @@ def test_a_note_and_conditions_reach_the_log_cleaned(folder: Path) -> None:
     play(folder, story)
 
 
+def test_a_defect_anywhere_is_told_and_survived(
+    folder: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """A panel, the clockwork or a deed that raises is shown; the rest of the night goes on."""
+
+    async def story(trial: Trial) -> None:
+        def broken(*_: object) -> None:
+            raise RuntimeError("a wheel came off")
+
+        with monkeypatch.context() as patch:
+            patch.setattr("tui.console.view.paint_head", broken)
+            await trial.wait(1.0)
+            assert "a wheel came off" in trial.text("notices")
+        with monkeypatch.context() as patch:
+            patch.setattr("engine.watch.acts.point_at", broken)
+            await trial.press("space")
+            assert trial.watch.stage is Stage.IDLE
+        with monkeypatch.context() as patch:
+            patch.setattr(trial.watch, "tick", broken)
+            await trial.wait(1.0)
+        await start(trial)
+        assert trial.watch.state.exposing is not None
+
+    play(folder, story)
+
+
 def test_leaving_while_exposing_asks(folder: Path) -> None:
     """Q asks while the shutter is open, and n stays."""
 

@@ -57,13 +57,17 @@ def _told(state: NightState, rehearsal: Rehearsal) -> list[str]:
 
 def _console(arguments: argparse.Namespace, folder: Path) -> int:
     from tui.console.app import Autopilot, Console
-    from tui.console.start import need_a_terminal, run_console
+    from tui.console.start import look_for, need_a_terminal, run_console
+    from tui.look.terminal import SteadyDriver
 
     need_a_terminal()
     autopilot = _Onlooker() if not arguments.drive else None
     opener: Callable[[], Opened] = lambda: _open(arguments, folder, autopilot)  # noqa: E731
     pilot: Autopilot | None = autopilot
-    return run_console(Console(opener, look=arguments.look, autopilot=pilot))
+    console = Console(
+        opener, look=look_for(arguments.look), autopilot=pilot, driver_class=SteadyDriver
+    )
+    return run_console(console)
 
 
 class _Onlooker:

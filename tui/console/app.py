@@ -15,6 +15,7 @@ from typing import TYPE_CHECKING, Protocol
 from textual.app import App, ComposeResult, SystemCommand
 from textual.binding import Binding
 from textual.containers import Horizontal, Vertical
+from textual.driver import Driver
 from textual.events import Event, Key, Paste, Resize
 from textual.filter import LineFilter
 from textual.screen import Screen
@@ -24,6 +25,7 @@ from engine.errors import WarmroomError
 from tui.console.actions import ACTION_OF_KEY, ACTIONS, cap, footer_actions
 from tui.console.help import HelpScreen
 from tui.look import LOOKS, CleanFilter, MonoFilter, RedFilter
+from tui.look.terminal import MustLeave
 from tui.paint.spans import Line, Span, cut, line
 from tui.widgets import Entry, LiveList, Question, Sheet
 
@@ -97,8 +99,9 @@ class Console(App[None]):
         look: str = "night",
         autopilot: Autopilot | None = None,
         tick_s: float = TICK_S,
+        driver_class: type[Driver] | None = None,
     ) -> None:
-        super().__init__()
+        super().__init__(driver_class=driver_class)
         self.failure: WarmroomError | None = None
         self.live: Watch | None = None
         self.look = look
@@ -220,15 +223,27 @@ class Console(App[None]):
         watch = self.live
         if watch is None:
             return
-        try:
-            watch.tick()
-            if self._autopilot is not None and watch.plan is not None:
-                for said in self._autopilot.tick(watch):
-                    self.tell(said)
-        except WarmroomError as error:
-            self.tell(str(error), "bad")
+        self._guarded(watch.tick)
+        self._guarded(lambda: self._let_autopilot(watch))
         self._plan_if_wanted(watch)
         self.paint()
+
+    def _let_autopilot(self, watch: Watch) -> None:
+        if self._autopilot is not None and watch.plan is not None:
+            for said in self._autopilot.tick(watch):
+                self.tell(said)
+
+    def _guarded(self, deed: Callable[[], object]) -> None:
+        """Do something; what it raises is told, a defect is written down, and the night goes on."""
+        try:
+            deed()
+        except WarmroomError as error:
+            self.tell(str(error), "warn")
+        except Exception as error:
+            log.exception("a defect")
+            self.tell(
+                f"a defect of warmroom ({error!r}); the log is safe, the night goes on", "bad"
+            )
 
     def _plan_if_wanted(self, watch: Watch) -> None:
         if self._planning:
@@ -251,7 +266,7 @@ class Console(App[None]):
     def paint(self) -> None:
         """Show everything as it is now; only what changed is sent."""
         if self._view is not None:
-            self._view.paint()
+            self._guarded(self._view.paint)
         self._paint_notices()
 
     def tell(self, text: str, role: str = "text") -> None:
@@ -288,7 +303,7 @@ class Console(App[None]):
         if len(self.screen_stack) != 1:
             return False
         if self._entry.is_open:
-            self._entry.take_key(event.key, event.character)
+            self._guarded(lambda: self._entry.take_key(event.key, event.character))
             self.paint()
         elif event.key in ACTION_OF_KEY:
             self.action_do(ACTION_OF_KEY[event.key])
@@ -311,16 +326,13 @@ class Console(App[None]):
     def action_do(self, name: str) -> None:
         """Do an action of the table; what can't be done now is told in one line."""
         own = getattr(self, f"_do_{name}", None)
-        try:
-            if own is not None:
-                own()
-            elif self._deeds is None:
-                self.tell("the night is still being opened", "dim")
-                return
-            else:
-                self._deeds.do(name)
-        except WarmroomError as error:
-            self.tell(str(error), "warn")
+        deeds = self._deeds
+        if own is not None:
+            self._guarded(own)
+        elif deeds is None:
+            self.tell("the night is still being opened", "dim")
+        else:
+            self._guarded(lambda: deeds.do(name))
         self.after_deed()
 
     def after_deed(self) -> None:
@@ -372,10 +384,14 @@ class Console(App[None]):
         if answer == "y":
             self._leave()
 
-    def _leave(self) -> None:
+    def on_must_leave(self, event: MustLeave) -> None:
+        """End at once, with the log closed: the terminal is gone, or the system says so."""
+        self._leave(event.why, event.status)
+
+    def _leave(self, why: str = "left by the observer", status: int = 0) -> None:
         if self.live is not None:
-            self.live.close()
-        self.exit()
+            self.live.close(why)
+        self.exit(return_code=status)
 
     # Looks
 

@@ -6,7 +6,6 @@ from collections.abc import Callable
 from dataclasses import replace
 from typing import TYPE_CHECKING
 
-from engine.errors import WarmroomError
 from engine.log import LOST_CAUSES, Conditions
 from engine.logbook.text import one_line
 from engine.watch import Stage, Watch, acts
@@ -224,14 +223,13 @@ class Deeds:
         then: Callable[..., object],
         choices: tuple[tuple[str, str], ...] = (),
     ) -> None:
-        """Ask, then act; an act that can't be done is told, like any other."""
+        """Ask, then act."""
 
         def act(value: object) -> None:
             try:
                 then(value)
-            except WarmroomError as error:
-                self._console.tell(str(error), "warn")
-            self._console.after_deed()
+            finally:
+                self._console.after_deed()
 
         self._console.ask(Question(label, read, act, choices))
 

@@ -3,15 +3,19 @@
 from __future__ import annotations
 
 import argparse
+import logging
 import os
 import sys
 from collections.abc import Callable
 from pathlib import Path
 from typing import TYPE_CHECKING
 
+import platformdirs
+
 from engine.clock import Clock, SystemClock
 from engine.errors import NoAnswer
 from tui.console.app import Console
+from tui.look.terminal import SteadyDriver
 
 if TYPE_CHECKING:
     from engine.watch import Opened
@@ -28,7 +32,11 @@ def open_console(arguments: argparse.Namespace) -> int:
         )
     clock = SystemClock()
     observers = tuple(arguments.observer)
-    console = Console(opener(folder, clock, observers), look=look_for(arguments.look))
+    console = Console(
+        opener(folder, clock, observers),
+        look=look_for(arguments.look),
+        driver_class=SteadyDriver,
+    )
     return run_console(console)
 
 
@@ -45,10 +53,12 @@ def opener(folder: Path, clock: Clock, observers: tuple[str, ...]) -> Callable[[
 
 def run_console(console: Console) -> int:
     """Run a console until it is left; what it could not open is raised here, outside of it."""
+    trouble = platformdirs.user_log_path("warmroom", ensure_exists=True) / "trouble.log"
+    logging.basicConfig(filename=trouble, level=logging.WARNING, format="%(asctime)s %(message)s")
     console.run(mouse=True)
     if console.failure is not None:
         raise console.failure
-    return 0
+    return console.return_code or 0
 
 
 def need_a_terminal() -> None:
