@@ -55,7 +55,8 @@ class Sheet(Widget):
         """Return a painted line as a strip exactly so many cells wide."""
         ground = self.rich_style
         segments = [Segment(span.text, self._style(ground, span.role)) for span in spans]
-        return Strip(segments).adjust_cell_length(width, ground)
+        # Neighbours drawn alike go as one: half the bytes of a row are changes of style.
+        return Strip(segments).simplify().adjust_cell_length(width, ground)
 
     def _style(self, ground: Style, role: str) -> Style:
         return ground + self._look.style(role)
