@@ -15,10 +15,13 @@ from datetime import datetime
 from typing import Any
 
 from engine.log.events import KINDS, Amendment, Event, Foreign
-from engine.log.values import Value
+from engine.log.values import INT_BITS, Value
 from engine.times import datetime_from_mjd, mjd_from_datetime
 
 MJD = "_mjd"
+GREATEST_INT = 2**INT_BITS
+# No night has more entries: a greater number was damaged, and to go on behind it would be folly.
+GREATEST_N = 10**9
 
 
 @dataclass(frozen=True, slots=True)
@@ -137,8 +140,11 @@ def _arguments(kind: str, said: dict[str, Value]) -> tuple[dict[str, Any], dict[
     rest: dict[str, Value] = {}
     for name, value in said.items():
         key = table.get(name)
-        read = None if key is None else _read_list(value, key) if key.is_list else _read(value, key)
-        if key is None or read is None:
+        if key is None:
+            rest[name] = value
+            continue
+        read = _read_list(value, key) if key.is_list else _read(value, key)
+        if read is None:
             rest[name] = value
         else:
             arguments[key.field] = read
@@ -165,7 +171,7 @@ def _stamp(values: dict[str, Value]) -> tuple[dict[str, Any], dict[str, Value]]:
     """
     said = dict(values)
     n, t = said.pop("n", None), said.pop("t", None)
-    is_number = type(n) is int and n > 0
+    is_number = type(n) is int and 0 < n <= GREATEST_N
     is_moment = isinstance(t, datetime) and t.tzinfo is not None
     stamp = {
         "n": n if is_number else 0,
@@ -188,11 +194,11 @@ def _read_list(value: Value, key: Key) -> tuple[Any, ...] | None:
 def _read(value: Any, key: Key) -> Any:
     """Return a value as its field holds it; None when it does not fit."""
     found = type(value)
-    if key.type is float:
-        fits = found in (float, int) and math.isfinite(value)
-        return float(value) if fits else None
     if found is not key.type:
-        return None
+        is_number = found is int and key.type is float and abs(value) < GREATEST_INT
+        return float(value) if is_number else None
+    if found is float:
+        return value if math.isfinite(value) else None
     if found is datetime:
         return mjd_from_datetime(value) if value.tzinfo else None
     return value

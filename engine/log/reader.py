@@ -8,13 +8,14 @@ may say something that was never written.
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 from datetime import date
 from pathlib import Path
 
 from engine.errors import Fault, LogError
 from engine.log.blocks import Block, split_blocks
-from engine.log.events import ClockStep, Event
+from engine.log.events import ClockStep, Event, Foreign
 from engine.log.header import SCHEMA, Header, is_unfinished, read_header
 from engine.log.keys import complaints, from_values
 from engine.logbook.text import visible
@@ -23,6 +24,8 @@ from engine.times import SECONDS_PER_DAY
 RAW_SHOWN = 60
 # Times in the file are rounded to the millisecond: less than this is no step back.
 ROUNDING_S = 0.002
+# How many stretches away an entry may be to be named as the neighbour of a damaged one.
+NEAR = 8
 
 
 @dataclass(frozen=True, slots=True)
@@ -92,41 +95,47 @@ def _events(path: Path, blocks: list[Block]) -> tuple[list[Placed], list[Fault]]
         what = f"the line ends of {len(crlf)} entries are those of another system; used"
         findings.append(Fault(path, crlf[0].line, "", what))
     seen: dict[int, Block] = {}
-    for block, around in zip(blocks, _neighbours(blocks), strict=True):
+    for place, block in enumerate(blocks):
         if block.values is None or not block.is_whole:
-            findings.append(Fault(path, block.line, "", _damage(block, around)))
+            findings.append(Fault(path, block.line, "", _damage(block, _around(blocks, place))))
             continue
         event = from_values(block.kind, block.values)
-        key = f"{block.kind} {event.n}"
         if not block.is_sound:
             what = f"changed by hand or damaged; used: {_raw(block.raw)}"
-            findings.append(Fault(path, block.line, key, what))
-        findings += [Fault(path, block.line, key, what) for what in complaints(event)]
+            findings.append(Fault(path, block.line, _key(block, event), what))
+        if event.extra or isinstance(event, Foreign):
+            key = _key(block, event)
+            findings += [Fault(path, block.line, key, what) for what in complaints(event)]
         before = seen.setdefault(event.n, block)
         if event.n and before is not block:
             is_same = before.raw == block.raw
             what = f"its number stands at line {before.line} already" + (
                 ", and all the rest of it too; passed over" if is_same else ", with other values"
             )
-            findings.append(Fault(path, block.line, key, what))
+            findings.append(Fault(path, block.line, _key(block, event), what))
             if is_same:
                 continue
         placed.append((block, event))
     return placed, findings
 
 
-def _neighbours(blocks: list[Block]) -> list[str]:
-    """Return, for each stretch, between which entries that can be used it stands, in words."""
-    before, after = "", ""
-    befores, afters = [], []
-    for block in blocks:
-        befores.append(before)
-        before = f"after {_called(block)}" if block.is_finished else before
-    for block in reversed(blocks):
-        afters.append(after)
-        after = f"before {_called(block)}" if block.is_finished else after
-    pairs = zip(befores, reversed(afters), strict=True)
-    return [" and ".join(word for word in pair if word) for pair in pairs]
+def _key(block: Block, event: Event) -> str:
+    return f"{block.kind} {event.n}"
+
+
+def _around(blocks: list[Block], place: int) -> str:
+    """Return between which entries a stretch stands, in words.
+
+    Looks no further than the nearest stretches: a file that is damaged all over has no neighbours.
+    """
+    before = reversed(blocks[max(place - NEAR, 0) : place])
+    after = iter(blocks[place + 1 : place + 1 + NEAR])
+    found = [
+        f"{word} {_called(block)}"
+        for word, near in (("after", before), ("before", after))
+        if (block := next((each for each in near if each.is_finished), None))
+    ]
+    return " and ".join(found)
 
 
 def _called(block: Block) -> str:
@@ -147,12 +156,11 @@ def _about_numbers(path: Path, events: list[Placed]) -> list[Fault]:
     lines: dict[int, int] = {}
     greatest = 0
     for block, event in events:
-        key = f"{block.kind} {event.n}"
         if event.n == 0:
             findings.append(Fault(path, block.line, block.kind, "it has no number"))
         elif event.n < greatest:
             what = f"it stands behind entry {greatest}; moved"
-            findings.append(Fault(path, block.line, key, what))
+            findings.append(Fault(path, block.line, _key(block, event), what))
         lines.setdefault(event.n, block.line)
         greatest = max(greatest, event.n)
     numbers = sorted(lines.keys() - {0})
@@ -171,15 +179,14 @@ def _about_times(path: Path, events: list[Placed]) -> list[Fault]:
     findings = []
     latest: Event | None = None
     for block, event in sorted(events, key=lambda placed: placed[1].n):
-        key = f"{block.kind} {event.n}"
-        if event.t_mjd != event.t_mjd:
-            findings.append(Fault(path, block.line, key, "it has no time"))
+        if math.isnan(event.t_mjd):
+            findings.append(Fault(path, block.line, _key(block, event), "it has no time"))
             continue
         if latest is not None and not isinstance(event, ClockStep):
             back_s = (latest.t_mjd - event.t_mjd) * SECONDS_PER_DAY
             if back_s > ROUNDING_S:
                 what = f"its time is {back_s:.3f} s before that of entry {latest.n}"
-                findings.append(Fault(path, block.line, key, what))
+                findings.append(Fault(path, block.line, _key(block, event), what))
         latest = event
     return findings
 

@@ -100,22 +100,20 @@ def quick_values(body: str) -> dict[str, Value] | None:
     try:
         for line in lines:
             key, _, text = line.partition(" = ")
-            values[key] = _quick_value(text)
+            # Here and not in a function of its own: a night has tens of thousands of these lines.
+            if text[0] == '"':
+                values[key] = text[1:-1]
+            elif text[-1] == "Z":
+                values[key] = datetime.fromisoformat(text)
+            elif text[0] == "[":
+                values[key] = tomllib.loads(f"v = {text}\n")["v"]
+            elif text[0] in "tf":
+                values[key] = text[0] == "t"
+            elif "." in text or "e" in text:
+                values[key] = float(text)
+            else:
+                values[key] = int(text)
     except ValueError:
         return None
     # A key that stands twice is an error for tomllib to find.
     return values if len(values) == len(lines) else None
-
-
-def _quick_value(text: str) -> Value:
-    first, last = text[0], text[-1]
-    if first == '"':
-        return text[1:-1]
-    if last == "Z":
-        return datetime.fromisoformat(text)
-    if first == "[":
-        listed: list[Any] = tomllib.loads(f"v = {text}\n")["v"]
-        return listed
-    if first in "tf":
-        return first == "t"
-    return float(text) if "." in text or "e" in text else int(text)

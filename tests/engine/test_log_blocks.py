@@ -183,6 +183,9 @@ def test_a_wrong_optional_value_does_not_cost_the_exposure() -> None:
     assert read.extra["credit"] == "much"
     assert complaints(read) == ("airmass_mid is of the wrong type", "credit is of the wrong type")
 
+    read = from_values("exposure", {**values, "credit": 10**400, "airmass_mid": 1})
+    assert isinstance(read, Exposure)
+    assert (read.credit, read.airmass_mid) == (None, 1.0)
     read = from_values("exposure", {**values, "filter": 7})
     assert isinstance(read, Foreign)
     assert read.complaint == "filter is of the wrong type"
@@ -191,7 +194,7 @@ def test_a_wrong_optional_value_does_not_cost_the_exposure() -> None:
     assert read.complaint == "filter is missing"
 
 
-@pytest.mark.parametrize("n", [0, -3, True, 1.0, "5", None])
+@pytest.mark.parametrize("n", [0, -3, True, 1.0, "5", None, 10**9 + 1, 10**40])
 def test_a_number_that_is_none_is_none(n: object) -> None:
     """Only a whole number from 1 is an entry's number; whatever else stands there is kept."""
     read = from_values("note", {"n": n, "text": "x"})  # type: ignore[dict-item]

@@ -18,9 +18,11 @@ from engine.log import (
     night_logs,
     read_log,
 )
+from engine.log.blocks import block_bytes
 from engine.log.header import header_bytes
 from engine.log.keys import to_values
 from engine.log.reader import read_log_bytes
+from engine.times import datetime_from_mjd
 from tests.engine.log_nights import (
     NAME,
     NIGHT,
@@ -228,6 +230,20 @@ def test_an_entry_without_number_or_time_is_used_and_said() -> None:
     found = reading(data)
     assert [event.n for event in found.events] == [1, 0]
     assert [what for _, what in said(data)][1:] == ["it has no number", "it has no time"]
+
+
+def test_an_entry_of_an_unknown_kind_is_kept_and_said() -> None:
+    """A later version wrote it."""
+    data = log_bytes(notes(1)) + block_bytes("telemetry", {"n": 2, "t": datetime_from_mjd(at(2))})
+    assert said(data) == [(line_of(data, b"[[telemetry]]"), "unknown kind")]
+    assert [event.kind for event in reading(data).events] == ["note", "foreign"]
+
+
+def test_a_damaged_number_does_not_keep_the_night_from_going_on() -> None:
+    """It is no number of an entry, if it is beyond all that a night can have."""
+    data = log_bytes(notes(1)).replace(b"n = 1\n", b"n = 1000000000000000000\n")
+    assert [event.n for event in reading(data).events] == [0]
+    assert "it has no number" in [what for _, what in said(data)]
 
 
 def test_line_ends_of_another_system_and_a_byte_order_mark_cost_nothing() -> None:
