@@ -165,7 +165,7 @@ def _is_numeric(text: str) -> bool:
 def unknown(name: str, known: list[str]) -> str:
     """Return what is said of a name that is none of the known ones."""
     listed = ", ".join(known) if len(known) <= SHORT_LIST else f"the {len(known)} known ones"
-    return f"unknown key{nearest(name, known) or ', expected one of ' + listed}"
+    return f"unknown key, expected one of {listed}{nearest(name, known)}"
 
 
 def _field_at(model: type[BaseModel], path: KeyPath) -> FieldInfo | None:

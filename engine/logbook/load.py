@@ -170,7 +170,7 @@ def _read_observatory(path: Path) -> tuple[_File, Observatory | None, tuple[str,
     filters = file.values.get("filter")
     wheel = filters if isinstance(filters, list) else []
     names = [each.get("name") for each in wheel if isinstance(each, dict)]
-    return file, observatory, tuple(name for name in names if isinstance(name, str))
+    return file, observatory, tuple(dict.fromkeys(n for n in names if isinstance(n, str)))
 
 
 def _read_toml(path: Path) -> tuple[_File, list[_Entry]]:

@@ -21,6 +21,7 @@ Name = Annotated[str, AfterValidator(clean_name)]
 
 
 MOST_FILTERS = 100
+LONGEST_LIST = 1000
 
 
 def key(help_text: str, *, unit: str = "", form: str = "", **limits: Any) -> Any:
@@ -80,8 +81,8 @@ class Site(FileModel):
     @field_validator("horizon", mode="before")
     @classmethod
     def _rising_horizon(cls, value: object) -> tuple[tuple[float, float], ...]:
-        if not isinstance(value, list | tuple):
-            wanted = "a list of [azimuth_deg, altitude_deg] pairs"
+        if not isinstance(value, list | tuple) or len(value) > LONGEST_LIST:
+            wanted = f"at most {LONGEST_LIST} pairs [azimuth_deg, altitude_deg]"
             raise ValueError(f"{shown(value)}, expected {wanted}")
         wrong: list[tuple[KeyPath, str]] = []
         skyline: list[tuple[float, float]] = []

@@ -9,7 +9,7 @@ from typing import Annotated, Literal
 from pydantic import BeforeValidator, Field, field_validator
 
 from engine.logbook.faults import KeyPath, Misfits
-from engine.logbook.observatory import FileModel, Name, key
+from engine.logbook.observatory import LONGEST_LIST, FileModel, Name, key
 from engine.logbook.text import shown
 from engine.times import mjd_from_datetime
 
@@ -111,7 +111,10 @@ class Target(FileModel):
         "magnitude, for exposure advice", unit="mag", ge=-30, le=40, default=None
     )
     priority: int = key("1 to 5, 5 first", ge=1, le=5, default=3)
-    exposures: Annotated[tuple[PlannedExposures, ...], Field(strict=False, min_length=1)] = key(
+    exposures: Annotated[
+        tuple[PlannedExposures, ...],
+        Field(strict=False, min_length=1, max_length=LONGEST_LIST),
+    ] = key(
         "the plan, in the order in which it is taken",
         form='a list of { filter = "V", seconds = 60, count = 5 }, or V:60x5 in a table',
     )
@@ -133,8 +136,10 @@ class Target(FileModel):
     @field_validator("windows", mode="before")
     @classmethod
     def _forward_windows(cls, value: object) -> tuple[tuple[datetime, datetime], ...]:
-        if not isinstance(value, list | tuple):
-            raise ValueError(f"{shown(value)}, expected a list of {WINDOW}")
+        if not isinstance(value, list | tuple) or len(value) > LONGEST_LIST:
+            raise ValueError(
+                f"{shown(value)}, expected a list, at most {LONGEST_LIST}, of {WINDOW}"
+            )
         wrong: list[tuple[KeyPath, str]] = []
         windows: list[tuple[datetime, datetime]] = []
         for place, pair in enumerate(value):
