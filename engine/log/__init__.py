@@ -41,6 +41,7 @@ from engine.log.state import (
     fold,
     last_undoable,
 )
+from engine.log.steps import StepWatch
 from engine.log.titles import title
 from engine.log.vocabulary import LOST_CAUSES, OUTCOMES, OVERRIDES, Word
 from engine.log.worker import LogWorker
@@ -82,6 +83,7 @@ __all__ = [
     "RunStart",
     "RunStep",
     "RunStop",
+    "StepWatch",
     "Word",
     "audit",
     "fold",

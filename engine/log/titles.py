@@ -53,7 +53,7 @@ def _title(event: Event) -> str:
             plan = ", ".join(f"{name} {seconds:g} s × {count}" for name, seconds, count in steps)
             return f"run on {event.target}: {plan}"
         case RunStop():
-            return f"run over: {event.why}"
+            return "run over" + _because(event.why)
         case Pointing():
             return f"on target {event.target}" if event.on_target else f"to {event.target}"
         case ExposureStart():
@@ -79,23 +79,25 @@ def _rarer(event: Event) -> str:
         case Note():
             return f"note: {event.text}"
         case OrderProposed():
-            return f"order: {', '.join(event.targets[:4]) or 'nothing'} ({event.why})"
+            return f"order: {', '.join(event.targets[:4]) or 'nothing'}" + _because(event.why)
         case Override():
             what = _LABELS.get(event.action, event.action)
             instead = f" instead of {event.instead_of}" if event.instead_of else ""
-            return f"{what}: {event.target or event.filter}{instead}"
+            return f"{what}: {event.target or event.filter}{instead}" + _because(event.why)
         case Amendment():
             said = ", ".join(f"{key} = {value}" for key, value in event.changes.items())
             done = "withdrawn" if event.withdrawn else said
-            return f"entry {event.of} {done}" + (f": {event.why}" if event.why else "")
-        case Focus() | Calibration():
-            return event.kind
+            return f"entry {event.of} {done}" + _because(event.why)
+        case Focus():
+            return _focus(event)
+        case Calibration():
+            return _calibration(event)
         case ClockStep():
-            return f"the computer's clock jumped {event.seconds:+.1f} s"
+            return f"the computer's clock jumped {event.seconds:+.1f} s" + _because(event.why)
         case Recovery():
             return f"recovered: {event.removed_bytes} torn bytes set aside in {event.set_aside}"
         case Close():
-            return f"closed: {event.why}"
+            return "closed" + _because(event.why)
         case Foreign():
             return f"{event.kind_in_file} ({event.complaint})"
         case _:
@@ -113,4 +115,25 @@ def _exposure(event: Exposure) -> str:
     if event.credit is not None:
         parts.append(f"worth {event.credit:.2f}")
     parts.append(_LABELS.get(event.outcome, event.outcome))
-    return ", ".join(parts) + (f": {event.why}" if event.why else "")
+    return ", ".join(parts) + _because(event.why)
+
+
+def _focus(event: Focus) -> str:
+    parts = [
+        f"focus at {event.position:g}" if event.position is not None else "focus",
+        event.filter,
+        f'FWHM {event.fwhm_arcsec:.2f}"' if event.fwhm_arcsec is not None else "",
+        f"{event.temperature_c:g} °C" if event.temperature_c is not None else "",
+    ]
+    return ", ".join(part for part in parts if part)
+
+
+def _calibration(event: Calibration) -> str:
+    seconds = f"{event.seconds:g} s" if event.seconds is not None else ""
+    level = f"at {event.level_adu:g} adu" if event.level_adu is not None else ""
+    parts = [f"calibration: {event.what}", event.filter, seconds, f"× {event.count}", level]
+    return " ".join(part for part in parts if part)
+
+
+def _because(why: str) -> str:
+    return f": {why}" if why else ""
