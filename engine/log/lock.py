@@ -2,7 +2,8 @@
 
 The lock is the kernel's (flock on the log itself): it ends with the process, however that ends. The
 note is a file of its own beside the log, ``.NAME.held``; it only tells a person whom to ask, it
-decides nothing, and nothing about it can damage the log.
+decides nothing, and nothing about it can damage the log. A forked child would keep the lock after
+its parent has let go: children are to be started afresh (spawn), never forked.
 """
 
 from __future__ import annotations

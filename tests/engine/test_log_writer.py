@@ -101,6 +101,15 @@ def test_a_torn_tail_is_set_aside_and_said(tmp_path: Path) -> None:
     assert read_plainly(again.path.read_bytes())
 
 
+def test_each_step_of_a_recovery_is_on_disk_before_the_next(tmp_path: Path) -> None:
+    """Copy, sync, name it, sync the folder; only then cut and sync; only then note it and sync."""
+    (tmp_path / NAME).write_bytes(log_bytes([note(1)]) + b"\n[[no")
+    disk = FailingDisk()
+    open_log(tmp_path, disk).close()
+    copied = ["write", "sync", "link", "sync_folder"]
+    assert disk.calls == [*copied, "truncate", "sync", "write", "sync"]
+
+
 def test_two_tails_torn_at_one_place_are_both_kept(tmp_path: Path) -> None:
     """The copy of an earlier recovery is never written over."""
     whole = log_bytes([note(1)])
@@ -308,16 +317,20 @@ def test_a_folder_that_was_removed_and_put_back(tmp_path: Path) -> None:
     assert read_log(moved / NAME).events == (note(1),)
 
 
-def test_a_log_that_was_cut_down_is_written_anew(tmp_path: Path) -> None:
-    """Somebody emptied it: the acknowledged night comes back, what they left stays beside it."""
+@pytest.mark.parametrize(
+    "size", [0, 50, len(log_bytes([])), len(log_bytes([note(1)])), len(log_bytes([note(1)])) + 9]
+)
+def test_a_log_that_was_cut_down_is_written_anew(tmp_path: Path, size: int) -> None:
+    """Somebody cut it: the acknowledged night comes back, what they left stays beside it."""
     log = open_log(tmp_path)
     log.append(note(1))
-    whole = log.path.read_bytes()
-    os.truncate(log.path, 50)
     log.append(note(2))
+    whole = log.path.read_bytes()
+    os.truncate(log.path, size)
+    log.append(note(3))
     log.close()
-    assert log.path.read_bytes() == log_bytes([note(1), note(2)])
-    assert (tmp_path / f"{NAME}.failed-{len(whole)}").read_bytes() == whole[:50]
+    assert log.path.read_bytes() == log_bytes([note(1), note(2), note(3)])
+    assert (tmp_path / f"{NAME}.failed-{len(whole)}").read_bytes() == whole[:size]
 
 
 def test_what_others_append_is_kept(tmp_path: Path) -> None:
