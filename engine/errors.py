@@ -5,6 +5,7 @@
     WarmroomError
     ├── LogbookFaults     what is wrong in the logbook's files: all of it, a line each
     ├── NoAnswer          the question is fair, the answer is no (no such night, nothing observable)
+    ├── NotNow            the act makes no sense at this stage of the night; nothing was done
     └── LogError          the night log can't be opened, locked or written
 
 Each is shown in one place: the console in a panel, the printing commands on stderr with an exit
@@ -50,6 +51,10 @@ class NoAnswer(WarmroomError):
     """The question was understood and the answer is no."""
 
     exit_status = 1
+
+
+class NotNow(WarmroomError):
+    """The act makes no sense at this stage of the night; says why, and nothing was done."""
 
 
 class LogError(WarmroomError):

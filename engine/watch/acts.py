@@ -1,11 +1,11 @@
 """What the observer can do, as plain functions on a `Watch`: each becomes one event or a few.
 
-An act that makes no sense at this stage raises `NotNow` and changes nothing.
+An act that makes no sense at this stage raises `NotNow` and does nothing.
 """
 
 from __future__ import annotations
 
-from engine.errors import WarmroomError
+from engine.errors import NotNow
 from engine.log import (
     Amendment,
     Conditions,
@@ -26,11 +26,6 @@ from engine.watch.record import Ending, credit_measured
 from engine.watch.rules import rules_from
 from engine.watch.stage import Stage
 from engine.watch.watch import Watch
-
-
-class NotNow(WarmroomError):
-    """The act makes no sense at this stage of the night; says why."""
-
 
 # The common round
 

@@ -9,13 +9,13 @@ count-down. What the observer does is in `engine.watch.acts`.
 from __future__ import annotations
 
 from collections.abc import Callable
+from typing import Protocol
 
 from engine.clock import Clock
 from engine.log import (
     Close,
     Event,
     ExposureStart,
-    LogWorker,
     NightState,
     OrderProposed,
     RunStop,
@@ -35,18 +35,42 @@ REPLAN_MIN = 10.0
 ORDER_LOGGED = 8
 
 
+class Pen(Protocol):
+    """What takes events to the log: `LogWorker`, or nobody for one who only looks on."""
+
+    @property
+    def unwritten(self) -> int:
+        """How many events are not yet on disk."""
+        ...
+
+    @property
+    def trouble(self) -> str | None:
+        """What is wrong with the disk and what to do; None when all is well."""
+        ...
+
+    def submit(self, event: Event) -> Event:
+        """Take an event; return it numbered and stamped."""
+        ...
+
+    def close(self) -> bool:
+        """Write what can be written and let the log go; return whether all was."""
+        ...
+
+
 class Watch:
     """One night at the telescope, from the log on disk to the advice on the screen."""
 
+    is_read_only = False
+
     def __init__(
-        self, planner: Planner, worker: LogWorker, clock: Clock, events: tuple[Event, ...] = ()
+        self, planner: Planner, pen: Pen, clock: Clock, events: tuple[Event, ...] = ()
     ) -> None:
         self.planner = planner
         self.clock = clock
         self.plan: Plan | None = None
         # Grows with every change of what may be shown, so that a view can tell when to look again.
         self.version = 0
-        self._worker = worker
+        self._pen = pen
         self._state = fold(events)
         self._doubted_n = self._state.exposing.n if self._state.exposing else 0
         self._wanted: str | None = "the night begins"
@@ -68,12 +92,12 @@ class Watch:
     @property
     def unwritten(self) -> int:
         """How many events are not yet on disk."""
-        return self._worker.unwritten
+        return self._pen.unwritten
 
     @property
     def trouble(self) -> str | None:
         """What is wrong with the disk and what to do about it; None when all is well."""
-        return self._worker.trouble
+        return self._pen.trouble
 
     def plans(self) -> Plans:
         """Return every target's plan with what is done."""
@@ -116,7 +140,7 @@ class Watch:
 
     def submit(self, event: Event, because: str | None = None) -> Event:
         """Log an event and fold it in; ``because`` asks for a new plan and says why."""
-        stamped = self._worker.submit(event)
+        stamped = self._pen.submit(event)
         self._state = self._state.after(stamped)
         self.version += 1
         if because:
@@ -141,7 +165,7 @@ class Watch:
     def close(self, why: str = "left by the observer") -> bool:
         """Log that the console was left, wait for the disk; return whether all is on it."""
         self.submit(Close(why=why))
-        return self._worker.close()
+        return self._pen.close()
 
     # The clockwork
 

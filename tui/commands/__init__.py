@@ -67,6 +67,12 @@ COMMANDS: tuple[Command, ...] = (
             Option("--seed", "which invented weather", {"type": int, "default": 7}),
         ),
     ),
+    Command(
+        "follow",
+        "look on, read-only, at a night someone else is running",
+        takes_night=True,
+        options=(LOOK,),
+    ),
     Command("check", "print every fault in the logbook, or what it holds"),
     Command(
         "almanac",

@@ -30,6 +30,7 @@ from tui.paint.spans import Line, Span, cut, line
 from tui.widgets import Entry, LiveList, Question, Sheet
 
 if TYPE_CHECKING:
+    from engine.log import StepWatch
     from engine.watch import Opened, Planned, Watch
     from tui.console.deeds import Deeds
     from tui.console.view import View
@@ -100,6 +101,7 @@ class Console(App[None]):
         autopilot: Autopilot | None = None,
         tick_s: float = TICK_S,
         driver_class: type[Driver] | None = None,
+        notices_steps: bool = False,
     ) -> None:
         super().__init__(driver_class=driver_class)
         self.failure: WarmroomError | None = None
@@ -114,6 +116,8 @@ class Console(App[None]):
         self._view: View | None = None
         self._deeds: Deeds | None = None
         self._planning = False
+        self._notices_steps = notices_steps
+        self._steps: StepWatch | None = None
 
     # What stands where
 
@@ -197,6 +201,7 @@ class Console(App[None]):
         self.tell(f"planning failed ({error!r}); the order shown is the last good one", "bad")
 
     def _opened(self, opened: Opened) -> None:
+        from engine.log import StepWatch
         from tui.console.deeds import Deeds
         from tui.console.view import View
 
@@ -204,6 +209,8 @@ class Console(App[None]):
         self._view = View(self, opened.watch)
         self._deeds = Deeds(self, opened.watch)
         self._view.prepare()
+        if self._notices_steps:
+            self._steps = StepWatch(opened.watch.clock)
         for finding in opened.findings[:3]:
             self.tell(f"the log: line {finding.line}: {finding.what}", "warn")
         # A planner's tables are ready now: the first plan can begin at once.
@@ -223,10 +230,18 @@ class Console(App[None]):
         watch = self.live
         if watch is None:
             return
+        self._guarded(lambda: self._notice_step(watch))
         self._guarded(watch.tick)
         self._guarded(lambda: self._let_autopilot(watch))
         self._plan_if_wanted(watch)
         self.paint()
+
+    def _notice_step(self, watch: Watch) -> None:
+        """Log and tell when the computer's clock has jumped."""
+        step = self._steps.step() if self._steps is not None else None
+        if step is not None:
+            watch.submit(step)
+            self.tell(f"the computer's clock jumped {step.seconds:+.1f} s: {step.why}", "bad")
 
     def _let_autopilot(self, watch: Watch) -> None:
         if self._autopilot is not None and watch.plan is not None:

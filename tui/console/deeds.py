@@ -6,6 +6,7 @@ from collections.abc import Callable
 from dataclasses import replace
 from typing import TYPE_CHECKING
 
+from engine.errors import NotNow
 from engine.log import LOST_CAUSES, Conditions
 from engine.logbook.text import one_line
 from engine.watch import Stage, Watch, acts
@@ -54,16 +55,16 @@ class Deeds:
             case Stage.LOST:
                 acts.end_lost(watch)
             case Stage.CUT_OFF:
-                raise acts.NotNow("an exposure was cut off: K keeps it, L logs it as lost")
+                raise NotNow("an exposure was cut off: K keeps it, L logs it as lost")
             case _:
-                raise acts.NotNow("the run goes on by itself; s stops it")
+                raise NotNow("the run goes on by itself; s stops it")
 
     def _accept(self) -> None:
         if self._watch.plan is None:
-            raise acts.NotNow("the order is still being worked out")
+            raise NotNow("the order is still being worked out")
         visits = ahead(self._watch)
         if not visits:
-            raise acts.NotNow("nothing more can be observed tonight")
+            raise NotNow("nothing more can be observed tonight")
         acts.point_at(self._watch, visits[0].target)
 
     def _start_or_accept(self) -> None:
@@ -86,7 +87,7 @@ class Deeds:
     def _under_cursor(self) -> str:
         key = self._console.query_one("#list", LiveList).key
         if key is None:
-            raise acts.NotNow("no target is under the cursor")
+            raise NotNow("no target is under the cursor")
         return key
 
     def drop(self) -> None:
@@ -134,7 +135,7 @@ class Deeds:
         plan = watch.plans().get(pointing.target, ()) if pointing else ()
         left = [line for line in plan if line.remaining]
         if watch.stage is not Stage.READY or not left:
-            raise acts.NotNow("the telescope is not on a target with something left of its plan")
+            raise NotNow("the telescope is not on a target with something left of its plan")
         choices = tuple((str(place), line.filter) for place, line in enumerate(left, start=1))
         self._ask(
             "which filter",
@@ -157,7 +158,7 @@ class Deeds:
         """Type a measured FWHM."""
         last = acts.last_exposure(self._watch)
         if last is None or last.airmass_mid is None:
-            raise acts.NotNow("no exposure yet to measure; z enters the zenith seeing")
+            raise NotNow("no exposure yet to measure; z enters the zenith seeing")
         label = f"FWHM on {last.target} in {last.filter} at airmass {last.airmass_mid:.2f}, arcsec"
         read = number_between(0.1, 30.0, "arcsec")
         self._ask(label, read, lambda value: acts.measured_fwhm(self._watch, value))

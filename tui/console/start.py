@@ -36,6 +36,7 @@ def open_console(arguments: argparse.Namespace) -> int:
         opener(folder, clock, observers),
         look=look_for(arguments.look),
         driver_class=SteadyDriver,
+        notices_steps=True,
     )
     return run_console(console)
 

@@ -27,6 +27,7 @@ class View:
         self._watch = watch
         self._told: set[str] = set()
         self._pointing_n = 0
+        self._trouble: str | None = None
 
     @property
     def _list(self) -> LiveList:
@@ -52,6 +53,7 @@ class View:
         if console.panel != "list":
             self._paint_panel("panel", console.panel)
         self._tell_cautions()
+        self._tell_trouble()
         self.paint_foot()
 
     def _follow_the_telescope(self) -> None:
@@ -94,6 +96,14 @@ class View:
                 return paint_order(self._watch, width, height)
             case _:
                 return paint_log(self._watch, width, height)
+
+    def _tell_trouble(self) -> None:
+        """Tell once what is wrong with the disk and what to do; and that it is well again."""
+        trouble = self._watch.trouble
+        if trouble != self._trouble:
+            self._trouble = trouble
+            self._console.tell(trouble or "the log is on disk again", "bad" if trouble else "good")
+            self._console.bell()
 
     def _tell_cautions(self) -> None:
         """Tell each caution once while it lasts; the observatory's own rules decide."""

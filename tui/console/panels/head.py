@@ -66,6 +66,9 @@ def _sun(watch: Watch, at: int) -> Span:
 
 
 def _disk(watch: Watch) -> Line:
+    if watch.is_read_only:
+        said = "looking on" if watch.trouble is None else "NOTHING NEW CAN BE READ"
+        return line(Span(said, "moon" if watch.trouble is None else "bad"))
     if watch.trouble:
         return line(Span(f"LOG NOT WRITTEN: {watch.unwritten} waiting", "bad"))
     if watch.unwritten:
