@@ -18,8 +18,10 @@ from engine.log import Disk, fold, read_log
 from tests.engine.log_nights import NAME, exposure, log_bytes, night, open_log
 from tests.faults.log_faults import (
     Tally,
+    UnsyncedDisk,
     cut_for_readers,
     cut_for_the_writer,
+    cut_power,
     fail_at_random,
     fill_disk,
     flip_bits,
@@ -33,17 +35,15 @@ from tests.faults.log_faults import (
 EXPOSURES = 500
 
 
-class UnsyncedDisk(Disk):
-    """A disk that is never asked to sync: shows what the sync costs."""
-
-    def sync(self, fd: int) -> None:
-        """Do nothing."""
-
-
 def full_disk(folder: Path) -> Tally:
     """Fill a memory disk, where this user may mount one."""
     with small_disk(folder / "disk", "256k") as disk:
         return fill_disk(disk) if disk else Tally("disk full (no memory disk can be mounted here)")
+
+
+def power(folder: Path, disk: Disk) -> Tally:
+    """Cut the power of a file system in a file, where this user may mount one."""
+    return cut_power(100, folder, 1, disk) or Tally("power cut (nothing can be mounted here)")
 
 
 TRIALS: tuple[Callable[[Path], Tally], ...] = (
@@ -51,6 +51,8 @@ TRIALS: tuple[Callable[[Path], Tally], ...] = (
     lambda folder: cut_for_the_writer(sample(4), folder),
     lambda folder: flip_bits(sample(6)),
     lambda folder: kill_often(200, folder, seed=1),
+    lambda folder: power(folder, Disk()),
+    lambda folder: power(folder, UnsyncedDisk()),
     full_disk,
     lambda folder: in_a_child("reach_size_limit", folder),
     lambda folder: fail_at_random(50, folder, seed=1),

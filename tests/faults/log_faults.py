@@ -8,10 +8,12 @@ from __future__ import annotations
 
 import contextlib
 import errno
+import fcntl
 import multiprocessing
 import os
 import random
 import resource
+import struct
 import subprocess
 import sys
 import time
@@ -158,16 +160,24 @@ def event_number(n: int) -> Note:
 
 
 class PiecemealDisk(Disk):
-    """A disk that takes a few bytes at a time, so that a kill can fall into an entry."""
+    """A slow disk that takes a few bytes at a time, so that a kill can fall into an entry."""
 
     def write(self, fd: int, data: bytes) -> int:
-        """Write at most 61 bytes."""
+        """Write at most 61 bytes, and take a moment for it."""
+        time.sleep(0.0005)
         return super().write(fd, data[:61])
 
 
-def victim(folder: Path, acknowledge: Connection, piecemeal: bool) -> None:
+class UnsyncedDisk(Disk):
+    """A disk that is never asked to sync: what that costs, and what it is worth."""
+
+    def sync(self, fd: int) -> None:
+        """Do nothing."""
+
+
+def victim(folder: Path, acknowledge: Connection, disk: Disk) -> None:
     """Append for ever, and say of each entry that it is on disk: until killed."""
-    log = open_log(folder, PiecemealDisk() if piecemeal else None)
+    log = open_log(folder, disk)
     worker = LogWorker(
         log, HandClock(at(600)), lambda event: acknowledge.send_bytes(event.n.to_bytes(4, "big"))
     )
@@ -195,7 +205,8 @@ def kill_often(kills: int, folder: Path, seed: int, a_night: int = 12) -> Tally:
             here.mkdir()
             acknowledged: set[int] = set()
         mine, theirs = context.Pipe(duplex=False)
-        child = context.Process(target=victim, args=(here, theirs, count % 2 == 0), daemon=True)
+        disk = PiecemealDisk() if count % 2 else Disk()
+        child = context.Process(target=victim, args=(here, theirs, disk), daemon=True)
         child.start()
         theirs.close()
         # Some die while they open the log, most while they write.
@@ -204,26 +215,94 @@ def kill_often(kills: int, folder: Path, seed: int, a_night: int = 12) -> Tally:
         time.sleep(chance.random() * 0.03)
         child.kill()
         child.join()
-        with contextlib.suppress(EOFError):
-            while True:
-                acknowledged.add(int.from_bytes(mine.recv_bytes(), "big"))
-        mine.close()
+        acknowledged |= _heard(mine)
         _count_kill(tally, here / NAME, acknowledged)
         child.close()
     return tally
 
 
+def _heard(pipe: Connection) -> set[int]:
+    """Return the numbers that a dead child acknowledged, and close its pipe."""
+    numbers: set[int] = set()
+    with contextlib.suppress(EOFError), pipe:
+        while True:
+            numbers.add(int.from_bytes(pipe.recv_bytes(), "big"))
+    return numbers
+
+
 def _count_kill(tally: Tally, path: Path, acknowledged: set[int]) -> None:
     tally.tried += 1
-    if not path.exists():
-        tally.lost += len(acknowledged)
-        return
-    found = {event.n: event for event in read_log(path).events}
     tally.acknowledged += len(acknowledged)
+    try:
+        found = {event.n: event for event in read_log(path).events}
+    except LogError:
+        # It died before there was a log.
+        found = {}
     tally.lost += sum(found.get(n) != event_number(n) for n in acknowledged)
     tally.invented += sum(
         event != event_number(n) for n, event in found.items() if not isinstance(event, Recovery)
     )
+
+
+# Power that fails
+
+# ioctl number and flag of ext4: stop at once, and write nothing more, not even the journal.
+EXT4_SHUTDOWN = 0x8004587D
+WITHOUT_JOURNAL = struct.pack("I", 2)
+
+
+def cut_power(cuts: int, folder: Path, seed: int, disk: Disk, a_disk: int = 10) -> Tally | None:
+    """Stop a file system dead under a writer, again and again; None where none can be mounted.
+
+    Whatever was not synced is gone with the next mount, as after a power cut (but for what a drive
+    itself holds back). A fresh file system every so many cuts.
+    """
+    context = multiprocessing.get_context("forkserver")
+    context.set_forkserver_preload(["tests.faults.log_faults"])
+    chance = random.Random(seed)
+    tally = Tally("power cut" if type(disk) is Disk else "power cut, log never synced")
+    image, mounted = folder / "image", folder / "mounted"
+    mounted.mkdir()
+    for count in range(cuts):
+        if count % a_disk == 0:
+            image.write_bytes(b"")
+            os.truncate(image, 16 << 20)
+            if not _runs("mkfs.ext4", "-q", "-F", str(image)):
+                return None
+            acknowledged: set[int] = set()
+        if not _runs("mount", "-o", "loop", str(image), str(mounted)):
+            return None
+        mine, theirs = context.Pipe(duplex=False)
+        child = context.Process(target=victim, args=(mounted, theirs, disk), daemon=True)
+        child.start()
+        theirs.close()
+        mine.poll(PATIENCE_S)
+        time.sleep(chance.random() * 0.05)
+        fd = os.open(mounted, os.O_RDONLY)
+        fcntl.ioctl(fd, EXT4_SHUTDOWN, WITHOUT_JOURNAL)
+        os.close(fd)
+        child.kill()
+        child.join()
+        acknowledged |= _heard(mine)
+        child.close()
+        _runs("umount", str(mounted))
+        if not _runs("mount", "-o", "loop", str(image), str(mounted)):
+            raise AssertionError("the file system can't be mounted again")
+        try:
+            _count_kill(tally, mounted / NAME, acknowledged)
+        finally:
+            _runs("umount", str(mounted))
+        if tally.lost:
+            # Only without the sync: then the numbers begin anew, and there is nothing to go on.
+            break
+    return tally
+
+
+def _runs(*command: str) -> bool:
+    try:
+        return subprocess.run(command, capture_output=True, check=False).returncode == 0
+    except FileNotFoundError:
+        return False
 
 
 # A disk that is full
