@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import dataclasses
+from datetime import UTC, date, datetime
 from pathlib import Path
 
 import pytest
@@ -163,6 +164,34 @@ def test_any_value_is_shown_on_one_short_line(value: object) -> None:
     assert text == visible(text)
     assert "\n" not in text
     assert len(text) <= SHOWN + 5
+
+
+@pytest.mark.parametrize(
+    ("value", "text"),
+    [
+        ("x" * 200, f"'{'x' * SHOWN}...'"),
+        ("\x1b" * 200, f"'{(chr(92) + 'x1b') * (SHOWN // 4)}...'"),
+        (True, "true"),
+        (-0.5, "-0.5"),
+        (10**70, "a number of 71 digits or so"),
+        ({"a": 1}, "a table"),
+        ([1, [2], 3], "[1, [...], and so on]"),
+        (datetime(2027, 3, 25, 11, tzinfo=UTC), "2027-03-25T11:00:00Z"),
+        (date(2027, 3, 25), "2027-03-25"),
+    ],
+)
+def test_a_value_as_it_is_shown(value: object, text: str) -> None:
+    """As the file writes it where that is short, in words where it is not."""
+    assert shown(value) == text
+
+
+def test_names_are_kept_in_one_spelling_of_unicode(tmp_path: Path) -> None:
+    """A programme and the target that names it agree, however either was typed."""
+    text = TARGETS.replace('name = "Clusters"', 'name = "Pr\u00e9"').replace(
+        'programme = "Clusters"', 'programme = "Pre\u0301"'
+    )
+    logbook = load_logbook(written(tmp_path, {"targets.toml": text}))
+    assert logbook.targets[0].programme == logbook.programmes[0].name == "Pr\u00e9"
 
 
 def test_nearest_takes_its_time_from_nobody() -> None:

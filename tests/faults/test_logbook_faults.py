@@ -101,8 +101,9 @@ IN_OBSERVATORY = {
     ),
     "horizon out of order": (
         "[90, 25], [180, 12]",
-        "[180, 25], [90, 12], [360, 5], [200, 91], [1]",
+        "[180, 25], [90, 12], [360, 5], [200, 91], [1], [180, 25]",
         "7: site.horizon[3]: azimuth 90 after 180, expected azimuths that rise",
+        "7: site.horizon[7]: azimuth 180 after 180, expected azimuths that rise",
         "7: site.horizon[4]: azimuth 360, expected degrees from 0 to less than 360",
         "7: site.horizon[5]: altitude 91, expected degrees from 0 to 90",
         "7: site.horizon[6]: [1], expected a pair [azimuth_deg, altitude_deg]",
@@ -224,6 +225,12 @@ IN_TARGETS = {
         "12:20:00Z]",
         "10:20:00Z]",
         "16: target['M 67'].windows[1]: ends at 2027-03-25T10:20:00Z, "
+        "expected later than its begin",
+    ),
+    "window of no length": (
+        "12:20:00Z]",
+        "11:00:00Z]",
+        "16: target['M 67'].windows[1]: ends at 2027-03-25T11:00:00Z, "
         "expected later than its begin",
     ),
     "window without a zone": (
