@@ -90,11 +90,14 @@ def parse_toml(text: str) -> dict[str, Any]:
     if long:
         raise Unreadable(_too_deep(), text.count("\n", 0, long.start()) + 1)
     try:
-        return tomllib.loads(text)
+        tables = tomllib.loads(text)
     except RecursionError:
         raise Unreadable(_too_deep(), _line_of_depth(text)) from None
     except ValueError as error:
         raise _syntax_error(str(error), text) from None
+    if _is_too_deep(tables):
+        raise Unreadable(_too_deep(), _line_of_depth(text))
+    return tables
 
 
 def _named_targets(folder: Path) -> Iterator[Path]:
@@ -120,6 +123,14 @@ def _reason(error: OSError) -> str:
 
 def _too_deep() -> str:
     return f"nested too deep, expected at most {DEEPEST} levels"
+
+
+def _is_too_deep(tables: dict[str, Any]) -> bool:
+    level: list[Any] = [tables]
+    for _ in range(DEEPEST):
+        inside = (each.values() if isinstance(each, dict) else each for each in level)
+        level = [item for items in inside for item in items if isinstance(item, dict | list)]
+    return bool(level)
 
 
 def _line_of_depth(text: str) -> int:
