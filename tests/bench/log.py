@@ -16,20 +16,15 @@ from pathlib import Path
 
 from engine.log import Disk, fold, read_log
 from tests.engine.log_nights import NAME, exposure, log_bytes, night, open_log
+from tests.faults.log_deaths import UnsyncedDisk, cut_power, kill_often
+from tests.faults.log_disks import fail_at_random, fill_disk, in_a_child, small_disk
 from tests.faults.log_faults import (
     Tally,
-    UnsyncedDisk,
     cut_for_readers,
     cut_for_the_writer,
-    cut_power,
-    fail_at_random,
-    fill_disk,
     flip_bits,
     follow_through_tears,
-    in_a_child,
-    kill_often,
     sample,
-    small_disk,
 )
 
 EXPOSURES = 500

@@ -7,7 +7,7 @@ import tempfile
 import time
 from pathlib import Path
 
-from tests.faults.log_faults import kill_often
+from tests.faults.log_deaths import kill_often
 
 
 def main(kills: int) -> int:

@@ -14,14 +14,8 @@ from engine.clock import HandClock
 from engine.errors import LogError
 from engine.log import LogWorker, Note, read_log
 from tests.engine.log_nights import NAME, at, log_bytes, open_log, read_plainly
-from tests.faults.log_faults import (
-    PATIENCE_S,
-    fail_at_random,
-    fill_disk,
-    follow_through_tears,
-    in_a_child,
-    small_disk,
-)
+from tests.faults.log_disks import fail_at_random, fill_disk, in_a_child, small_disk
+from tests.faults.log_faults import PATIENCE_S, follow_through_tears
 
 NO_MOUNT = "this user may not mount a memory disk"
 

@@ -6,7 +6,7 @@ from pathlib import Path
 
 from engine.log import read_log
 from tests.engine.log_nights import NAME, read_plainly
-from tests.faults.log_faults import kill_often
+from tests.faults.log_deaths import kill_often
 
 KILLS = 200
 

@@ -7,7 +7,7 @@ from pathlib import Path
 import pytest
 
 from engine.log import Disk
-from tests.faults.log_faults import UnsyncedDisk, cut_power
+from tests.faults.log_deaths import UnsyncedDisk, cut_power
 
 NO_MOUNT = "this user may not mount a file system in a file"
 
