@@ -32,6 +32,10 @@ class _NoPen:
         """Have nothing left to write."""
         return True
 
+    def rescue(self, folder: Path) -> Path:
+        """Have nothing to save."""
+        return folder
+
 
 class Onlooker(Watch):
     """A watch over a night that somebody else runs: same state, same advice, read-only."""
@@ -62,9 +66,9 @@ class Onlooker(Watch):
         self.plan, self.planner = planned.plan, planned.planner
         self.version += 1
 
-    def close(self, why: str = "") -> bool:
+    def close(self, why: str = "") -> str | None:
         """Let the night go."""
-        return True
+        return None
 
     def _take_in(self) -> None:
         self._state = self._follower.state

@@ -9,6 +9,7 @@ count-down. What the observer does is in `engine.watch.acts`.
 from __future__ import annotations
 
 from collections.abc import Callable
+from pathlib import Path
 from typing import Protocol
 
 from engine.clock import Clock
@@ -54,6 +55,10 @@ class Pen(Protocol):
 
     def close(self) -> bool:
         """Write what can be written and let the log go; return whether all was."""
+        ...
+
+    def rescue(self, folder: Path) -> Path:
+        """Write the whole log, what is not yet on disk included, into another folder."""
         ...
 
 
@@ -162,10 +167,19 @@ class Watch:
         record = exposure_record(self.planner.night, self.planner.model, began, ending, seeing)
         return self.submit(record, because="an exposure ended")
 
-    def close(self, why: str = "left by the observer") -> bool:
-        """Log that the console was left, wait for the disk; return whether all is on it."""
+    def close(self, why: str = "left by the observer") -> str | None:
+        """Log that the console was left, and wait for the disk; return what it could not take.
+
+        A log that can't be written in its place is saved whole in the observer's home.
+        """
         self.submit(Close(why=why))
-        return self._pen.close()
+        if self._pen.close():
+            return None
+        try:
+            saved = self._pen.rescue(Path.home())
+        except OSError as error:
+            return f"{self.unwritten} entries of the log could not be written anywhere: {error}"
+        return f"the log could not be written in its place; the whole night is in {saved}"
 
     # The clockwork
 

@@ -7,7 +7,7 @@ from pathlib import Path
 import pytest
 
 from engine.clock import HandClock
-from engine.log import Amendment, Conditions, read_log
+from engine.log import Amendment, Conditions, Note, read_log
 from engine.rehearsal import NIGHT
 from engine.watch import Stage
 from tests.tui.trial import Trial, a_logbook, after_dusk_mjd, play
@@ -283,6 +283,38 @@ def test_leaving_while_exposing_asks(folder: Path) -> None:
         assert trial.watch.stage is Stage.EXPOSING
 
     play(folder, story)
+
+
+def test_a_log_that_can_not_be_written_is_saved_elsewhere(
+    folder: Path, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """Leaving with entries the disk refuses puts the whole night into the observer's home."""
+    monkeypatch.setenv("HOME", str(tmp_path))
+    told: list[str | None] = []
+
+    async def story(trial: Trial) -> None:
+        def refuse(*_: object) -> None:
+            raise OSError(28, "No space left on device")
+
+        await trial.press("space")
+        with monkeypatch.context() as patch:
+            patch.setattr("engine.log.worker.NightLog.append_block", refuse)
+            patch.setattr("engine.log.worker.LogWorker.drain", lambda *_: False)
+            await trial.press("n")
+            await trial.type("the disk is full")
+            await trial.wait(1.0)
+            assert "can't be written" in trial.text("notices")
+            assert "LOG NOT WRITTEN: 1 waiting" in trial.text("head")
+            told.append(trial.close())
+
+    play(folder, story)
+    (said,) = told
+    assert said is not None
+    (saved,) = tmp_path.glob("*.rescued*")
+    assert str(saved) in said
+    saved = saved.rename(tmp_path / f"{NIGHT.isoformat()}.toml")
+    events = read_log(saved).events
+    assert any(isinstance(each, Note) and each.text == "the disk is full" for each in events)
 
 
 def test_a_plan_that_fails_is_told_and_survived(

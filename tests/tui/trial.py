@@ -74,6 +74,14 @@ class Trial:
         self.console = console
         self.pilot = pilot
         self.clock = clock
+        self._is_closed = False
+
+    def close(self) -> str | None:
+        """Close the night, once; return what the console would say at parting."""
+        if self._is_closed:
+            return None
+        self._is_closed = True
+        return self.watch.close()
 
     @property
     def watch(self) -> Watch:
@@ -137,6 +145,6 @@ def play(
             try:
                 await story(trial)
             finally:
-                trial.watch.close()
+                trial.close()
 
     asyncio.run(run())

@@ -105,6 +105,8 @@ class Console(App[None]):
     ) -> None:
         super().__init__(driver_class=driver_class)
         self.failure: WarmroomError | None = None
+        # What the observer must still be told once the terminal is her shell's again.
+        self.parting: str | None = None
         self.live: Watch | None = None
         self.look = look
         self.find_text = ""
@@ -405,7 +407,7 @@ class Console(App[None]):
 
     def _leave(self, why: str = "left by the observer", status: int = 0) -> None:
         if self.live is not None:
-            self.live.close(why)
+            self.parting = self.live.close(why)
         self.exit(return_code=status)
 
     # Looks

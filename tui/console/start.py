@@ -59,6 +59,8 @@ def run_console(console: Console) -> int:
     console.run(mouse=True)
     if console.failure is not None:
         raise console.failure
+    if console.parting is not None:
+        print(console.parting, file=sys.stderr)
     return console.return_code or 0
 
 
