@@ -169,10 +169,21 @@ def test_a_signal_ends_it_cleanly(tmp_path: Path, number: signal.Signals, status
 
 
 def test_a_terminal_that_is_gone_is_left(tmp_path: Path) -> None:
-    """When the terminal hangs up, as a dropped ssh does, the log is closed and the program ends."""
+    """When the terminal hangs up, as a dropped ssh does, the log is closed; the night goes on."""
     folder = a_logbook(tmp_path / "nights")
     terminal = Terminal(demo(folder))
     terminal.wait_for("NEXT")
+    for wanted in ("MOVING TO", "ON TARGET", "EXPOSING"):
+        terminal.press(" ")
+        terminal.wait_for(wanted)
     terminal.hang_up()
     assert terminal.child.wait(20) == 129
     assert events_of(folder / "2027-03-25.toml")[-1]["kind"] == "close"
+
+    terminal = Terminal(demo(folder))
+    try:
+        terminal.wait_for("CUT OFF")
+        terminal.press("K")
+        terminal.wait_for(lambda text: "EXPOSING" in text or "STARTS IN" in text)
+    finally:
+        terminal.kill()

@@ -73,7 +73,7 @@ COMMANDS: tuple[Command, ...] = (
         takes_night=True,
         options=(LOOK,),
     ),
-    Command("check", "print every fault in the logbook, or what it holds"),
+    Command("check", "print every fault in the logbook, or what it holds", takes_night=True),
     Command(
         "almanac",
         "print the night's Sun, twilight and Moon times",

@@ -12,8 +12,15 @@ from tui.commands.output import print_json
 
 
 def run(arguments: argparse.Namespace) -> int:
-    """Print every fault of every file on stderr (status 2), or what the logbook holds."""
-    faults: list[Fault] = list(audit(arguments.logbook))
+    """Print every fault of every file on stderr (status 2), or what the logbook holds.
+
+    With a night, of the logs only that night's.
+    """
+    faults = [
+        fault
+        for fault in audit(arguments.logbook)
+        if arguments.night is None or fault.path.stem == arguments.night.isoformat()
+    ]
     try:
         logbook = load_logbook(arguments.logbook)
     except LogbookFaults as found:

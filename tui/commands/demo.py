@@ -43,15 +43,23 @@ def _unwatched(arguments: argparse.Namespace, folder: Path) -> int:
 
 def _told(state: NightState, rehearsal: Rehearsal) -> list[str]:
     """Return what came of a night, in a few lines."""
+    from engine.seeing import SeeingMeasurement, summary
+
     open_s = sum(each.exposed_s for each in state.exposures)
     lost_h = sum((e.end_mjd - e.begin_mjd) * 24.0 for e in state.lost if e.end_mjd is not None)
     targets = {each.target for each in state.kept}
+    seeing = summary([SeeingMeasurement(each.mjd, each.zenith_arcsec) for each in state.seeing])
+    seen = (
+        f"seeing {seeing.best_arcsec:.2f} to {seeing.worst_arcsec:.2f} arcsec, "
+        f"median {seeing.median_arcsec:.2f}, from {seeing.count} measurements"
+        if seeing
+        else "the seeing was never measured"
+    )
     return [
         f"night of {rehearsal.night.isoformat()}, played from dusk to dawn",
         f"{len(state.events)} entries in the log, {len(state.exposures)} exposures, "
         f"{len(state.kept)} of them good, on {len(targets)} targets",
-        f"shutter open {open_s / 3600.0:.1f} h, lost {lost_h:.1f} h, "
-        f"{len(state.seeing)} measurements of the seeing",
+        f"shutter open {open_s / 3600.0:.1f} h, lost {lost_h:.1f} h; {seen}",
     ]
 
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from engine.log import Event, title
+from engine.seeing import SeeingMeasurement, summary
 from engine.watch import Watch
 from tui.console.panels.local import ahead, arcsec, hhmm, local
 from tui.paint.spans import Line, Span, cut, line
@@ -41,9 +42,25 @@ def paint_log(watch: Watch, width: int, height: int) -> list[Line]:
     shown = [event for event in state.events if event.kind not in NOT_SHOWN]
     last_on_disk = len(state.events) - watch.unwritten
     written = {event.n for event in state.events[:last_on_disk]}
-    head = line(Span(" the log", "title"), Span(f"  {len(state.events)} entries", "dim"))
+    head = line(
+        Span(" the log", "title"),
+        Span(f"  {len(state.events)} entries", "dim"),
+        Span(_seeing_so_far(watch), "dim"),
+    )
     lines = [_entry(watch, event, written) for event in shown[-max(height - 1, 1) :]]
     return [cut(each, width) for each in [head, *lines]]
+
+
+def _seeing_so_far(watch: Watch) -> str:
+    """Return the night's seeing so far in a few numbers."""
+    measured = [SeeingMeasurement(each.mjd, each.zenith_arcsec) for each in watch.state.seeing]
+    said = summary(measured)
+    if said is None:
+        return ""
+    return (
+        f'; seeing {said.best_arcsec:.2f}"-{said.worst_arcsec:.2f}", '
+        f'median {said.median_arcsec:.2f}", {said.count} measured'
+    )
 
 
 def _entry(watch: Watch, event: Event, written: set[int]) -> Line:
