@@ -55,11 +55,12 @@ def help_lines(width: int) -> list[Line]:
     lines: list[Line] = [
         line(Span(" warmroom", "strong"), Span("  advises, and controls nothing", "dim")),
         *wrapped(
-            " Where acting on it could harm a person or the instrument (the Sun, the weather, a "
+            "Where acting on it could harm a person or the instrument (the Sun, the weather, a "
             "moving dome, cold and dark), the observatory's own rules and its duty staff decide.",
             width,
             "dim",
             3,
+            indent=1,
         ),
     ]
     for group in GROUPS:

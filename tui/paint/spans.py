@@ -61,15 +61,18 @@ def spread(left: Line, right: Line, width: int) -> Line:
     return (*left, Span(" " * (room - width_of(left))), *right)
 
 
-def wrapped(text: str, width: int, role: str = "text", lines: int = 3) -> list[Line]:
-    """Return text broken between words into at most so many lines."""
+def wrapped(
+    text: str, width: int, role: str = "text", lines: int = 3, indent: int = 0
+) -> list[Line]:
+    """Return text broken between words into at most so many lines, each behind so many blanks."""
+    room = width - indent
     out: list[str] = [""]
     for word in text.split():
         longer = f"{out[-1]} {word}".strip()
-        if cell_len(longer) <= width or not out[-1]:
+        if cell_len(longer) <= room or not out[-1]:
             out[-1] = longer
         else:
             out.append(word)
     if len(out) > lines:
         out = [*out[: lines - 1], " ".join(out[lines - 1 :])]
-    return [(Span(fitted(each, width).rstrip(), role),) for each in out]
+    return [(Span(" " * indent + fitted(each, room).rstrip(), role),) for each in out]

@@ -55,11 +55,12 @@ def _proposal(watch: Watch, visit: Visit | None, width: int) -> list[Line]:
             Span(when, "warn"),
         ),
         *wrapped(
-            f" {arcsec(visit.image_size_arcsec)} at airmass {visit.airmass_start:.2f}; "
+            f"{arcsec(visit.image_size_arcsec)} at airmass {visit.airmass_start:.2f}; "
             f"{visit.reason}",
             width,
             "dim",
             2,
+            indent=1,
         ),
     ]
 
