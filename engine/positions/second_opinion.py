@@ -19,7 +19,7 @@ if TYPE_CHECKING:
     from engine.logbook import Site
 
 # Our event, astroplan's search for it, and the altitude (deg) it is a crossing of.
-_SEARCHES = (
+SEARCHES = (
     ("sunset", "sun_set_time", RISE_SET_ALTITUDE_DEG),
     ("civil_dusk", "sun_set_time", -6.0),
     ("nautical_dusk", "sun_set_time", -12.0),
@@ -58,7 +58,7 @@ def astroplans_almanac(site: Site, ours: Almanac) -> dict[str, float | None]:
         # It warns of a day without the event; here that is an answer like any other.
         warnings.simplefilter("ignore", TargetAlwaysUpWarning)
         warnings.simplefilter("ignore", TargetNeverUpWarning)
-        for event, method, limit_deg in _SEARCHES:
+        for event, method, limit_deg in SEARCHES:
             moment = getattr(observer, method)(
                 begin, which="next", horizon=limit_deg * u.deg, n_grid_points=_GRID_POINTS
             )

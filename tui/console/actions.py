@@ -151,6 +151,20 @@ ACTIONS: tuple[Action, ...] = (
 _BY_NAME = {action.name: action for action in ACTIONS}
 ACTION_OF_KEY: dict[str, str] = {key: action.name for action in ACTIONS for key in action.keys}
 
+# What a key does to the list's cursor: how far, and in what.
+MOVES: dict[str, tuple[int, str]] = {
+    "down": (1, "rows"),
+    "j": (1, "rows"),
+    "up": (-1, "rows"),
+    "k": (-1, "rows"),
+    "pagedown": (1, "screens"),
+    "pageup": (-1, "screens"),
+    "home": (-1, "ends"),
+    "g": (-1, "ends"),
+    "end": (1, "ends"),
+    "G": (1, "ends"),
+}
+
 # Textual's names of keys, as a person reads them on the keyboard.
 _CAPS = {"question_mark": "?", "slash": "/", "space": "space", "enter": "enter", "f1": "F1"}
 

@@ -22,7 +22,7 @@ from textual.screen import Screen
 from textual.worker import Worker, WorkerState
 
 from engine.errors import WarmroomError
-from tui.console.actions import ACTION_OF_KEY, ACTIONS, cap, footer_actions
+from tui.console.actions import ACTION_OF_KEY, ACTIONS, MOVES, cap, footer_actions
 from tui.console.help import HelpScreen
 from tui.look import LOOKS, CleanFilter, MonoFilter, RedFilter
 from tui.look.terminal import MustLeave
@@ -40,19 +40,6 @@ TICK_S = 0.5
 QUICK_TICK_S = 0.2
 WIDE_COLUMNS, TALL_ROWS = 120, 34
 NOTICES_KEPT = 50
-# What a key does to the list's cursor: how far, and in what.
-MOVES = {
-    "down": (1, "rows"),
-    "j": (1, "rows"),
-    "up": (-1, "rows"),
-    "k": (-1, "rows"),
-    "pagedown": (1, "screens"),
-    "pageup": (-1, "screens"),
-    "home": (-1, "ends"),
-    "g": (-1, "ends"),
-    "end": (1, "ends"),
-    "G": (1, "ends"),
-}
 PANELS_WIDE = ("order", "log")
 PANELS_NARROW = ("list", "target", "order", "log")
 
@@ -70,23 +57,7 @@ class Autopilot(Protocol):
 class Console(App[None]):
     """The console of one night."""
 
-    CSS = """
-    Screen { layout: vertical; background: $background; color: $foreground; }
-    #head { height: 2; }
-    #night { height: 5; }
-    #under-way { height: 3; }
-    #body { height: 1fr; }
-    #list { width: 1fr; height: 1fr; }
-    #side { width: 1fr; height: 1fr; display: none; }
-    #card { height: 1fr; }
-    #panel { height: 1fr; }
-    #notices { height: 1; }
-    #foot { height: 1; }
-    .wide #under-way { height: 6; }
-    .wide #side { display: block; width: 62; padding-left: 1; }
-    .wide #card { height: 27; }
-    .wide #notices { height: 3; }
-    """
+    CSS_PATH = "console.tcss"
     # Keys are taken one by one in `on_event`, from the table of actions; only what Textual itself
     # must see is bound here.
     BINDINGS = [Binding("ctrl+p", "command_palette", show=False, priority=True)]  # noqa: RUF012
