@@ -142,7 +142,9 @@ def check_crcs(data: bytes) -> None:
 
 
 @pytest.mark.parametrize(
-    ("number", "status"), [(signal.SIGHUP, 129), (signal.SIGTERM, 143)], ids=["SIGHUP", "SIGTERM"]
+    ("number", "status"),
+    [(signal.SIGHUP, 129), (signal.SIGINT, 130), (signal.SIGTERM, 143)],
+    ids=lambda value: getattr(value, "name", ""),
 )
 def test_a_signal_ends_it_cleanly(tmp_path: Path, number: signal.Signals, status: int) -> None:
     """Told to end in mid-exposure, it closes the log and ends; the night can be taken up again."""

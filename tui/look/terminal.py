@@ -1,9 +1,9 @@
 """The terminal itself: one that stalls must not stop the night, one that is gone must be left.
 
 Textual's driver waits until the terminal has taken each frame, so a peer that stops reading stops
-the event loop and with it the exposure clock; and SIGHUP and SIGTERM end it with the terminal left
-raw. `SteadyDriver` drops frames that can't be sent, paints the whole screen anew when the terminal
-reads again, and turns the signals and a hang-up into one message, `MustLeave`, for the app to obey.
+the event loop and with it the exposure clock; and signals end it with the terminal left raw.
+`SteadyDriver` drops frames that can't be sent, paints the whole screen anew when the terminal reads
+again, and turns the signals and a hang-up into one message, `MustLeave`, for the app to obey.
 """
 
 from __future__ import annotations
@@ -164,7 +164,7 @@ class SteadyDriver(LinuxDriver):
         super().start_application_mode()  # type: ignore[no-untyped-call]
         self._changing_modes = False
         loop = asyncio.get_running_loop()
-        for number in (signal.SIGHUP, signal.SIGTERM):
+        for number in (signal.SIGHUP, signal.SIGINT, signal.SIGTERM):
             name, status = signal.Signals(number).name, 128 + number
             loop.add_signal_handler(number, self._leave, f"told to end ({name})", status)
         self._look_for_hang_up(loop)
