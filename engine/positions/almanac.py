@@ -7,16 +7,13 @@ from datetime import date
 from typing import TYPE_CHECKING
 
 import numpy as np
-from numpy.typing import NDArray
 
 from engine.positions.bodies import moon, sun
-from engine.positions.finder import Crossing, Quantity, crossings, spans_above
+from engine.positions.finder import Crossing, Quantity, crossings, sampled, spans_above
 from engine.times import night_span_mjd
 
 if TYPE_CHECKING:
     from engine.logbook import Site
-
-Floats = NDArray[np.float64]
 
 # The upper limb on a flat horizon: 34 arcmin of refraction and 16 of radius (common practice).
 RISE_SET_ALTITUDE_DEG = -50.0 / 60.0
@@ -32,7 +29,7 @@ class Almanac:
 
     The night runs from local noon (``begin_mjd``) to local noon (``end_mjd``). Dusk is the last
     time the Sun sinks through an altitude before its lowest point, dawn the first time after.
-    ``moon_illumination`` (0 to 1) is at the middle of the night.
+    ``moon_illumination`` (0 to 1) is at the middle of the night, when the Sun is lowest.
     """
 
     night: date
@@ -55,16 +52,16 @@ class Almanac:
 def almanac(site: Site, night: date) -> Almanac:
     """Return the almanac of the night of a local date."""
     begin_mjd, end_mjd = night_span_mjd(night, site.timezone)
-    middle_mjd = _lowest_sun_mjd(site, begin_mjd, end_mjd)
-    falls, climbs = {}, {}
-    for limit_deg in (RISE_SET_ALTITUDE_DEG, CIVIL_DEG, NAUTICAL_DEG, ASTRONOMICAL_DEG):
-        found = crossings(_sun_above(site, limit_deg), begin_mjd, end_mjd)
-        falls[limit_deg] = _last(found, rising=False, before_mjd=middle_mjd)
-        climbs[limit_deg] = _first(found, rising=True, after_mjd=middle_mjd)
+    lowest_mjd = _lowest_sun_mjd(site, begin_mjd, end_mjd)
+    solar = {
+        limit_deg: crossings(_sun_above(site, limit_deg), begin_mjd, end_mjd)
+        for limit_deg in (RISE_SET_ALTITUDE_DEG, CIVIL_DEG, NAUTICAL_DEG, ASTRONOMICAL_DEG)
+    }
+    falls = {deg: _last(solar[deg], rising=False, before_mjd=lowest_mjd) for deg in solar}
+    climbs = {deg: _first(solar[deg], rising=True, after_mjd=lowest_mjd) for deg in solar}
     lunar = crossings(
         lambda t: moon(t, site).altitude_deg - RISE_SET_ALTITUDE_DEG, begin_mjd, end_mjd
     )
-    altitudes = sun(np.linspace(begin_mjd, end_mjd, 145), site).altitude_deg
     return Almanac(
         night=night,
         begin_mjd=begin_mjd,
@@ -79,8 +76,8 @@ def almanac(site: Site, night: date) -> Almanac:
         sunrise=climbs[RISE_SET_ALTITUDE_DEG],
         moonrise=_first(lunar, rising=True, after_mjd=begin_mjd),
         moonset=_first(lunar, rising=False, after_mjd=begin_mjd),
-        moon_illumination=float(moon(np.array([middle_mjd]), site).illumination[0]),
-        sun_state=_sun_state(altitudes),
+        moon_illumination=float(moon(np.array([lowest_mjd]), site).illumination[0]),
+        sun_state=_sun_state(site, solar[RISE_SET_ALTITUDE_DEG], lowest_mjd),
     )
 
 
@@ -97,14 +94,15 @@ def _sun_above(site: Site, limit_deg: float) -> Quantity:
 
 
 def _lowest_sun_mjd(site: Site, begin_mjd: float, end_mjd: float) -> float:
-    grid = np.linspace(begin_mjd, end_mjd, 289)
-    return float(grid[np.argmin(sun(grid, site).altitude_deg)])
+    moments, altitudes_deg = sampled(_sun_above(site, 0.0), begin_mjd, end_mjd)
+    return float(moments[np.argmin(altitudes_deg)])
 
 
-def _sun_state(altitudes_deg: Floats) -> str:
-    if altitudes_deg.max() <= RISE_SET_ALTITUDE_DEG:
-        return SUN_STATES[1]
-    return SUN_STATES[2] if altitudes_deg.min() > RISE_SET_ALTITUDE_DEG else SUN_STATES[0]
+def _sun_state(site: Site, rises_and_sets: list[Crossing], lowest_mjd: float) -> str:
+    if rises_and_sets:
+        return SUN_STATES[0]
+    lowest_deg = float(sun(lowest_mjd, site).altitude_deg[0])
+    return SUN_STATES[2] if lowest_deg > RISE_SET_ALTITUDE_DEG else SUN_STATES[1]
 
 
 def _last(found: list[Crossing], *, rising: bool, before_mjd: float) -> float | None:

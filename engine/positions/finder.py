@@ -2,6 +2,9 @@
 
 A quantity is a function of time; an event is where it crosses zero. Rise, set, twilight, a limit
 reached: all of them are this, so there is one finder and small functions to give it.
+
+What only just happens is found too: a Sun that dips below the horizon for three minutes at
+midsummer. Where the quantity turns between two points of the grid, the turn is looked at.
 """
 
 from __future__ import annotations
@@ -17,6 +20,7 @@ Quantity = Callable[[Floats], Floats]
 
 # Half a second of time: finer than any rise or set can be known.
 TOLERANCE_DAYS = 0.5 / 86400.0
+STEP_DAYS = 10.0 / 1440.0
 
 
 @dataclass(frozen=True, slots=True)
@@ -27,18 +31,44 @@ class Crossing:
     rising: bool
 
 
-def crossings(
-    quantity: Quantity, begin_mjd: float, end_mjd: float, step_days: float = 10.0 / 1440.0
-) -> list[Crossing]:
-    """Return the zeros of a quantity between two moments, in order of time.
+def sampled(
+    quantity: Quantity, begin_mjd: float, end_mjd: float, step_days: float = STEP_DAYS
+) -> tuple[Floats, Floats]:
+    """Return rising moments (UTC MJD) and a quantity at them: a grid, and the turns in it.
 
-    Bracketed on a grid of ``step_days``, then all halved together until half a second remains. A
-    quantity that touches zero between two grid points without a change of sign there is not seen:
-    the step bounds how short an event may be.
+    A turn is the vertex of the parabola through three neighbours, where it lies among them: also
+    one before the first step is over, or in the last. An altitude on a grid of ten minutes is there
+    within 0.01 arcsec of its extreme.
     """
     count = max(int(np.ceil((end_mjd - begin_mjd) / step_days)), 1)
     grid = np.linspace(begin_mjd, end_mjd, count + 1)
-    above = quantity(grid) > 0.0
+    values = quantity(grid)
+    slopes = np.diff(values)
+    before, after = slopes[:-1], slopes[1:]
+    bend = before - after
+    near = np.flatnonzero((bend != 0.0) & (np.abs(before + after) <= 2.0 * np.abs(bend)))
+    if near.size == 0:
+        return grid, values
+    # In steps from the middle one of the three.
+    vertex_steps = 0.5 * (before + after)[near] / bend[near]
+    turns = grid[near + 1] + vertex_steps * (end_mjd - begin_mjd) / count
+    moments = np.concatenate([grid, turns])
+    order = np.argsort(moments)
+    return moments[order], np.concatenate([values, quantity(turns)])[order]
+
+
+def crossings(
+    quantity: Quantity, begin_mjd: float, end_mjd: float, step_days: float = STEP_DAYS
+) -> list[Crossing]:
+    """Return the zeros of a quantity between two moments, in order of time.
+
+    Bracketed on a grid of ``step_days`` and at the turns in it, then all halved together until half
+    a second remains. A smooth quantity may cross and come back within a step; one with corners, or
+    that turns twice within a step, is promised only what lasts longer than a step. A jump through
+    zero counts as a crossing; NaN counts as not above.
+    """
+    grid, values = sampled(quantity, begin_mjd, end_mjd, step_days)
+    above = values > 0.0
     places = np.flatnonzero(above[1:] != above[:-1])
     if places.size == 0:
         return []
@@ -53,7 +83,7 @@ def crossings(
 
 
 def spans_above(
-    quantity: Quantity, begin_mjd: float, end_mjd: float, step_days: float = 10.0 / 1440.0
+    quantity: Quantity, begin_mjd: float, end_mjd: float, step_days: float = STEP_DAYS
 ) -> list[tuple[float, float]]:
     """Return the spans (begin, end) between two moments in which a quantity is positive."""
     found = crossings(quantity, begin_mjd, end_mjd, step_days)

@@ -76,13 +76,38 @@ def test_what_never_changes_has_no_crossing() -> None:
     assert spans_above(lambda mjd: -np.ones_like(mjd), BEGIN_MJD, END_MJD) == []
 
 
-def test_the_step_bounds_how_short_an_event_may_be() -> None:
-    """As promised: three minutes above zero are seen with a step of one, not with one of ten."""
+lengths_s = st.floats(10.0, 1200.0)
+middles = st.floats(0.0, 1.0)
+
+
+@settings(derandomize=True, deadline=None)
+@given(length_s=lengths_s, middle=middles, sign=st.sampled_from((1.0, -1.0)))
+def test_a_smooth_event_is_seen_however_short(length_s: float, middle: float, sign: float) -> None:
+    """A cosine a day long, like an altitude, that is above (or below) zero for so many seconds."""
+    half_days = length_s / 2.0 / 86400.0
+    middle_mjd = BEGIN_MJD + middle * (END_MJD - BEGIN_MJD)
+
+    def altitude(mjd: Floats) -> Floats:
+        level = np.cos(2.0 * np.pi * half_days)
+        return np.asarray(sign * (np.cos(2.0 * np.pi * (mjd - middle_mjd)) - level))
+
+    found = crossings(altitude, BEGIN_MJD, END_MJD)
+    edges_mjd = np.array([middle_mjd - half_days, middle_mjd + half_days])
+    # Where it comes a day before or after the whole of it may lie outside.
+    edges_mjd = np.concatenate([edges_mjd - 1.0, edges_mjd, edges_mjd + 1.0])
+    sure = (edges_mjd > BEGIN_MJD + HALF_SECOND_DAYS) & (edges_mjd < END_MJD - HALF_SECOND_DAYS)
+    times = np.array([each.mjd for each in found])
+    for edge_mjd in edges_mjd[sure]:
+        assert np.abs(times - edge_mjd).min() <= HALF_SECOND_DAYS
+
+
+def test_the_step_bounds_how_short_an_event_with_corners_may_be() -> None:
+    """As promised: a minute above zero is seen with a step of half of one, not with one of ten."""
 
     def peak(mjd: Floats) -> Floats:
-        return np.asarray(1.5 / 1440.0 - np.abs(mjd - (BEGIN_MJD + 15.0 / 1440.0 + 0.5)))
+        return np.asarray(0.5 / 1440.0 - np.abs(mjd - (BEGIN_MJD + 12.0 / 1440.0 + 0.5)))
 
-    assert len(crossings(peak, BEGIN_MJD, END_MJD, 1.0 / 1440.0)) == 2
+    assert len(crossings(peak, BEGIN_MJD, END_MJD, 0.5 / 1440.0)) == 2
     assert crossings(peak, BEGIN_MJD, END_MJD, 10.0 / 1440.0) == []
 
 
