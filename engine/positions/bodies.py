@@ -61,12 +61,13 @@ def sun(mjd: ArrayLike, site: Site) -> Body:
 def moon(mjd: ArrayLike, site: Site) -> Moon:
     """Return the Moon at T moments (UTC MJD); good to about 10 arcsec.
 
-    The series of Meeus (Astronomical Algorithms ch. 47, ERFA moon98). The Earth's own motion
-    aberrates it no more than light-time does the other way, so both are left out: 1 arcsec.
+    The series of Meeus (Astronomical Algorithms ch. 47, ERFA moon98), which is all of the error. It
+    is seen where it was a light-time ago, 0.7 arcsec back on its way around us; the motion of the
+    Earth itself drops out, because the Moon shares it.
     """
     when = np.atleast_1d(np.asarray(mjd, dtype=float))
     tt = tt_mjd(when)
-    away_km = np.asarray(erfa.moon98(MJD_ZERO, tt)["p"]) * AU_KM
+    away_km = _light_time_ago(erfa.moon98(MJD_ZERO, tt))
     seen = _topocentric(away_km, when, site)
     heliocentric, _ = erfa.epv00(MJD_ZERO, tt)
     to_sun_km = -np.asarray(heliocentric["p"]) * AU_KM
@@ -87,6 +88,16 @@ def phase_angle_deg(to_moon_km: Floats, to_sun_km: Floats, to_site_km: Floats) -
 def lit_share(phase_deg: ArrayLike) -> Floats:
     """Return the lit share (0 to 1) of a disc at phase angles (deg): (1 + cos i) / 2."""
     return np.asarray((1.0 + np.cos(np.deg2rad(phase_deg))) / 2.0)
+
+
+def _light_time_ago(now: NDArray[np.void]) -> Floats:
+    """Return where (T, 3; km) a body was when the light left that arrives now.
+
+    From its geocentric places and velocities (au, au/day): one step back along a straight line.
+    """
+    away_km = np.asarray(now["p"]) * AU_KM
+    days = np.linalg.norm(away_km, axis=-1, keepdims=True) / LIGHT_KM_PER_DAY
+    return np.asarray(away_km - np.asarray(now["v"]) * AU_KM * days)
 
 
 def _aberrated(away_km: Floats, velocity_au_per_day: Floats) -> Floats:
