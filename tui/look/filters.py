@@ -94,6 +94,8 @@ def _red(style: Style) -> Style:
     return style + Style(
         color=RichColor.from_triplet(ColorTriplet(text, 0, 0)),
         bgcolor=RichColor.from_triplet(ColorTriplet(ground, 0, 0)),
+        # A terminal's own way to draw faint text would take the contrast away again.
+        dim=False,
     )
 
 
