@@ -10,6 +10,8 @@ from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Any
 
+from rich.cells import cell_len
+
 from tui.paint.spans import Line, Span, spread
 from tui.widgets.sheet import Sheet
 
@@ -140,9 +142,20 @@ class Entry(Sheet):
             for letter, word in question.choices
             for part, role in ((f"{letter} ", "accent"), (f"{word}  ", "text"))
         )
-        typed = self._text[: self._at] + CURSOR + self._text[self._at :]
-        # A long text scrolls to the left, so that its end stays in sight.
         room = max(self.app.size.width - len(question.label) - len(self._fault) - 6, 10)
-        answer = choices or (Span(typed[-room:], "strong"),)
+        answer = choices or (Span(in_sight(self._text, self._at, room), "strong"),)
         left: Line = (Span(f" {question.label}: ", "accent"), *answer)
         self.show([spread(left, (Span(f"{self._fault} ", "bad"),), self.app.size.width)])
+
+
+def in_sight(text: str, at: int, room: int) -> str:
+    """Return typed text with its cursor, or the part around the cursor that has room (cells)."""
+    begin = at
+    while begin > 0 and cell_len(text[begin - 1 : at]) < room:
+        begin -= 1
+    shown = text[begin:at] + CURSOR
+    for each in text[at:]:
+        if cell_len(shown + each) > room:
+            break
+        shown += each
+    return shown
