@@ -30,9 +30,11 @@ SECONDS_PER_DAY = 86400.0
 FIRST_LEAP_SECOND_YEAR = 1972
 # 1973 January 2, the first day of every finals2000A file.
 FINALS_FIRST_MJD = 41684.0
-# UT1 drifts against UTC by up to about a millisecond a day when nobody predicts it: the scatter of
-# the length of day since 1990 (IERS C04; from memory). One second of time is 15 arcsec.
-UNKNOWN_UT1_S_PER_DAY = 0.001
+# The fastest that UT1 has run away from a steady clock over a month or longer since 2000, by the
+# table itself (March 2016: 2.05 ms a day; a test holds this against it).
+UNKNOWN_UT1_S_PER_DAY = 0.0021
+# Leap seconds keep UT1 - UTC within this (ITU-R TF.460-6).
+LARGEST_UT1_MINUS_UTC_S = 0.9
 
 
 def prepare_astropy() -> None:
@@ -164,14 +166,18 @@ def pole_rad(mjd: ArrayLike) -> tuple[Floats, Floats]:
 def earth_table_note(mjd: float) -> str | None:
     """Return a plain sentence when the table does not reach a moment (UTC MJD); None when it does.
 
-    The error it can cause grows by about a millisecond of time a day, 0.015 arcsec of hour angle.
+    The last value is held there. What that can cost grows by 2.1 ms of time a day, 0.03 arcsec of
+    hour angle, until leap seconds bound it.
     """
-    last_mjd = earth_table().last_mjd
-    if mjd <= last_mjd:
+    table = earth_table()
+    if mjd <= table.last_mjd:
         return None
-    error_s = UNKNOWN_UT1_S_PER_DAY * (mjd - last_mjd)
+    error_s = min(
+        UNKNOWN_UT1_S_PER_DAY * (mjd - table.last_mjd),
+        LARGEST_UT1_MINUS_UTC_S + abs(float(table.ut1_minus_utc_s[-1])),
+    )
     return (
-        f"The Earth-rotation table ends on {datetime_from_mjd(last_mjd).date().isoformat()}: "
+        f"The Earth-rotation table ends on {datetime_from_mjd(table.last_mjd).date().isoformat()}: "
         f"hour angles may be off by up to {error_s * DEGREES_PER_HOUR:.1f} arcsec. "
         "That is nothing for pointing; install a newer astropy-iers-data when convenient."
     )

@@ -11,6 +11,8 @@ from astropy.utils import iers
 
 from engine.positions import earth, prepare_astropy, sidereal_time_h
 from engine.positions.earth import (
+    LARGEST_UT1_MINUS_UTC_S,
+    UNKNOWN_UT1_S_PER_DAY,
     EarthTable,
     earth_table,
     pole_rad,
@@ -64,6 +66,23 @@ def test_values_are_held_beyond_both_ends() -> None:
     outside = np.array([30000.0, table.last_mjd + 1000.0])
     assert ut1_minus_utc_s(outside) == pytest.approx(table.ut1_minus_utc_s[[0, -1]], abs=1e-12)
     assert pole_rad(outside)[0] == pytest.approx(table.pole_x_rad[[0, -1]], abs=1e-15)
+
+
+def test_what_an_old_table_costs_is_what_held_values_would_have_cost() -> None:
+    """The table itself since 2000: hold each day's value for a month to two years, and look."""
+    table = earth_table()
+    recent = table.mjd >= FIRST_MJD_OF_2000
+    steady_s = (table.ut1_minus_utc_s - earth._steps_s())[recent]
+    worst = [
+        float(np.abs(steady_s[days:] - steady_s[:-days]).max()) / days
+        for days in range(30, 731, 10)
+    ]
+    assert max(worst) <= UNKNOWN_UT1_S_PER_DAY
+    assert max(worst) == pytest.approx(UNKNOWN_UT1_S_PER_DAY, rel=0.05), "more than it can cost"
+
+
+def test_leap_seconds_have_kept_their_bound() -> None:
+    assert float(np.abs(earth_table().ut1_minus_utc_s).max()) <= LARGEST_UT1_MINUS_UTC_S
 
 
 def test_a_strange_file_is_refused() -> None:

@@ -118,9 +118,19 @@ def test_the_note_names_a_day_and_an_error() -> None:
     last_mjd = earth_table().last_mjd
     note = earth_table_note(last_mjd + A_YEAR_LATER_DAYS)
     assert note is not None
-    # A millisecond of time a day is 5.5 arcsec of hour angle after a year.
-    assert "5.5 arcsec" in note
+    # 2.1 ms of time a day are 11.5 arcsec of hour angle after a year.
+    assert "11.5 arcsec" in note
     assert "20" in note.split("ends on ")[1][:10], "a date in ISO form"
-    later = earth_table_note(last_mjd + 2.0 * A_YEAR_LATER_DAYS)
-    assert later is not None
-    assert "11.0 arcsec" in later
+    sooner = earth_table_note(last_mjd + A_YEAR_LATER_DAYS / 10.0)
+    assert sooner is not None
+    assert "1.2 arcsec" in sooner
+
+
+def test_the_error_stops_growing_where_leap_seconds_bound_it() -> None:
+    """The value held is within 0.9 s of zero, and so is the true one: 27 arcsec at most."""
+    last_mjd = earth_table().last_mjd
+    late, later = (earth_table_note(last_mjd + years * 365.25) for years in (10.0, 50.0))
+    assert late == later
+    assert late is not None
+    error_arcsec = float(late.split("up to ")[1].split(" arcsec")[0])
+    assert 0.9 * 15.0 <= error_arcsec <= 1.8 * 15.0
