@@ -25,6 +25,7 @@ from engine.positions import (
     separation_deg,
     sidereal_time_h,
 )
+from engine.positions.earth import earth_table, ut1_minus_utc_s
 from engine.positions.stars import DIURNAL_ABERRATION_RAD
 
 ARCSEC_PER_DEG = 3600.0
@@ -88,6 +89,24 @@ def test_all_night_with_astropy(number: int, place: tuple[float, float, float]) 
             ours.azimuth_deg, ours.altitude_deg, theirs.az.deg, theirs.alt.deg
         )
         assert float(apart_arcsec.max()) < APART_ARCSEC
+
+
+def test_beyond_the_table_only_the_unknown_is_left() -> None:
+    """Astropy, told the UT1 that ours holds, still takes a mean pole: under an arcsecond."""
+    prepare_astropy()
+    site = site_at(*SITES[5])
+    ra_deg, dec_deg = stars(77)
+    for days in (200.9, 500.2):
+        mjd = earth_table().last_mjd + days + np.arange(0.0, 14.0, 0.5) / 24.0
+        when = Time(mjd, format="mjd", scale="utc")
+        when.delta_ut1_utc = ut1_minus_utc_s(mjd)
+        frame = AltAz(obstime=when, location=location_of(site))
+        theirs = SkyCoord(ra_deg[:, None] * u.deg, dec_deg[:, None] * u.deg).transform_to(frame)
+        ours = horizontal(apparent_places(ra_deg, dec_deg, float(np.mean(mjd))), mjd, site)
+        apart_arcsec = ARCSEC_PER_DEG * separation_deg(
+            ours.azimuth_deg, ours.altitude_deg, theirs.az.deg, theirs.alt.deg
+        )
+        assert float(apart_arcsec.max()) < 1.0
 
 
 def test_proper_motion_and_its_epoch_agree_with_astropy() -> None:
