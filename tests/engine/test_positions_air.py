@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 from hypothesis import given, settings
@@ -18,12 +20,24 @@ from engine.positions import (
     standard_pressure_hpa,
     true_altitude_deg,
 )
+from engine.positions.refraction import (
+    HANDOVER_DEG,
+    air_factor,
+    constants_rad,
+    constants_refraction_deg,
+    saemundsson_arcmin,
+)
 
 ALL_ALTITUDES_DEG = np.linspace(-90.0, 90.0, 3601)
 SEA_LEVEL = Air.standard(0.0)
 
 # From a high plateau in summer to the coldest night at the lowest place that is worked from.
-airs = st.builds(Air, pressure_hpa=st.floats(400.0, 1070.0), temperature_c=st.floats(-50.0, 45.0))
+airs = st.builds(
+    Air,
+    pressure_hpa=st.floats(400.0, 1070.0),
+    temperature_c=st.floats(-50.0, 45.0),
+    humidity_percent=st.floats(0.0, 100.0),
+)
 models = st.sampled_from(sorted(AIRMASS_MODELS))
 
 
@@ -53,10 +67,40 @@ def test_the_way_back_is_exact(air: Air) -> None:
 
 
 @settings(derandomize=True, deadline=None)
+@given(air=airs)
+def test_constants_are_of_the_apparent_zenith_distance(air: Air) -> None:
+    """One Newton step from the true one is enough: 0.05 arcsec at 10 deg, nothing high up."""
+    a_rad, b_rad = constants_rad(air)
+    seen_deg = np.linspace(10.0, 90.0, 161)
+    tan_z = np.tan(np.deg2rad(90.0 - seen_deg))
+    expected_deg = np.rad2deg(a_rad * tan_z + b_rad * tan_z**3)
+    found_deg = constants_refraction_deg(seen_deg - expected_deg, air)
+    apart_arcsec = 3600.0 * np.abs(found_deg - expected_deg)
+    assert float(apart_arcsec.max()) < 0.05
+    assert float(apart_arcsec[seen_deg > 30.0].max()) < 0.001
+
+
+@settings(derandomize=True, deadline=None)
+@given(air=airs)
+def test_one_model_hands_over_to_the_other_without_a_step(air: Air) -> None:
+    fine_deg = np.arange(4.0, 11.0, 0.001)
+    lift_arcsec = 3600.0 * refraction_deg(fine_deg, air)
+    slopes = np.diff(lift_arcsec) / 0.001
+    assert np.all(slopes < 0.0)
+    # Nor does the slope, in arcsec per degree, step from one thousandth of a degree to the next.
+    assert float(np.abs(np.diff(slopes)).max()) < 0.2
+    low, high = (fine_deg <= HANDOVER_DEG[0]), (fine_deg >= HANDOVER_DEG[1])
+    lower_arcmin = saemundsson_arcmin(fine_deg[low]) * air_factor(air)
+    assert lift_arcsec[low] / 60.0 == pytest.approx(lower_arcmin, rel=1e-12)
+    upper_deg = constants_refraction_deg(fine_deg[high], air)
+    assert lift_arcsec[high] / 3600.0 == pytest.approx(upper_deg, rel=1e-12)
+
+
+@settings(derandomize=True, deadline=None)
 @given(thin=airs, share=st.floats(1.01, 2.0))
 def test_denser_air_lifts_more(thin: Air, share: float) -> None:
-    dense = Air(thin.pressure_hpa * share, thin.temperature_c)
-    cold = Air(thin.pressure_hpa, thin.temperature_c - 10.0)
+    dense = replace(thin, pressure_hpa=thin.pressure_hpa * share)
+    cold = replace(thin, temperature_c=thin.temperature_c - 10.0)
     altitudes_deg = np.linspace(0.0, 80.0, 50)
     lift_deg = refraction_deg(altitudes_deg, thin)
     assert np.all(refraction_deg(altitudes_deg, dense) > lift_deg)
