@@ -26,6 +26,7 @@ from engine.log.events import (
     Recovery,
     RunStart,
     RunStop,
+    TargetAdded,
 )
 from engine.log.follow import Follower
 from engine.log.header import Header
@@ -84,6 +85,7 @@ __all__ = [
     "RunStep",
     "RunStop",
     "StepWatch",
+    "TargetAdded",
     "Word",
     "audit",
     "fold",

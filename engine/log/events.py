@@ -214,6 +214,22 @@ class Override(Event):
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class TargetAdded(Event):
+    """A target came into the night that is in no file: where it is (ICRS), what is wanted of it."""
+
+    kind: ClassVar[str] = "target"
+    name: str
+    programme: str = ""
+    ra_deg: float
+    dec_deg: float
+    priority: int
+    filters: tuple[str, ...]
+    seconds: tuple[float, ...]
+    counts: tuple[int, ...]
+    why: str = ""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class Amendment(Event):
     """An earlier event (``of``) is withdrawn, or has other values: those in ``changes``.
 
@@ -274,6 +290,6 @@ KINDS: dict[str, type[Event]] = {
     each.kind: each
     for each in (
         RunStart, RunStop, Pointing, ExposureStart, Exposure, Conditions, Focus, Calibration,
-        LostTime, Note, OrderProposed, Override, Amendment, ClockStep, Recovery, Close,
+        LostTime, Note, OrderProposed, Override, TargetAdded, Amendment, ClockStep, Recovery, Close,
     )
 }  # fmt: skip

@@ -23,6 +23,7 @@ from engine.log.events import (
     Pointing,
     RunStart,
     RunStop,
+    TargetAdded,
 )
 from engine.log.keys import changed
 from engine.log.values import Value
@@ -31,7 +32,7 @@ OpenExposure = ExposureStart
 
 # What `undo` reaches for: entries of the observer, not what the console wrote by itself. An
 # exposure that was taken can't be undone; it is rejected, and that can be.
-UNDOABLE = (Amendment, Conditions, LostTime, Note, Override, Pointing, RunStart)
+UNDOABLE = (Amendment, Conditions, LostTime, Note, Override, Pointing, RunStart, TargetAdded)
 
 
 @dataclass(frozen=True, slots=True)
@@ -102,6 +103,7 @@ class NightState:
     lost: tuple[Lost, ...] = ()
     notes: tuple[Note, ...] = ()
     overrides: tuple[Override, ...] = ()
+    added: tuple[TargetAdded, ...] = ()
     order: OrderProposed | None = None
     closed: bool = False
     conditions: dict[str, Latest] = field(default_factory=dict)
@@ -211,6 +213,8 @@ def _apply(state: NightState, event: Event) -> NightState:
             return replace(state, order=event)
         case Override():
             return replace(state, overrides=(*state.overrides, event))
+        case TargetAdded():
+            return replace(state, added=(*state.added, event))
         case Close():
             return replace(state, closed=True)
         case _:

@@ -21,6 +21,7 @@ from engine.log.events import (
     Recovery,
     RunStart,
     RunStop,
+    TargetAdded,
 )
 from engine.log.vocabulary import LOST_CAUSES, OUTCOMES, OVERRIDES
 from engine.logbook.text import one_line
@@ -49,9 +50,7 @@ def title(event: Event) -> str:
 def _title(event: Event) -> str:
     match event:
         case RunStart():
-            steps = zip(event.filters, event.seconds, event.counts, strict=False)
-            plan = ", ".join(f"{name} {seconds:g} s × {count}" for name, seconds, count in steps)
-            return f"run on {event.target}: {plan}"
+            return f"run on {event.target}: {_steps(event)}"
         case RunStop():
             return "run over" + _because(event.why)
         case Pointing():
@@ -84,6 +83,9 @@ def _rarer(event: Event) -> str:
             what = _LABELS.get(event.action, event.action)
             instead = f" instead of {event.instead_of}" if event.instead_of else ""
             return f"{what}: {event.target or event.filter}{instead}" + _because(event.why)
+        case TargetAdded():
+            where = f"ra {event.ra_deg:.5f}° dec {event.dec_deg:+.5f}°"
+            return f"target {event.name} added: {where}, {_steps(event)}" + _because(event.why)
         case Amendment():
             said = ", ".join(f"{key} = {value}" for key, value in event.changes.items())
             done = "withdrawn" if event.withdrawn else said
@@ -102,6 +104,11 @@ def _rarer(event: Event) -> str:
             return f"{event.kind_in_file} ({event.complaint})"
         case _:
             return event.kind
+
+
+def _steps(event: RunStart | TargetAdded) -> str:
+    steps = zip(event.filters, event.seconds, event.counts, strict=False)
+    return ", ".join(f"{name} {seconds:g} s × {count}" for name, seconds, count in steps)
 
 
 def _exposure(event: Exposure) -> str:

@@ -38,6 +38,7 @@ OVERRIDES: tuple[Word, ...] = (
     Word("drop", "dropped", "Not tonight."),
     Word("put_off", "put off", "Not before a time."),
     Word("pin", "pinned", "Next, or at a time."),
+    Word("hold", "held", "Nothing else until all of it is done."),
     Word("forbid", "filter put aside", "This filter is not to be used tonight."),
-    Word("release", "released", "An earlier drop, put off, pin or forbid no longer holds."),
+    Word("release", "released", "An earlier drop, put off, pin, hold or forbid no longer holds."),
 )

@@ -18,6 +18,7 @@ from engine.logbook.observatory import (
 from engine.logbook.reference import ReferenceRow, reference_rows
 from engine.logbook.sample import sample_logbook
 from engine.logbook.targets import PlannedExposures, Programme, Target
+from engine.logbook.typed import typed_target
 
 __all__ = [
     "Camera",
@@ -37,4 +38,5 @@ __all__ = [
     "planned_hours",
     "reference_rows",
     "sample_logbook",
+    "typed_target",
 ]

@@ -18,7 +18,7 @@ from typing import Any
 
 from engine.logbook.faults import KeyPath, expected, field_key, unknown
 from engine.logbook.files import Unreadable
-from engine.logbook.targets import Target
+from engine.logbook.targets import EXPOSURES_WORD, Target
 from engine.logbook.text import one_line
 from engine.logbook.votable import scan_votable
 
@@ -28,7 +28,6 @@ LONGEST_HEAD = 20_000
 
 _FIELDS = {field_key(name, each): each for name, each in Target.model_fields.items()}
 _TEXT_KEYS = frozenset({"name", "programme", "role"})
-_EXPOSURES = re.compile(r"(\S+):([0-9]{1,9}(?:\.[0-9]*)?)x([0-9]{1,9})\Z")
 _WHOLE = re.compile(r"[+-]?[0-9]{1,18}\Z")
 _ASTROPY_PLACE = re.compile(r"[^\s:]*:([0-9]+):[0-9]+: (?:[WE][0-9]+: )?")
 _DELIMITER = re.compile(r"^# delimiter: '?(,|\s)", re.MULTILINE)
@@ -199,7 +198,7 @@ def _from_text(key: str, cell: str) -> Any:
 
 
 def _exposures(text: str) -> Any:
-    found = _EXPOSURES.match(text)
+    found = EXPOSURES_WORD.match(text)
     if found is None:
         return text
     return {"filter": found[1], "seconds": float(found[2]), "count": int(found[3])}

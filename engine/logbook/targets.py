@@ -16,6 +16,8 @@ from engine.times import mjd_from_datetime
 _SEXAGESIMAL = re.compile(
     r"([+-]?)([0-9]{1,3})[: ]([0-9]{1,2})(?:[: ]([0-9]{1,2}(?:\.[0-9]*)?))?\Z"
 )
+# Exposures as a table or a person writes them: ``V:60x5`` is five of a minute in V.
+EXPOSURES_WORD = re.compile(r"(\S+):([0-9]{1,9}(?:\.[0-9]*)?)x([0-9]{1,9})\Z")
 RIGHT_ASCENSION = "hours 'hh:mm:ss.s', or degrees from 0 to less than 360"
 DECLINATION = "'+dd:mm:ss', or degrees from -90 to 90"
 MOMENTS = ("2027-03-14T11:00:00Z", "2027-03-14T12:20:00Z")

@@ -67,10 +67,13 @@ class Rules:
     """What the observer has decided, which every order works around.
 
     ``put_off`` holds, by target, the moment (UTC MJD) before which it is not wanted; ``first`` a
-    target to take next whatever else.
+    target to take next whatever else, all of it if ``hold``; ``pinned``, by target, the moment (UTC
+    MJD) at which its exposures should begin.
     """
 
     dropped: frozenset[str] = frozenset()
     put_off: dict[str, float] = field(default_factory=dict)
     forbidden_filters: frozenset[str] = frozenset()
     first: str | None = None
+    hold: bool = False
+    pinned: dict[str, float] = field(default_factory=dict)

@@ -20,10 +20,12 @@ from engine.log import (
     last_undoable,
     title,
 )
+from engine.logbook import Target
 from engine.night import Progress
 from engine.times import MINUTES_PER_DAY, SECONDS_PER_DAY
+from engine.watch.listing import added_event
 from engine.watch.record import Ending, credit_measured
-from engine.watch.rules import rules_from
+from engine.watch.rules import is_pinned, rules_from
 from engine.watch.stage import Stage
 from engine.watch.watch import Watch
 
@@ -70,6 +72,8 @@ def lines_now(watch: Watch) -> tuple[Progress, ...]:
     if pointing is None or watch.plan is None:
         return ()
     left = tuple(line for line in watch.plans().get(pointing.target, ()) if line.remaining)
+    if not left:
+        return ()
     now_mjd = watch.clock.now_mjd()
     visit = next((v for v in watch.plan.order.visits if v.end_mjd > now_mjd), None)
     if visit is not None and visit.target == pointing.target:
@@ -122,6 +126,45 @@ def put_off(watch: Watch, name: str, minutes: float) -> Event:
     until_mjd = watch.clock.now_mjd() + minutes / MINUTES_PER_DAY
     override = Override(action="put_off", target=name, until_mjd=until_mjd)
     return watch.submit(override, because=f"{name} was put off")
+
+
+def take_next(watch: Watch, name: str) -> Event:
+    """Let a target be next whatever the order says, or no longer when it was to be."""
+    back = is_pinned(watch.state, name)
+    action = "release" if back else "pin"
+    said = "no longer pinned" if back else "to be next"
+    return watch.submit(Override(action=action, target=name), because=f"{name} is {said}")
+
+
+def take_at(watch: Watch, name: str, at_mjd: float) -> Event:
+    """Let a target's exposures begin at a moment (UTC MJD) whatever the order says."""
+    if at_mjd < watch.clock.now_mjd():
+        raise NotNow("that moment is past")
+    if at_mjd > watch.planner.night.mjd[-1]:
+        raise NotNow("that moment is after the end of the night")
+    override = Override(action="pin", target=name, at_mjd=at_mjd)
+    return watch.submit(override, because=f"{name} is pinned to a time")
+
+
+def hold(watch: Watch) -> Event:
+    """Stay on the present target until all of its plan is done, or no longer."""
+    pointing = watch.state.pointing
+    if pointing is None:
+        raise NotNow("the telescope is on no target")
+    rules = rules_from(watch.state, watch.clock.now_mjd())
+    action = "release" if rules.hold else "hold"
+    said = "no longer held" if rules.hold else "held"
+    override = Override(action=action, target=pointing.target)
+    return watch.submit(override, because=f"{pointing.target} is {said}")
+
+
+def insert(watch: Watch, target: Target) -> Event:
+    """Take a target into the night that is in no file; the order is made anew with it."""
+    taken = {each.name for each in watch.planner.night.targets}
+    taken |= {each.name for each in watch.state.added}
+    if target.name in taken:
+        raise NotNow(f"a target is called {target.name} already; give it another name")
+    return watch.submit(added_event(target), because=f"{target.name} came in")
 
 
 def put_filter_aside(watch: Watch, name: str) -> Event:

@@ -93,7 +93,8 @@ def open_onlooker(folder: Path, night: date | None = None) -> Opened:
     follower.poll()
     if follower.reading is None:
         raise LogError(follower.trouble or f"{path}: can't be read")
-    planner = Planner(logbook, night, done_before(folder, night))
+    added = follower.state.added
+    planner = Planner(logbook, night, done_before(folder, night), added=added)
     clock: Clock = SystemClock() if night == tonight else HandClock(float(planner.night.mjd[0]))
     findings: tuple[Fault, ...] = follower.findings
     return Opened(Onlooker(planner, follower, clock), path, findings)

@@ -44,7 +44,8 @@ def open_watch(
     header = Header.of(logbook.observatory, night, observers, f"warmroom {version('warmroom')}")
     log = NightLog.open(folder, header, clock.now_mjd())
     try:
-        planner = Planner(logbook, night, done_before(folder, night))
+        added = fold(log.events).added
+        planner = Planner(logbook, night, done_before(folder, night), added=added)
     except BaseException:
         log.close()
         raise

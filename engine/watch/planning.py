@@ -13,13 +13,14 @@ import numpy as np
 from numpy.typing import NDArray
 
 from engine.image import ImageModel
-from engine.log import Exposure, NightState
+from engine.log import Exposure, NightState, TargetAdded
 from engine.logbook import Logbook
 from engine.night import Night, Outlook, Outlooks, Plans, open_night, plans
 from engine.order import Problem, build_problem, propose
 from engine.positions import Air
 from engine.seeing import SeeingForecast, SeeingMeasurement, nowcast
 from engine.times import HOURS_PER_DAY
+from engine.watch.listing import listed
 from engine.watch.news import news
 from engine.watch.plan import Plan
 from engine.watch.rules import rules_from
@@ -32,7 +33,7 @@ AIR_STEP_HPA, AIR_STEP_C, AIR_STEP_PERCENT = 8.0, 4.0, 40.0
 
 @dataclass(frozen=True, slots=True)
 class Planned:
-    """A plan, and the planner that made it: another one when the air has changed."""
+    """A plan, and the planner that made it: another one when list or air have changed."""
 
     planner: Planner
     plan: Plan
@@ -49,24 +50,35 @@ class Planner:
         logbook: Logbook,
         night: date,
         done_before: tuple[Exposure, ...] = (),
+        *,
+        added: tuple[TargetAdded, ...] = (),
         air: Air | None = None,
     ) -> None:
-        self.logbook = logbook
-        self.night: Night = open_night(logbook, night, air)
+        self.logbook = listed(logbook, added)
+        self.night: Night = open_night(self.logbook, night, air)
         self.model = ImageModel(logbook.observatory, self.night.air)
         self._outlooks = Outlooks(self.night, self.model)
         self._done_before = done_before
+        self._as_read, self._added = logbook, added
 
-    def in_air_of(self, state: NightState, now_mjd: float) -> Planner:
-        """Return this planner, or one for the air that was measured since if that is another.
+    def fit(self, state: NightState, now_mjd: float, logbook: Logbook | None = None) -> Planner:
+        """Return this planner, or another one where the list or the air has become another.
 
-        Refraction and dispersion hardly mind a degree or a hectopascal: small changes keep the
-        tables.
+        ``logbook`` is the one that was read anew, if it was. Refraction and dispersion hardly mind
+        a degree or a hectopascal: small changes of the air keep the tables.
         """
+        as_read = logbook or self._as_read
         air = measured_air(state, now_mjd, self.night.air)
-        if not _differs(air, self.night.air):
+        same_air = not _differs(air, self.night.air)
+        if same_air and as_read is self._as_read and state.added == self._added:
             return self
-        return Planner(self.logbook, self.night.almanac.night, self._done_before, air)
+        return Planner(
+            as_read,
+            self.night.almanac.night,
+            self._done_before,
+            added=state.added,
+            air=self.night.air if same_air else air,
+        )
 
     def plans(self, state: NightState) -> Plans:
         """Return every target's plan with past nights and this one counted in."""
@@ -93,13 +105,16 @@ class Planner:
 
     def problem(self, state: NightState, outlook: Outlook, from_mjd: float) -> Problem:
         """Return the rest of the night from a moment (UTC MJD) as the search takes it."""
+        known = {target.name for target in self.night.targets}
+        sent_to = state.pointing.target if state.pointing else None
         return build_problem(
             self.night,
             outlook,
             self.plans(state),
             rules_from(state, from_mjd),
             from_mjd=from_mjd,
-            pointing=state.pointing.target if state.pointing else None,
+            # A target that has left the list since is nowhere in particular.
+            pointing=sent_to if sent_to in known else None,
         )
 
 

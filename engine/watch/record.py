@@ -45,8 +45,11 @@ def exposure_record(
     ``seeing_arcsec`` is the seeing in force, zenith and 500 nm.
     """
     site = night.observatory.site
-    index = night.target_index(began.target)
-    place = night.observatory.filter_index(began.filter)
+    try:
+        index = night.target_index(began.target)
+        place = night.observatory.filter_index(began.filter)
+    except KeyError:
+        return _bare_record(began, ending)
     filter_ = night.observatory.filters[place]
     middle_mjd = 0.5 * (began.start_mjd + ending.end_mjd)
     mjd = np.array([began.start_mjd, middle_mjd, ending.end_mjd])
@@ -113,6 +116,25 @@ def exposure_record(
         frame=began.frame,
         outcome=ending.outcome,
         credit=_kept(worth * min(exposed_s / began.seconds, 1.0)),
+        why=ending.why,
+    )
+
+
+def _bare_record(began: OpenExposure, ending: Ending) -> Exposure:
+    """Return the record of an exposure whose target or filter has left the logbook since."""
+    return Exposure(
+        of=began.n,
+        run=began.run,
+        target=began.target,
+        programme=began.programme,
+        filter=began.filter,
+        seconds=began.seconds,
+        exposed_s=round((ending.end_mjd - began.start_mjd) * SECONDS_PER_DAY, 3),
+        start_mjd=began.start_mjd,
+        mid_mjd=0.5 * (began.start_mjd + ending.end_mjd),
+        end_mjd=ending.end_mjd,
+        frame=began.frame,
+        outcome=ending.outcome,
         why=ending.why,
     )
 

@@ -2,41 +2,110 @@
 
 from __future__ import annotations
 
-from engine.log import NightState, RunStop
+from dataclasses import dataclass, field
+
+from engine.log import NightState, Override, RunStart, RunStop
 from engine.order import Rules
 
 
-def rules_from(state: NightState, now_mjd: float) -> Rules:
-    """Return the rules in force at a moment (UTC MJD): what was dropped, put off, put aside.
+@dataclass(slots=True)
+class _Standing:
+    """What stands of the decisions up to one point of the night, by target or filter."""
 
-    A later "release" of a target or a filter undoes what was decided about it before.
-    """
-    dropped: set[str] = set()
-    put_off: dict[str, float] = {}
-    forbidden: set[str] = set()
-    for each in state.overrides:
+    dropped: set[str] = field(default_factory=set)
+    put_off: dict[str, float] = field(default_factory=dict)
+    forbidden: set[str] = field(default_factory=set)
+    pinned: dict[str, float] = field(default_factory=dict)
+    next: Override | None = None
+    held: Override | None = None
+
+    def take(self, each: Override) -> None:
+        """Take one more decision in; a later one of a target stands for the earlier."""
         match each.action:
             case "drop":
-                dropped.add(each.target)
+                self.release(each.target)
+                self.dropped.add(each.target)
             case "put_off" if each.until_mjd is not None:
-                put_off[each.target] = each.until_mjd
+                self.release(each.target)
+                self.put_off[each.target] = each.until_mjd
+            case "pin":
+                self.release(each.target)
+                if each.at_mjd is None:
+                    self.next = each
+                else:
+                    self.pinned[each.target] = each.at_mjd
+            case "hold":
+                self.held = each
             case "forbid":
-                forbidden.add(each.filter)
+                self.forbidden.add(each.filter)
             case "release":
-                dropped.discard(each.target)
-                put_off.pop(each.target, None)
-                forbidden.discard(each.filter)
-    still = {target: until for target, until in put_off.items() if until > now_mjd}
-    return Rules(frozenset(dropped), still, frozenset(forbidden), _held(state))
+                self.release(each.target)
+                self.forbidden.discard(each.filter)
+
+    def release(self, target: str) -> None:
+        """Undo what was decided about a target."""
+        self.dropped.discard(target)
+        self.put_off.pop(target, None)
+        self.pinned.pop(target, None)
+        if self.next is not None and self.next.target == target:
+            self.next = None
+        if self.held is not None and self.held.target == target:
+            self.held = None
 
 
-def _held(state: NightState) -> str | None:
-    """Return the target the telescope was sent to, until its run there is over.
+def rules_from(state: NightState, now_mjd: float) -> Rules:
+    """Return the rules in force at a moment (UTC MJD).
 
-    The observer has decided: an order that proposed to leave it again would be of no use.
+    A later decision about a target takes the place of an earlier one; "release" undoes it. A pin
+    has served when a run on its target began after it; being held ends with the next pointing.
     """
-    if state.pointing is None:
-        return None
-    sent_n = state.pointing.n
-    left = any(isinstance(each, RunStop) and each.n > sent_n for each in state.events)
-    return None if left and state.run is None else state.pointing.target
+    standing = _standing(state)
+    first, hold = _first(state, standing)
+    return Rules(
+        dropped=frozenset(standing.dropped),
+        put_off={name: until for name, until in standing.put_off.items() if until > now_mjd},
+        forbidden_filters=frozenset(standing.forbidden),
+        first=first,
+        hold=hold,
+        pinned=dict(standing.pinned),
+    )
+
+
+def is_pinned(state: NightState, name: str) -> bool:
+    """Say whether a target is pinned, next or at a time, and the pin has not served yet."""
+    standing = _standing(state)
+    is_next = standing.next is not None and standing.next.target == name
+    return is_next or name in standing.pinned
+
+
+def _standing(state: NightState) -> _Standing:
+    begun = {
+        event.target: event.n
+        for event in state.events
+        if isinstance(event, RunStart) and event.n not in state.withdrawn
+    }
+    standing = _Standing()
+    for each in state.overrides:
+        if each.action != "pin" or begun.get(each.target, 0) < each.n:
+            standing.take(each)
+    return standing
+
+
+def _first(state: NightState, standing: _Standing) -> tuple[str | None, bool]:
+    """Return the target that comes first, and whether all of its plan does.
+
+    The one held; else the one under way; else the one pinned to be next; else the one the
+    telescope was sent to, until its run there is over: an order that proposed to leave it again
+    would be of no use.
+    """
+    held, pointing = standing.held, state.pointing
+    if held is not None and pointing is not None and pointing.target == held.target:
+        return held.target, True
+    if state.run is not None:
+        return state.run.target, False
+    if standing.next is not None:
+        return standing.next.target, False
+    if pointing is None:
+        return None, False
+    left = any(isinstance(each, RunStop) and each.n > pointing.n for each in state.events)
+    return (None if left else pointing.target), False

@@ -16,6 +16,7 @@ from engine.night import Night, Outlooks, TargetNow, plans, tables, targets_at
 from engine.order import Order, propose, upper_limit
 from engine.positions import almanac
 from engine.times import night_of
+from engine.watch.listing import listed
 from engine.watch.opening import done_before
 from engine.watch.planning import Planner, forecast_of
 
@@ -41,6 +42,7 @@ def snapshot(logbook: Logbook, mjd: float | None, seeing_arcsec: float | None) -
     observatory = logbook.observatory
     date_ = night_of(mjd, observatory.site.timezone)
     state = state_of_night(logbook, date_, mjd)
+    logbook = listed(logbook, state.added)
     times = almanac(observatory.site, date_)
     night = tables(observatory, logbook.targets, times, np.array([mjd]))
     model = ImageModel(observatory, night.air)
@@ -85,7 +87,7 @@ def order_of_night(
     moment = now_mjd if at_mjd is None else at_mjd
     night = night or night_of(moment, logbook.observatory.site.timezone)
     state = state_of_night(logbook, night, moment)
-    planner = Planner(logbook, night, done_before(logbook.folder, night))
+    planner = Planner(logbook, night, done_before(logbook.folder, night), added=state.added)
     grid = planner.night.mjd
     inside = at_mjd is not None or grid[0] < now_mjd < grid[-1]
     start_mjd = moment if inside else float(grid[0])

@@ -22,6 +22,7 @@ from engine.log import (
     RunStop,
     fold,
 )
+from engine.logbook import Logbook
 from engine.night import Plans, TargetNow, targets_at
 from engine.times import MINUTES_PER_DAY, SECONDS_PER_DAY
 from engine.watch.plan import Plan
@@ -80,6 +81,7 @@ class Watch:
         self._doubted_n = self._state.exposing.n if self._state.exposing else 0
         self._wanted: str | None = "the night begins"
         self._kept_plans: tuple[int, Plans] = (-1, {})
+        self._logbook: Logbook | None = None
 
     # What is known
 
@@ -157,6 +159,12 @@ class Watch:
         self._doubted_n = 0
         self.version += 1
 
+    def renew(self, logbook: Logbook, because: str) -> None:
+        """Go on with the logbook as it was read anew; ``because`` says what changed in it."""
+        self._logbook = logbook
+        self._wanted = because
+        self.version += 1
+
     def end_exposure(self, ending: Ending) -> Event:
         """Log the record of the exposure under way, ended as said."""
         began = self._state.exposing
@@ -213,12 +221,12 @@ class Watch:
         step, start_mjd = due
         if now_mjd < start_mjd:
             return False
-        target = self.planner.night.targets[self.planner.night.target_index(run.target)]
+        programmes = {each.name: each.programme for each in self.planner.night.targets}
         self.submit(
             ExposureStart(
                 run=run.n,
                 target=run.target,
-                programme=target.programme,
+                programme=programmes.get(run.target, ""),
                 filter=step.filter,
                 seconds=step.seconds,
                 start_mjd=start_mjd,
@@ -238,12 +246,13 @@ class Watch:
         if because is None:
             return None
         planner, state, before = self.planner, self._state, self.plan
+        logbook = self._logbook
         # An entry of this very millisecond counts: its time in the log may be rounded up.
         last_mjd = state.events[-1].t_mjd if state.events else 0.0
         now_mjd = max(self.clock.now_mjd(), last_mjd)
 
         def work() -> Planned:
-            fit = planner.in_air_of(state, now_mjd)
+            fit = planner.fit(state, now_mjd, logbook)
             return Planned(fit, fit.plan(state, now_mjd, because, before))
 
         return work

@@ -8,10 +8,11 @@ from typing import TYPE_CHECKING
 
 from engine.errors import NotNow
 from engine.log import LOST_CAUSES, Conditions
+from engine.logbook import typed_target
 from engine.logbook.text import one_line
 from engine.watch import Stage, Watch, acts
 from tui.console.panels.local import ahead
-from tui.console.read import number_between
+from tui.console.read import moment_in, number_between
 from tui.widgets import LiveList, Question
 
 if TYPE_CHECKING:
@@ -101,6 +102,32 @@ class Deeds:
             f"put {name} off for, minutes",
             number_between(1.0, 720.0, "minutes"),
             lambda minutes: acts.put_off(self._watch, name, minutes),
+        )
+
+    def take_next(self) -> None:
+        """Let the target under the cursor be next, or no longer."""
+        acts.take_next(self._watch, self._under_cursor())
+
+    def take_at(self) -> None:
+        """Let the target under the cursor begin at a time."""
+        name = self._under_cursor()
+        self._ask(
+            f"{name} is to begin at, local time",
+            moment_in(self._watch.planner.night.almanac, self._watch.planner.logbook),
+            lambda at_mjd: acts.take_at(self._watch, name, at_mjd),
+        )
+
+    def hold(self) -> None:
+        """Stay on the present target, or no longer."""
+        acts.hold(self._watch)
+
+    def insert(self) -> None:
+        """Take a new target in by its coordinates."""
+        wheel = [each.name for each in self._watch.planner.logbook.observatory.filters]
+        self._ask(
+            f"ra dec exposures name (05:34:31.9 +22:00:52 {wheel[0]}:60x5)",
+            lambda text: typed_target(text, wheel),
+            lambda target: acts.insert(self._watch, target),
         )
 
     def filter_aside(self) -> None:

@@ -26,7 +26,7 @@ class View:
         self._console = console
         self._watch = watch
         self._told: set[str] = set()
-        self._pointing_n = 0
+        self._followed_n = 0
         self._trouble: str | None = None
 
     @property
@@ -57,11 +57,16 @@ class View:
         self.paint_foot()
 
     def _follow_the_telescope(self) -> None:
-        """Put the cursor on the target the telescope was just sent to."""
-        pointing = self._watch.state.pointing
-        if pointing is not None and pointing.n != self._pointing_n:
-            self._pointing_n = pointing.n
-            self._list.move_to(pointing.target)
+        """Put the cursor on the target the telescope was just sent to, or that just came in."""
+        state = self._watch.state
+        known = {target.name for target in self._watch.planner.night.targets}
+        if state.pointing is not None and state.pointing.n > self._followed_n:
+            self._followed_n = state.pointing.n
+            self._list.move_to(state.pointing.target)
+        # A target that came in has its row once the order was made anew.
+        if state.added and state.added[-1].n > self._followed_n and state.added[-1].name in known:
+            self._followed_n = state.added[-1].n
+            self._list.move_to(state.added[-1].name)
 
     def paint_foot(self) -> None:
         """Show the keys, the common one with what it does now."""
