@@ -14,6 +14,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from engine.order.pins import pin_worths
 from engine.order.problem import Problem
 
 Singles = NDArray[np.float32]
@@ -35,9 +36,10 @@ Part = tuple[int, int]
 class Blocks:
     """Every block: its target, parts and minutes, and its value (B, K+1) by the tick it begins.
 
-    ``value`` is `NEVER` where a limit forbids it; ``ready`` (B, K+1) is the next tick at which none
-    does, K for never again. What finishing a plan earns is in it when the
-    plan is one block; ``pieces`` (N,) counts the blocks of the other plans that can be finished,
+    ``value`` is `NEVER` where a limit forbids it; what a pin counts is in it for targets that are
+    ``pinned`` (B,). ``ready`` (B, K+1) is the next tick at which no limit forbids, K for never
+    again. What finishing a plan earns is in the value when the plan is one block; ``pieces`` (N,)
+    counts the blocks of the other plans that can be finished,
     0 for the rest, and ``bonus`` (N,) is what all of them together earn.
     """
 
@@ -48,6 +50,7 @@ class Blocks:
     ready: Places
     pieces: Places
     bonus: Singles
+    pinned: NDArray[np.bool_]
 
     def finishing(self, order: list[int]) -> float:
         """Return what the plans of several blocks earn that are all in an order."""
@@ -94,6 +97,7 @@ def cut(problem: Problem) -> Blocks:
         ready=_ready(value),
         pieces=_pieces_to_finish(problem, kept),
         bonus=problem.bonus.astype(np.float32),
+        pinned=np.array([target in problem.pins for target, _ in kept], dtype=bool),
     )
 
 
@@ -254,6 +258,10 @@ def _values(
     whole = dict(_whole_plans(problem))
     bonus = [problem.bonus[target] if parts == whole[target] else 0.0 for target, parts in blocks]
     table[:, :-1] += np.array(bonus, dtype=np.float32)[:, None]
+    for row, (target, parts) in enumerate(blocks):
+        if target in problem.pins:
+            change_min = problem.lines[parts[0][0]].change_min
+            table[row, :-1] += pin_worths(problem, target, at / TICKS_PER_MIN + change_min)
     table[:, :-1][~possible] = NEVER
     table[:, -1] = NEVER
     return table

@@ -91,6 +91,8 @@ def greedies(
         begin = tables.ready[tables.row, arrive]
         score = tables.score(begin, state_tick)
         score[~free] = -np.inf
+        if blocks.pinned.any():
+            _wait_for_pins(blocks, travel, score, begin, free)
         chosen = score.argmax(axis=1)
         active &= np.isfinite(score[row_index, chosen])
         for row in np.flatnonzero(active):
@@ -102,6 +104,29 @@ def greedies(
             state_here[row] = blocks.target[block]
         state_tick = np.minimum(state_tick, ticks)
     return [Turn(tuple(s), tuple(m)) for s, m in zip(sequences, moments, strict=True)]
+
+
+def _wait_for_pins(
+    blocks: Blocks, travel: Travel, score: Singles, begin: Places, free: NDArray[np.bool_]
+) -> None:
+    """Take out of the scores (G, B) what would make the next pinned block late, and the pinned one
+    itself as long as anything else can be done before it.
+    """
+    ticks = blocks.ticks
+    lengths = np.rint(blocks.minutes * TICKS_PER_MIN).astype(np.int64)
+    for row in range(len(score)):
+        due = np.where(blocks.pinned & free[row] & np.isfinite(score[row]), begin[row], ticks + 1)
+        pinned = int(due.argmin())
+        if due[pinned] > ticks:
+            continue
+        end = begin[row] + lengths
+        minute = np.minimum(end, ticks - 1) // TICKS_PER_MIN
+        way = travel.between(blocks.target, blocks.target[pinned], minute)
+        in_time = end + np.ceil(way * TICKS_PER_MIN) <= due[pinned]
+        score[row, ~in_time & ~blocks.pinned] = -np.inf
+        score[row, blocks.pinned & (np.arange(len(due)) != pinned)] = -np.inf
+        if (score[row, in_time & ~blocks.pinned] > -np.inf).any():
+            score[row, pinned] = -np.inf
 
 
 def _after_first(blocks: Blocks, travel: Travel, start: Start) -> tuple[Turn, int, int]:

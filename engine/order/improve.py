@@ -18,6 +18,7 @@ from numpy.typing import NDArray
 
 from engine.order.blocks import NEVER, TICKS_PER_MIN, Blocks
 from engine.order.construct import Start, Turn
+from engine.order.pins import PIN_WORTH
 from engine.order.travel import Travel
 
 Singles = NDArray[np.float32]
@@ -241,10 +242,15 @@ class Search:
         held = len(self._start.first)
         while len(self._targets) and (spent := effort.spent()) < 1.0:
             effort.done += 1
-            self._try(held, (wander * (1.0 - spent) ** 2 - least) * self.best.value)
+            self._try(held, (wander * (1.0 - spent) ** 2 - least) * self._unpinned())
             if self._now.value > self.best.value * (1.0 + 1e-6):
                 self.best = self._timed(self._now)
         return self.best
+
+    def _unpinned(self) -> float:
+        """Return the best value so far without what pins count for."""
+        kept = int(self._blocks.pinned[list(self.best.blocks)].sum())
+        return max(self.best.value - kept * PIN_WORTH, 0.0)
 
     def _timed(self, sequence: Sequence) -> Timed:
         return Timed(tuple(sequence.order), tuple(sequence.ticks), sequence.value)

@@ -49,6 +49,7 @@ class Problem:
     ``worth`` (L, T): priority x quality of a second, 0 where it may not. ``of_target`` (N, K)
     holds each target's lines, -1 for none. ``bonus`` (N,): what finishing a plan earns, 0 where
     it can't be finished. ``pointing`` is N when nobody has said where the telescope points.
+    ``pins`` holds, by target, the minute at which its exposures are to begin.
     """
 
     night: Night
@@ -67,6 +68,7 @@ class Problem:
     contiguous_min: Floats
     travel: Travel
     pointing: int
+    pins: dict[int, float]
 
     @property
     def targets(self) -> tuple[Target, ...]:
@@ -128,6 +130,11 @@ def build_problem(
         contiguous_min=np.array([each.contiguous_min or 0.0 for each in night.targets]),
         travel=travel_of(night, first),
         pointing=len(night.targets) if pointing is None else night.target_index(pointing),
+        pins={
+            index: (rules.pinned[target.name] - float(night.mjd[first])) * MINUTES_PER_DAY
+            for index, target in enumerate(night.targets)
+            if target.name in rules.pinned
+        },
     )
 
 
@@ -162,9 +169,14 @@ def _allowed(
         & ~outlook.soft[filters, targets, at]
     )
     for place, line in enumerate(lines):
-        until = rules.put_off.get(night.targets[line.target].name)
+        name = night.targets[line.target].name
+        until = rules.put_off.get(name)
         if until is not None:
             allowed[place] &= night.mjd[at] >= until
+        pin_mjd = rules.pinned.get(name)
+        if pin_mjd is not None:
+            # Of the minute it falls into, the rest may be used: the exact times see to it.
+            allowed[place] &= night.mjd[at] > pin_mjd - 1.0 / MINUTES_PER_DAY
     return np.asarray(allowed)
 
 

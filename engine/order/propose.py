@@ -15,6 +15,7 @@ from engine.order.blocks import TICKS_PER_MIN, Blocks, cut
 from engine.order.construct import TEMPERS, URGENT, VALUE_FIRST, Start, Temper, Turn, greedies
 from engine.order.improve import Effort, Search, Timed
 from engine.order.order import Order, PlacedExposures, Visit
+from engine.order.pins import PIN_WORTH
 from engine.order.prices import price_of_time
 from engine.order.problem import Problem
 from engine.order.reasons import left_out, reason_for
@@ -29,6 +30,8 @@ HYSTERESIS = 0.003
 CLEAR_GAIN = 0.01
 # An order that loses more than this share of its minutes is made afresh.
 BROKEN_SHARE = 0.05
+# Pinned targets that are a second or two apart from their time are as good as in time.
+PIN_MATTERS = PIN_WORTH / 1000.0
 # Two first orders are made exact beside the one that was searched: the plain rules, always.
 PLAIN = (VALUE_FIRST, URGENT)
 # Of the time used before the search, the share that is kept back for what comes after it.
@@ -100,12 +103,20 @@ def _carried_on(
     search = Search(blocks, problem.travel, start, ahead, seed)
     better = _exact(problem, blocks, search.run(effort.with_reserve(RESERVE), 0.0, HYSTERESIS))
     wanted_first = problem.rules.first is not None
-    if wanted_first or better.value() > (1.0 + CLEAR_GAIN) * kept.value():
+    if wanted_first or _is_better(better, kept, CLEAR_GAIN):
         kept = better
     if lost_share < BROKEN_SHARE and not wanted_first:
         return kept
     fresh = _afresh(problem, blocks, effort, seed)
-    return fresh if fresh.value() > (1.0 + KEEPING_BONUS) * kept.value() else kept
+    return fresh if _is_better(fresh, kept, KEEPING_BONUS) else kept
+
+
+def _is_better(one: Timeline, other: Timeline, by_share: float) -> bool:
+    """Say whether an order keeps the observer's times better, or is worth so much more."""
+    ahead = one.pins_worth() - other.pins_worth()
+    if abs(ahead) > PIN_MATTERS:
+        return ahead > 0.0
+    return one.value() > (1.0 + by_share) * other.value()
 
 
 def _turn_ahead(problem: Problem, blocks: Blocks, order: Order, start: Start) -> Turn:
@@ -146,7 +157,8 @@ def _afresh(problem: Problem, blocks: Blocks, effort: Effort, seed: int) -> Time
         # Always: once gaps are filled, a plain rule may come out ahead from well behind.
         turn = turns[TEMPERS.index(temper)]
         plain = _exact(problem, blocks, _as_timed(problem, blocks, start, turn))
-        timeline = max(timeline, plain, key=Timeline.value)
+        if _is_better(plain, timeline, 0.0):
+            timeline = plain
     return timeline
 
 
@@ -161,7 +173,7 @@ def _start(problem: Problem, blocks: Blocks) -> Start:
     first: tuple[int, ...] = ()
     if problem.rules.first is not None:
         wanted = problem.night.target_index(problem.rules.first)
-        own = np.flatnonzero(blocks.target == wanted)[:1]
+        own = np.flatnonzero(blocks.target == wanted)[: None if problem.rules.hold else 1]
         first = tuple(int(block) for block in own)
     tick = min(int(np.ceil(problem.start_min * TICKS_PER_MIN)), blocks.ticks)
     return Start(problem.pointing, tick, first)

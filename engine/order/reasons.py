@@ -29,7 +29,7 @@ def reason_for(problem: Problem, visit: Visit) -> str:
     index = night.target_index(visit.target)
     last = night.index_at(visit.end_mjd)
     ahead = night.limits[index, last:] != 0
-    parts = []
+    parts = _decided(problem, index)
     if ahead.any():
         place = last + int(np.argmax(ahead))
         minutes = (night.mjd[place] - visit.start_mjd) * MINUTES_PER_DAY
@@ -44,6 +44,14 @@ def reason_for(problem: Problem, visit: Visit) -> str:
     elif target.priority == 5:
         parts.append("first priority")
     return ", ".join(parts)
+
+
+def _decided(problem: Problem, index: int) -> list[str]:
+    """Return what the observer decided that puts a target where it is."""
+    rules, name = problem.rules, problem.targets[index].name
+    if name in rules.pinned:
+        return [f"pinned to {local_time(problem, rules.pinned[name])}"]
+    return ["held"] if rules.hold and rules.first == name else []
 
 
 def _ending(problem: Problem, index: int, place: int) -> str:

@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -17,6 +17,7 @@ from engine.order.blocks import TICKS_PER_MIN, Blocks
 from engine.order.improve import Timed
 from engine.order.merit import exposure_worth
 from engine.order.order import Order, PlacedExposures
+from engine.order.pins import pin_worths
 from engine.order.problem import Problem
 from engine.times import MINUTES_PER_DAY
 
@@ -26,6 +27,8 @@ Floats = NDArray[np.float64]
 PUT_OFF_MIN = 1.0
 # How much later than it arrives a run may begin when a limit still forbids it.
 WAIT_MIN = 2
+# A pinned target that would be late by less than this is made room for.
+SECONDS_LATE_MIN = 5.0
 # Gaps shorter than this are not worth filling; how often in each, and at which shares of it.
 GAP_MIN, FILLINGS = 0.8, 400
 SHARES = (0.0, 0.05, 0.1, 0.2, 0.35, 0.5, 0.65, 0.8)
@@ -63,8 +66,33 @@ class Timeline:
         """Time blocks exactly, in turn: what no longer fits is left to the filling."""
         start_tick = self.problem.start_min * TICKS_PER_MIN
         for block, tick in zip(timed.blocks, timed.ticks, strict=True):
+            target, parts = int(blocks.target[block]), blocks.parts[block]
+            if target in self.problem.pins:
+                self._keep_appointment(target, parts)
             wanted_min = (max(float(tick), start_tick)) / TICKS_PER_MIN
-            self._append(int(blocks.target[block]), blocks.parts[block], wanted_min)
+            self._append(target, parts, wanted_min)
+
+    def _keep_appointment(self, target: int, parts: Sequence[tuple[int, int]]) -> None:
+        """Give up what comes before a pinned target and would make it late.
+
+        Blocks are timed to half a minute before; this is for the last seconds.
+        """
+        problem = self.problem
+        change_min = problem.lines[parts[0][0]].change_min
+        while self.stays:
+            last = self.stays[-1]
+            leave_min = problem.pins[target] - change_min
+            way_min = problem.travel.exact_min(last.target, last.end_min, target, leave_min)
+            late_min = last.end_min + way_min - leave_min
+            if last.target == target or not 0.0 < late_min < SECONDS_LATE_MIN:
+                return
+            run = last.runs.pop()
+            self.left[run.line] += 1
+            last.end_min -= problem.lines[run.line].each_min
+            if run.count > 1:
+                last.runs.append(replace(run, count=run.count - 1))
+            if not last.runs or not self._is_still_long_enough(last):
+                self._give_back(self.stays.pop())
 
     def repeat(self, order: Order) -> float:
         """Take over the visits of an order still ahead, at their times; return the share lost.
@@ -136,7 +164,9 @@ class Timeline:
     ) -> Run | None:
         """Return a run as soon as a mount that leaves a target can begin it; None if none fits."""
         problem, each = self.problem, self.problem.lines[line]
-        begin_min = ready_min + each.change_min
+        # What is pinned begins at its moment, to the second.
+        pin_min = problem.pins.get(each.target, 0.0)
+        begin_min = max(ready_min + each.change_min, pin_min)
         for _ in range(WAIT_MIN + 1):
             # A german mount may have to turn over when the begin slips across the meridian.
             way_min = problem.travel.exact_min(here, leave_min, each.target, begin_min)
@@ -166,6 +196,14 @@ class Timeline:
         )
         return bool(stay.end_min - stay.runs[0].begin_min >= least - 1e-6)
 
+    def _is_still_long_enough(self, stay: Stay) -> bool:
+        least_min = self.problem.contiguous_min[stay.target]
+        return bool(stay.end_min - stay.runs[0].begin_min >= least_min - 1e-6)
+
+    def _give_back(self, stay: Stay) -> None:
+        for run in stay.runs:
+            self.left[run.line] += run.count
+
     def _take(self, stay: Stay) -> None:
         for run in stay.runs:
             self.left[run.line] -= run.count
@@ -176,9 +214,7 @@ class Timeline:
         for at in (place + 1, place):
             if 0 < at < len(self.stays):
                 before, after = self.stays[at - 1], self.stays[at]
-                # A run across a meridian flip or a wait stays a visit of its own.
-                gap_min = after.runs[0].begin_min - before.end_min
-                if before.target == after.target and gap_min < 1.0:
+                if _without_break(before, after):
                     before.runs += after.runs
                     before.end_min = after.end_min
                     del self.stays[at]
@@ -289,12 +325,17 @@ class Timeline:
             end_min = run.begin_min + run.count * each.each_min
             stay = Stay(each.target, leave_min, end_min, [run])
             if after is None or self._reaches(end_min, each.target, after):
-                adjacent = here == each.target or (
-                    after is not None and after.target == each.target
-                )
-                return stay if adjacent or self._long_enough(stay) else None
+                return stay if self._is_one_with(place, stay) or self._long_enough(stay) else None
             run = Run(run.line, run.count - 1, run.begin_min)
         return None
+
+    def _is_one_with(self, place: int, stay: Stay) -> bool:
+        """Say whether a stay put in a place goes on with a neighbour's without a break."""
+        before = self.stays[place - 1] if place else None
+        after = self.stays[place] if place < len(self.stays) else None
+        return (before is not None and _without_break(before, stay)) or (
+            after is not None and _without_break(stay, after)
+        )
 
     def _reaches(self, end_min: float, target: int, after: Stay) -> bool:
         first = after.runs[0]
@@ -303,6 +344,18 @@ class Timeline:
         return end_min + way_min + change_min <= first.begin_min + 1e-9
 
     # What it is worth
+
+    def pins_worth(self) -> float:
+        """Return what it counts to have begun the pinned targets when they were wanted."""
+        problem = self.problem
+        begins: dict[int, float] = {}
+        for stay in reversed(self.stays):
+            begins[stay.target] = stay.runs[0].begin_min
+        return sum(
+            float(pin_worths(problem, target, np.array(begins[target])))
+            for target in problem.pins
+            if target in begins
+        )
 
     def value(self) -> float:
         """Return what the stays are worth by the documented merit, exposure by exposure."""
@@ -322,6 +375,12 @@ class Timeline:
             if bonus > 0.0 and not self.left[own].any():
                 total += float(bonus)
         return total
+
+
+def _without_break(before: Stay, after: Stay) -> bool:
+    """Say whether two stays are one: a meridian flip or a wait between makes them two."""
+    gap_min = after.runs[0].begin_min - before.end_min
+    return before.target == after.target and gap_min < 1.0
 
 
 @dataclass(frozen=True, slots=True)
