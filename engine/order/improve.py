@@ -176,7 +176,7 @@ class Sequence:
         there = int(self._blocks.target[block])
         travel = self._travel
         which = (
-            min(minute // travel.step_min, len(travel.tables) - 1)
+            travel.stretch(minute)
             if travel.step_min
             else travel.west[here, minute] ^ travel.west[there, minute]
         )

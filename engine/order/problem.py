@@ -6,7 +6,7 @@ night. Minutes are counted from the grid's minute at or before now.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -101,8 +101,15 @@ def build_problem(
     *,
     from_mjd: float,
     pointing: str | None,
+    travel: Travel | None = None,
 ) -> Problem:
-    """Return the rest of a night from a moment (UTC MJD) on, ready for the search."""
+    """Return the rest of a night from a moment (UTC MJD) on, ready for the search.
+
+    ``travel`` is the night's, if the caller keeps it: at 500 targets it is most of the work.
+    """
+    if rules.first is not None and all(each.name != rules.first for each in night.targets):
+        # A target that has left the list can't come first.
+        rules = replace(rules, first=None, hold=False)
     start_mjd = max(from_mjd, float(night.mjd[0]))
     # A hair of tolerance: an MJD is good to about a microsecond.
     first = int(np.searchsorted(night.mjd, start_mjd + 1e-9, side="right")) - 1
@@ -128,7 +135,7 @@ def build_problem(
         worth=_worth(night, outlook, lines, allowed, first),
         bonus=_bonuses(night, plans, of_target, allowed),
         contiguous_min=np.array([each.contiguous_min or 0.0 for each in night.targets]),
-        travel=travel_of(night, first),
+        travel=(travel or travel_of(night)).since(first),
         pointing=len(night.targets) if pointing is None else night.target_index(pointing),
         pins={
             index: (rules.pinned[target.name] - float(night.mjd[first])) * MINUTES_PER_DAY

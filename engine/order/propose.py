@@ -38,6 +38,7 @@ PLAIN = (VALUE_FIRST, URGENT)
 RESERVE = 0.8
 # Milliseconds when none are given: for lists up to so many targets, and for longer ones.
 SHORT_LIST = 100
+IDLE_MS = 50.0
 COLD_MS, WARM_MS = (50.0, 200.0), (10.0, 40.0)
 
 
@@ -45,11 +46,15 @@ def propose(
     problem: Problem,
     in_force: Order | None = None,
     *,
+    afresh: bool = False,
     budget_ms: float | None = None,
     steps: int | None = None,
     seed: int = 0,
 ) -> Order:
     """Return an order for the rest of the night; the best found, never an unlawful one.
+
+    An order in force is carried on and changed for clear gains alone; ``afresh`` tries one made
+    from nothing against it, which is done anyhow when much of it has become impossible.
 
     The search stops after ``budget_ms`` or ``steps``, whichever comes first. With ``steps`` alone
     the same seed gives the same order on every machine; with neither, the time fits the list.
@@ -62,9 +67,68 @@ def propose(
     effort = Effort(until_s=until_s, steps=steps, begun_s=begun_s)
     blocks = cut(problem)
     if in_force is not None and in_force.visits:
-        timeline = _carried_on(problem, blocks, in_force, effort, seed)
+        timeline = _carried_on(problem, blocks, in_force, effort, seed, afresh)
     else:
         timeline = _afresh(problem, blocks, effort, seed)
+    return _as_order(problem, timeline, begun_s)
+
+
+def retime(problem: Problem, in_force: Order) -> Order | None:
+    """Return an order with its visits timed anew and its gaps filled, without any search.
+
+    It takes a tenth of the time. None when what is ahead can't be kept, or the observer wants
+    something first: then it has to be searched.
+    """
+    begun_s = time.perf_counter()
+    kept = Timeline(problem)
+    if kept.repeat(in_force) >= BROKEN_SHARE:
+        return None
+    if not _begins_as_wanted(kept) or _lacks_pinned(kept):
+        return None
+    kept.fill()
+    kept.set_out()
+    return _as_order(problem, kept, begun_s)
+
+
+def refine(problem: Problem, in_force: Order, *, seed: int, budget_ms: float = IDLE_MS) -> Order:
+    """Return a clearly better order than the one in force, or that one: for idle moments.
+
+    Each seed looks elsewhere; what is found is worth a share of `CLEAR_GAIN` more, or is let go.
+    """
+    begun_s = time.perf_counter()
+    effort = Effort(until_s=begun_s + budget_ms / 1e3, begun_s=begun_s)
+    kept = Timeline(problem)
+    kept.repeat(in_force)
+    kept.fill()
+    kept.set_out()
+    blocks = cut(problem)
+    start = _start(problem, blocks)
+    ahead = _turn_ahead(problem, blocks, in_force, start)
+    search = Search(blocks, problem.travel, start, ahead, seed)
+    better = _exact(problem, blocks, search.run(effort.with_reserve(RESERVE)))
+    return _as_order(problem, better, begun_s) if _is_better(better, kept, CLEAR_GAIN) else in_force
+
+
+def _begins_as_wanted(timeline: Timeline) -> bool:
+    """Say whether an order begins with what the observer wants first, if she wants anything."""
+    first = timeline.problem.rules.first
+    if first is None:
+        return True
+    wanted = timeline.problem.night.target_index(first)
+    return bool(timeline.stays) and timeline.stays[0].target == wanted
+
+
+def _lacks_pinned(timeline: Timeline) -> bool:
+    """Say whether an order leaves out a pinned target of which something may be exposed."""
+    problem, visited = timeline.problem, {stay.target for stay in timeline.stays}
+    return any(
+        (problem.run_end[problem.lines_of(target)] >= 0).any()
+        for target in problem.pins
+        if target not in visited
+    )
+
+
+def _as_order(problem: Problem, timeline: Timeline, begun_s: float) -> Order:
     visits = [_visit(problem, stay) for stay in timeline.stays]
     visits = [replace(visit, reason=reason_for(problem, visit)) for visit in visits]
     return Order(
@@ -87,12 +151,12 @@ def plain_order(problem: Problem, temper: Temper) -> Timeline:
 
 
 def _carried_on(
-    problem: Problem, blocks: Blocks, in_force: Order, effort: Effort, seed: int
+    problem: Problem, blocks: Blocks, in_force: Order, effort: Effort, seed: int, afresh: bool
 ) -> Timeline:
     """Return the order in force carried on, changed for clear gains alone.
 
-    A fresh order is tried when what is ahead has become impossible, and taken for a gain of more
-    than the bonus for keeping.
+    A fresh order is tried when it is asked for or what is ahead has become impossible, and taken
+    for a gain of more than the bonus for keeping.
     """
     kept = Timeline(problem)
     lost_share = kept.repeat(in_force)
@@ -102,17 +166,18 @@ def _carried_on(
     ahead = _turn_ahead(problem, blocks, in_force, start)
     search = Search(blocks, problem.travel, start, ahead, seed)
     better = _exact(problem, blocks, search.run(effort.with_reserve(RESERVE), 0.0, HYSTERESIS))
-    wanted_first = problem.rules.first is not None
-    if wanted_first or _is_better(better, kept, CLEAR_GAIN):
+    if _is_better(better, kept, CLEAR_GAIN):
         kept = better
-    if lost_share < BROKEN_SHARE and not wanted_first:
+    if lost_share < BROKEN_SHARE and _begins_as_wanted(kept) and not afresh:
         return kept
     fresh = _afresh(problem, blocks, effort, seed)
     return fresh if _is_better(fresh, kept, KEEPING_BONUS) else kept
 
 
 def _is_better(one: Timeline, other: Timeline, by_share: float) -> bool:
-    """Say whether an order keeps the observer's times better, or is worth so much more."""
+    """Say whether an order does more of what the observer wants, or is worth so much more."""
+    if _begins_as_wanted(one) != _begins_as_wanted(other):
+        return _begins_as_wanted(one)
     ahead = one.pins_worth() - other.pins_worth()
     if abs(ahead) > PIN_MATTERS:
         return ahead > 0.0

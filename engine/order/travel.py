@@ -8,7 +8,7 @@ altitude, so the times change slowly through the night.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -30,10 +30,13 @@ STEP_MIN = 20
 class Travel:
     """Travel times in minutes, settled, between N targets and from nowhere in particular (row N).
 
+    Made once a night; ``since`` counts its minutes from a later place in the night's grid,
+    ``first``.
+
     ``tables`` (S, N+1, N+1) is read at a place that depends on the mount: german, 0 on the same
     side of the meridian and 1 across it, by ``west`` (N+1, T); altazimuth, the stretch of
-    ``step_min`` minutes; fork, always 0. The search reads the tables; an order's times are made
-    with `exact_min`.
+    ``step_min`` minutes of the whole night; fork, always 0. The search reads the tables; an
+    order's times are made with `exact_min`.
     """
 
     night: Night
@@ -42,10 +45,19 @@ class Travel:
     west: NDArray[np.int64]
     step_min: int
 
+    def since(self, first: int) -> Travel:
+        """Return the same times with minutes counted from a place in the night's grid."""
+        return replace(self, first=first, west=self.west[:, first - self.first :])
+
+    def stretch(self, minute: int) -> int:
+        """Return the place of an altazimuth mount's table for a minute."""
+        return min((self.first + minute) // self.step_min, len(self.tables) - 1)
+
     def between(self, here: Places, there: Places, minute: Places) -> Singles:
         """Return the minutes from targets to targets at minutes; arrays broadcast."""
         if self.step_min:
-            which = np.minimum(minute // self.step_min, len(self.tables) - 1)
+            stretch = (self.first + minute) // self.step_min
+            which = np.minimum(stretch, len(self.tables) - 1)
         else:
             which = self.west[here, minute] ^ self.west[there, minute]
         found: Singles = self.tables[which, here, there]
@@ -78,24 +90,24 @@ class Travel:
         return float(max(ways_deg) / telescope.slew_deg_per_s / 60.0 + settle_min)
 
 
-def travel_of(night: Night, first: int) -> Travel:
-    """Return the travel times of a night from a place in its grid on."""
+def travel_of(night: Night) -> Travel:
+    """Return the travel times of a whole night."""
     mount = night.observatory.telescope.mount
-    minutes, targets = len(night.mjd) - first, len(night.targets)
+    minutes, targets = len(night.mjd), len(night.targets)
     west = np.zeros((targets + 1, minutes), dtype=np.int64)
     step_min = 0
     if mount == "altazimuth":
         most = max(TABLE_ENTRIES // (targets + 1) ** 2, 1)
         step_min = max(STEP_MIN, -(-minutes // most))
-        ways_deg = [_altazimuth_deg(night, first + at) for at in range(0, minutes, step_min)]
+        ways_deg = [_altazimuth_deg(night, at) for at in range(0, minutes, step_min)]
     else:
-        ways_deg = _equatorial_deg(night, first)
+        ways_deg = _equatorial_deg(night)
         if mount == "german":
-            west[:-1] = night.where.hour_angle_h[:, first:] >= 0.0
+            west[:-1] = night.where.hour_angle_h >= 0.0
         else:
             # A fork never turns over, so the sides never differ.
             ways_deg = ways_deg[:1]
-    return Travel(night, first, _as_minutes(night, np.array(ways_deg)), west, step_min)
+    return Travel(night, 0, _as_minutes(night, np.array(ways_deg)), west, step_min)
 
 
 def _as_minutes(night: Night, ways_deg: NDArray[np.float64]) -> Singles:
@@ -117,9 +129,9 @@ def _as_minutes(night: Night, ways_deg: NDArray[np.float64]) -> Singles:
     return tables
 
 
-def _equatorial_deg(night: Night, first: int) -> list[NDArray[np.float64]]:
+def _equatorial_deg(night: Night) -> list[NDArray[np.float64]]:
     """Return how far (deg, N x N) the slower axis turns on one side of the meridian and across."""
-    angles = night.where.hour_angle_h[:, first] * 15.0
+    angles = night.where.hour_angle_h[:, 0] * 15.0
     declinations = night.places.dec_deg
     turn = np.abs(angles[:, None] - angles[None, :])
     turn = np.minimum(turn, 360.0 - turn)

@@ -16,7 +16,7 @@ from engine.image import ImageModel
 from engine.log import Exposure, NightState, TargetAdded
 from engine.logbook import Logbook
 from engine.night import Night, Outlook, Outlooks, Plans, open_night, plans
-from engine.order import Problem, build_problem, propose
+from engine.order import Problem, build_problem, propose, travel_of
 from engine.positions import Air
 from engine.seeing import SeeingForecast, SeeingMeasurement, nowcast
 from engine.times import HOURS_PER_DAY
@@ -58,6 +58,7 @@ class Planner:
         self.night: Night = open_night(self.logbook, night, air)
         self.model = ImageModel(logbook.observatory, self.night.air)
         self._outlooks = Outlooks(self.night, self.model)
+        self._travel = travel_of(self.night)
         self._done_before = done_before
         self._as_read, self._added = logbook, added
 
@@ -115,6 +116,7 @@ class Planner:
             from_mjd=from_mjd,
             # A target that has left the list since is nowhere in particular.
             pointing=sent_to if sent_to in known else None,
+            travel=self._travel,
         )
 
 
