@@ -219,7 +219,8 @@ def repeat(watch: Watch) -> Event:
 def keep_cut_off(watch: Watch) -> Event | None:
     """Say that the exposure that was open when the console ended was not harmed.
 
-    If its time is over it is logged as good; if not, the count-down goes on.
+    If its time is over it is logged as good; if not, the count-down goes on. Of the rest of its run
+    nothing is counted that was not watched either.
     """
     exposing = watch.state.exposing
     if watch.stage is not Stage.CUT_OFF or exposing is None:
@@ -228,9 +229,11 @@ def keep_cut_off(watch: Watch) -> Event | None:
     if watch.clock.now_mjd() < end_mjd:
         watch.vouch()
         return None
-    return watch.end_exposure(
+    event = watch.end_exposure(
         Ending(end_mjd, "good", "the console was away at its end; kept by the observer")
     )
+    watch.tick()
+    return event
 
 
 def lose_cut_off(watch: Watch) -> Event:

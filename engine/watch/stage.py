@@ -37,8 +37,9 @@ class NextExposure:
 def stage_of(state: NightState, doubted: bool) -> Stage:
     """Return the stage of a night.
 
-    ``doubted`` says that the open exposure began before this console took the night over, and that
-    the observer has not yet said what became of it: only she knows, the camera was not watched.
+    ``doubted`` says that the open exposure began before this console took the night over, or that
+    the clock jumped over its end, and that the observer has not yet said what became of it: only
+    she knows, the camera was not watched.
     """
     if state.exposing is not None:
         return Stage.CUT_OFF if doubted else Stage.EXPOSING

@@ -14,10 +14,12 @@ from typing import Protocol
 
 from engine.clock import Clock
 from engine.log import (
+    ClockStep,
     Close,
     Event,
     ExposureStart,
     NightState,
+    OpenExposure,
     OrderProposed,
     RunStop,
     fold,
@@ -35,6 +37,9 @@ from engine.watch.stage import NextExposure, Stage, next_in_run, stage_of
 REPLAN_MIN = 10.0
 # How many visits of a new order are written to the log.
 ORDER_LOGGED = 8
+# Times in the log are rounded to the millisecond, so that one of now may read as one before it.
+ROUNDING_DAYS = 0.001 / SECONDS_PER_DAY
+UNWATCHED = "its next exposure came due while the console was away"
 
 
 class Pen(Protocol):
@@ -79,6 +84,8 @@ class Watch:
         self._pen = pen
         self._state = fold(events)
         self._doubted_n = self._state.exposing.n if self._state.exposing else 0
+        # Since when somebody has seen what the camera does: nothing before it is counted unasked.
+        self._watched_mjd = clock.now_mjd() - ROUNDING_DAYS
         self._wanted: str | None = "the night begins"
         self._kept_plans: tuple[int, Plans] = (-1, {})
         self._logbook: Logbook | None = None
@@ -150,13 +157,22 @@ class Watch:
         stamped = self._pen.submit(event)
         self._state = self._state.after(stamped)
         self.version += 1
+        if isinstance(event, ClockStep):
+            self._doubt_what_was_jumped_over()
         if because:
             self._wanted = because
         return stamped
 
+    def _doubt_what_was_jumped_over(self) -> None:
+        """Leave to the observer an exposure whose end the clock has jumped over, as in a sleep."""
+        now_mjd, exposing = self.clock.now_mjd(), self._state.exposing
+        self._watched_mjd = now_mjd - ROUNDING_DAYS
+        if exposing is not None and _end_mjd(exposing) <= now_mjd:
+            self._doubted_n = exposing.n
+
     def vouch(self) -> None:
         """Take the observer's word that the exposure open when the console came back still runs."""
-        self._doubted_n = 0
+        self._settle_doubt()
         self.version += 1
 
     def renew(self, logbook: Logbook, because: str) -> None:
@@ -170,10 +186,14 @@ class Watch:
         began = self._state.exposing
         if began is None:
             raise ValueError("no exposure is under way")
-        self._doubted_n = 0
+        self._settle_doubt()
         seeing = self.planner.forecast(self._state, ending.end_mjd).now_arcsec
         record = exposure_record(self.planner.night, self.planner.model, began, ending, seeing)
         return self.submit(record, because="an exposure ended")
+
+    def _settle_doubt(self) -> None:
+        if self._doubted_n:
+            self._doubted_n, self._watched_mjd = 0, self.clock.now_mjd() - ROUNDING_DAYS
 
     def close(self, why: str = "left by the observer") -> str | None:
         """Log that the console was left, and wait for the disk; return what it could not take.
@@ -203,7 +223,7 @@ class Watch:
     def _one_due(self, now_mjd: float) -> bool:
         stage, exposing = self.stage, self._state.exposing
         if stage is Stage.EXPOSING and exposing is not None:
-            end_mjd = exposing.start_mjd + exposing.seconds / SECONDS_PER_DAY
+            end_mjd = _end_mjd(exposing)
             if now_mjd >= end_mjd:
                 self.end_exposure(Ending(end_mjd, "good"))
                 return True
@@ -221,6 +241,10 @@ class Watch:
         step, start_mjd = due
         if now_mjd < start_mjd:
             return False
+        if start_mjd < self._watched_mjd:
+            # Whether the camera went on by itself is not known, so nothing of it is counted.
+            self.submit(RunStop(of=run.n, why=UNWATCHED), because="a run was cut off")
+            return True
         programmes = {each.name: each.programme for each in self.planner.night.targets}
         self.submit(
             ExposureStart(
@@ -272,6 +296,11 @@ class Watch:
                     why=plan.because,
                 )
             )
+
+
+def _end_mjd(exposing: OpenExposure) -> float:
+    """Return when an exposure will have had its time (UTC MJD)."""
+    return exposing.start_mjd + exposing.seconds / SECONDS_PER_DAY
 
 
 def _first_ahead(plan: Plan, now_mjd: float) -> list[str]:

@@ -218,6 +218,8 @@ def test_an_exposure_cut_off_is_the_observers_to_judge(
         assert trial.watch.stage is Stage.CUT_OFF
         await trial.press(key)
         assert trial.watch.state.exposures[-1].outcome == outcome
+        await trial.wait(600.0)
+        assert trial.watch.state.run is None
 
     play(folder, dies, clock=clock)
     clock.advance_s(3600.0)

@@ -200,7 +200,7 @@ def _cut_off(watch: Watch, width: int) -> list[Line]:
             Span(f", begun {hhmm(watch, exposing.start_mjd)}, {when}", "text"),
         ),
         line(
-            " The console ended during it; the camera was not watched.  ",
+            " The console was away; the camera was not watched.  ",
             Span("K", "accent"), " keep it   ", Span("L", "accent"), " it is lost",
         ),
     ]  # fmt: skip
