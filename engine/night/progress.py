@@ -58,8 +58,9 @@ Plans = dict[str, tuple[Progress, ...]]
 def plans(targets: Iterable[Target], taken: Iterable[Taken]) -> Plans:
     """Return every target's plan with what was taken counted in, by target name.
 
-    An exposure counts for the line of its filter and length. One of another length counts for
-    the line of its filter that lacks most: the observer chose that length for that plan.
+    An exposure counts for the line of its filter and length; where a plan has several such, for
+    the first that is not complete. One of another length counts for the line of its filter that
+    lacks most: the observer chose that length for that plan.
     Exposures of targets or filters that are in no plan count for nothing.
     """
     lines = {
@@ -72,11 +73,10 @@ def plans(targets: Iterable[Target], taken: Iterable[Taken]) -> Plans:
         if not same_filter:
             continue
         same_length = [i for i in same_filter if plan[i].seconds == exposure.seconds]
-        place = (
-            same_length[0]
-            if same_length
-            else max(same_filter, key=lambda i: plan[i].planned - plan[i].done)
-        )
+        if same_length:
+            place = next((i for i in same_length if plan[i].remaining), same_length[0])
+        else:
+            place = max(same_filter, key=lambda i: plan[i].planned - plan[i].done)
         line = plan[place]
         worth = 1.0 if exposure.credit is None else exposure.credit
         plan[place] = replace(line, done=line.done + 1, credit=line.credit + worth)

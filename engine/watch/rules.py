@@ -86,7 +86,10 @@ def _standing(state: NightState) -> _Standing:
     }
     standing = _Standing()
     for each in state.overrides:
-        if each.action != "pin" or begun.get(each.target, 0) < each.n:
+        if each.action == "pin" and begun.get(each.target, 0) > each.n:
+            # It has served; what it took the place of does not come back.
+            standing.release(each.target)
+        else:
             standing.take(each)
     return standing
 

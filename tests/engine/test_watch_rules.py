@@ -40,6 +40,16 @@ def test_a_run_that_was_undone_leaves_the_pin() -> None:
     assert is_pinned(state, "A")
 
 
+def test_a_pin_that_has_served_does_not_bring_back_the_drop_it_undid() -> None:
+    state = after(
+        Override(action="drop", target="A"),
+        Override(action="pin", target="A"),
+        Pointing(target="A"),
+        run_on("A"),
+    )
+    assert not rules_from(state, NOW_MJD).dropped
+
+
 def test_a_run_under_way_comes_before_a_pin() -> None:
     state = after(Pointing(target="B"), run_on("B"), Override(action="pin", target="A"))
     assert rules_from(state, NOW_MJD).first == "B"
