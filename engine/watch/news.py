@@ -17,14 +17,14 @@ SOON_MIN = 150.0
 SAID_AT_MOST = 6
 
 
-def news(night: Night, before: Plan, after: Plan, plans: Plans) -> tuple[str, ...]:
+def news(before: Plan, after: Plan, plans: Plans) -> tuple[str, ...]:
     """Return what an observer would want to know about a new plan, the most important first."""
     said = [
         *_next_visit(before.order, after.order),
         *_seeing(before, after),
-        *_softness(night, before, after, plans),
+        *_softness(before, after, plans),
         *_left_and_entered(before.order, after.order),
-        *_moved(night, before.order, after.order),
+        *_moved(after.night, before.order, after.order),
     ]
     return tuple(said[:SAID_AT_MOST])
 
@@ -48,14 +48,20 @@ def _seeing(before: Plan, after: Plan) -> list[str]:
     return [f'seeing {was:.2f}" to {now:.2f}"']
 
 
-def _softness(night: Night, before: Plan, after: Plan, plans: Plans) -> list[str]:
+def _softness(before: Plan, after: Plan, plans: Plans) -> list[str]:
+    night = after.night
+    if before.night.observatory.filters != night.observatory.filters:
+        return []
     # A target is judged when it was going to be exposed, or now.
     visits = {
         visit.target: visit.exposures[0].start_mjd + visit.exposures[0].seconds / SECONDS_PER_DAY
         for visit in reversed(before.order.visits)
     }
     softened, sharpened = [], []
+    places = {target.name: index for index, target in enumerate(before.night.targets)}
     for index, target in enumerate(night.targets):
+        if target.name not in places:
+            continue  # it came in since: nothing was said of it before
         at = night.index_at(max(visits.get(target.name, 0.0), after.made_mjd))
         needed = [
             night.observatory.filter_index(line.filter)
@@ -64,7 +70,7 @@ def _softness(night: Night, before: Plan, after: Plan, plans: Plans) -> list[str
         ]
         if not needed or night.limits[index, at]:
             continue
-        was = bool(before.outlook.soft[needed, index, at].all())
+        was = bool(before.outlook.soft[needed, places[target.name], at].all())
         now = bool(after.outlook.soft[needed, index, at].all())
         if now and not was:
             softened.append(target.name)

@@ -4,17 +4,21 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
-from engine.night import Outlook
+from engine.night import Night, Outlook
 from engine.order import Order
 from engine.seeing import SeeingForecast
 
 
 @dataclass(frozen=True, slots=True)
 class Plan:
-    """Forecast, outlook and order made at one moment (UTC MJD), why, and what has moved since."""
+    """Forecast, outlook and order made at one moment (UTC MJD), why, and what has moved since.
+
+    ``night`` holds the tables they were made from: their targets and filters are the outlook's.
+    """
 
     made_mjd: float
     because: str
+    night: Night
     forecast: SeeingForecast
     outlook: Outlook
     order: Order

@@ -99,10 +99,10 @@ class Planner:
         outlook = self.outlook(forecast.at(self.night.mjd)[0])
         problem = self.problem(state, outlook, now_mjd)
         order = propose(problem, in_force=before.order if before else None)
-        fresh = Plan(now_mjd, because, forecast, outlook, order)
+        fresh = Plan(now_mjd, because, self.night, forecast, outlook, order)
         if before is None:
             return fresh
-        return replace(fresh, news=news(self.night, before, fresh, problem.plans))
+        return replace(fresh, news=news(before, fresh, problem.plans))
 
     def problem(self, state: NightState, outlook: Outlook, from_mjd: float) -> Problem:
         """Return the rest of the night from a moment (UTC MJD) as the search takes it."""

@@ -2,65 +2,30 @@
 
 from __future__ import annotations
 
-import shutil
-from collections.abc import Iterator
-from contextlib import contextmanager
 from pathlib import Path
 
 import pytest
 
 from engine.clock import HandClock
 from engine.log import ClockStep
-from engine.logbook import load_logbook, sample_logbook
-from engine.positions import almanac
-from engine.rehearsal import NIGHT
-from engine.times import MINUTES_PER_DAY
-from engine.watch import Stage, Watch, acts, open_watch
+from engine.watch import Stage, Watch, acts
 from engine.watch.watch import UNWATCHED
+from tests.engine.watch_nights import a_console, evening_clock, plan, small_logbook
 
-TARGETS = """
-[[target]]
-name = "Near"
-ra = "06:29:34"
-dec = "-31:17:00"
-exposures = [ { filter = "B", seconds = 30, count = 2 }, { filter = "V", seconds = 20, count = 2 } ]
-"""
 # The camera's readout and the turn of the wheel to B, and a second more.
 STARTS_S, EXPOSURE_S, READS_S = 7.0, 30.0, 9.0
 
 
 @pytest.fixture
 def folder(tmp_path: Path) -> Path:
-    """Return a logbook of the sample's observatory with one target."""
-    shutil.copy(sample_logbook() / "observatory.toml", tmp_path)
-    (tmp_path / "targets.toml").write_text(TARGETS)
-    return tmp_path
+    """Return a small logbook."""
+    return small_logbook(tmp_path)
 
 
 @pytest.fixture
 def clock(folder: Path) -> HandClock:
-    """Return a clock twenty minutes after nautical dusk."""
-    dusk = almanac(load_logbook(folder).observatory.site, NIGHT).nautical_dusk
-    assert dusk is not None
-    return HandClock(dusk + 20.0 / MINUTES_PER_DAY)
-
-
-@contextmanager
-def a_console(folder: Path, clock: HandClock) -> Iterator[Watch]:
-    """Have the night open; at the end it is left as a power cut leaves it, without a word."""
-    watch = open_watch(folder, clock, ("A. Tester",), NIGHT).watch
-    plan(watch)
-    try:
-        yield watch
-    finally:
-        watch._pen.close()
-
-
-def plan(watch: Watch) -> None:
-    """Make the plan that is wanted."""
-    work = watch.planning()
-    if work is not None:
-        watch.adopt(work())
+    """Return a clock in its evening."""
+    return evening_clock(folder)
 
 
 def pass_s(watch: Watch, clock: HandClock, seconds: float) -> None:
