@@ -11,13 +11,13 @@ import importlib
 import os
 import sys
 from collections.abc import Callable, Sequence
-from datetime import date
 from importlib.metadata import version
+from io import TextIOWrapper
 from pathlib import Path
 from typing import TypeVar
 
 from engine.errors import WarmroomError
-from engine.times import mjd_from_iso
+from tui import reading
 from tui.commands import COMMANDS, LOOK, Command, Option
 
 T = TypeVar("T")
@@ -25,6 +25,10 @@ T = TypeVar("T")
 
 def main(words: Sequence[str] | None = None) -> int:
     """Run warmroom with these words (the process's own when None); return the exit status."""
+    for stream in (sys.stdout, sys.stderr):
+        if isinstance(stream, TextIOWrapper):
+            # A terminal without Unicode shows an escape where it has no character.
+            stream.reconfigure(errors="backslashreplace")
     arguments = _parser().parse_args(words)
     try:
         module = importlib.import_module(arguments.module)
@@ -71,14 +75,14 @@ def _add_command(parser: argparse.ArgumentParser, command: Command) -> None:
     if command.takes_moment:
         parser.add_argument(
             "--at",
-            type=_checked(mjd_from_iso, "expected a moment such as 2027-03-14T12:00:00Z"),
+            type=_checked(reading.moment),
             metavar="TIME",
             help="the moment, UTC (now)",
         )
     if command.takes_night:
         parser.add_argument(
             "--night",
-            type=_checked(date.fromisoformat, "expected a date such as 2027-03-14"),
+            type=_checked(reading.night),
             metavar="DATE",
             help="the night, by the local date of its evening (tonight)",
         )
@@ -87,7 +91,10 @@ def _add_command(parser: argparse.ArgumentParser, command: Command) -> None:
 
 
 def _add_option(parser: argparse.ArgumentParser, option: Option) -> None:
-    parser.add_argument(option.flag, help=option.help, **option.settings)
+    settings = dict(option.settings)
+    if option.read is not None:
+        settings["type"] = _checked(option.read)
+    parser.add_argument(option.flag, help=option.help, **settings)
 
 
 def _add_logbook(parser: argparse.ArgumentParser, default: object) -> None:
@@ -96,14 +103,14 @@ def _add_logbook(parser: argparse.ArgumentParser, default: object) -> None:
     )
 
 
-def _checked(read: Callable[[str], T], expected: str) -> Callable[[str], T]:
-    """Return a reader whose ValueError says what was expected."""
+def _checked(read: Callable[[str], T]) -> Callable[[str], T]:
+    """Return a reader whose ValueError, which says what was expected, argparse passes on."""
 
     def reader(text: str) -> T:
         try:
             return read(text)
-        except ValueError:
-            raise argparse.ArgumentTypeError(f"{text!r}, {expected}") from None
+        except ValueError as error:
+            raise argparse.ArgumentTypeError(f"{text!r}, {error}") from None
 
     return reader
 

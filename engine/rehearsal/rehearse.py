@@ -38,7 +38,8 @@ class Rehearsal:
 def prepare(folder: Path, night: date, seed: int) -> Rehearsal:
     """Return a rehearsal in a folder, copying the sample logbook there unless it is there.
 
-    WarmroomError when the folder holds another logbook: a rehearsal never writes into a real one.
+    WarmroomError when the folder holds another logbook, or any file that the sample would replace:
+    a rehearsal never writes into a real one.
     """
     sample = sample_logbook()
     head = folder / "observatory.toml"
@@ -46,7 +47,7 @@ def prepare(folder: Path, night: date, seed: int) -> Rehearsal:
         if head.read_bytes() != (sample / "observatory.toml").read_bytes():
             raise WarmroomError(f"{folder}: holds a logbook of its own, expected a copy or none")
     else:
-        shutil.copytree(sample, folder, dirs_exist_ok=True)
+        _copy(sample, folder)
     logbook = load_logbook(folder)
     site = logbook.observatory.site
     times = almanac(site, night)
@@ -57,6 +58,17 @@ def prepare(folder: Path, night: date, seed: int) -> Rehearsal:
     end_mjd = end + BEFORE_DUSK_MIN / MINUTES_PER_DAY
     truth = invent_night(begin_mjd, end_mjd, logbook.observatory.seeing.typical_arcsec, seed)
     return Rehearsal(folder, night, begin_mjd, end_mjd, Player(truth, seed))
+
+
+def _copy(sample: Path, folder: Path) -> None:
+    """Copy the sample logbook, in place of nothing."""
+    taken = next((path for each in sample.iterdir() if (path := folder / each.name).exists()), None)
+    if taken is not None:
+        raise WarmroomError(f"{taken}: is there already, expected a folder without it")
+    try:
+        shutil.copytree(sample, folder, dirs_exist_ok=True)
+    except OSError as error:
+        raise WarmroomError(f"{folder}: {error.strerror}, expected a folder to write to") from None
 
 
 def resume_mjd(rehearsal: Rehearsal) -> float:

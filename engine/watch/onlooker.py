@@ -7,7 +7,7 @@ from pathlib import Path
 from typing import TypeVar
 
 from engine.clock import Clock, HandClock, SystemClock
-from engine.errors import Fault, LogError, NotNow
+from engine.errors import Fault, LogError, NoAnswer, NotNow
 from engine.log import Event, Follower
 from engine.logbook import load_logbook
 from engine.times import night_of
@@ -83,12 +83,15 @@ class Onlooker(Watch):
 def open_onlooker(folder: Path, night: date | None = None) -> Opened:
     """Open tonight (or another night) of a logbook for looking on.
 
-    LogbookFaults when a file has faults, LogError when the night has no log that can be read.
+    LogbookFaults when a file has faults, NoAnswer when the night has no log, LogError when it can't
+    be read.
     """
     logbook = load_logbook(folder)
     tonight = night_of(SystemClock().now_mjd(), logbook.observatory.site.timezone)
     night = night or tonight
     path = folder / f"{night.isoformat()}.toml"
+    if not path.exists():
+        raise NoAnswer(f"{path}: nobody has opened this night, so there is nothing to follow")
     follower = Follower(path)
     follower.poll()
     if follower.reading is None:

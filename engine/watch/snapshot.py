@@ -15,7 +15,7 @@ from engine.logbook import Logbook
 from engine.night import Night, Outlooks, TargetNow, plans, tables, targets_at
 from engine.order import Order, propose, upper_limit
 from engine.positions import almanac
-from engine.times import night_of
+from engine.times import iso_from_mjd, night_of
 from engine.watch.listing import listed
 from engine.watch.opening import done_before
 from engine.watch.planning import Planner, forecast_of
@@ -80,17 +80,22 @@ def order_of_night(
     """Return the order for what remains of a night.
 
     From ``at_mjd`` (UTC MJD) if given, else from now if now is in the night, else from its
-    beginning. ``with_bound`` proves an upper limit too, which takes seconds and needs the extra
-    ``bound``. NoAnswer when the night has no dark time left.
+    beginning; of the night's log only what is older counts. ``with_bound`` proves an upper limit
+    too, which takes seconds and needs the extra ``bound``. NoAnswer when the night has no dark time
+    left, or the moment is none of it.
     """
     now_mjd = SystemClock().now_mjd()
     moment = now_mjd if at_mjd is None else at_mjd
-    night = night or night_of(moment, logbook.observatory.site.timezone)
-    state = state_of_night(logbook, night, moment)
-    planner = Planner(logbook, night, done_before(logbook.folder, night), added=state.added)
+    site = logbook.observatory.site
+    night = night or night_of(moment, site.timezone)
+    if at_mjd is not None and night_of(at_mjd, site.timezone) != night:
+        raise NoAnswer(f"{iso_from_mjd(at_mjd)} is not in the night of {night.isoformat()}")
+    planner = Planner(logbook, night, done_before(logbook.folder, night))
     grid = planner.night.mjd
     inside = at_mjd is not None or grid[0] < now_mjd < grid[-1]
     start_mjd = moment if inside else float(grid[0])
+    state = state_of_night(logbook, night, start_mjd)
+    planner = planner.fit(state, start_mjd)
     if not planner.night.dark[:, planner.night.index_at(start_mjd) :].any():
         raise NoAnswer(f"no darkness is left in the night of {night.isoformat()}")
     forecast = planner.forecast(state, start_mjd).at(grid)[0]

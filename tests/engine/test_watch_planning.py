@@ -4,8 +4,12 @@ from __future__ import annotations
 
 from pathlib import Path
 
-from engine.logbook import typed_target
-from engine.watch import Watch, acts
+import pytest
+
+from engine.clock import SystemClock
+from engine.logbook import load_logbook, typed_target
+from engine.rehearsal import NIGHT
+from engine.watch import Stage, Watch, acts, order_of_night
 from tests.engine.watch_nights import a_console, evening_clock, plan, small_logbook
 
 
@@ -30,3 +34,31 @@ def test_a_target_that_may_be_observed_at_once_comes_into_the_plan_and_leaves_it
         acts.undo(watch)
         plan(watch)
         assert ahead(watch) == {"Near", "Far"}
+
+
+def test_the_order_of_a_past_night_does_not_count_what_it_was_yet_to_take(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """Asked a week later, from its beginning: then the plan was still to be done."""
+    folder = small_logbook(tmp_path)
+    clock = evening_clock(folder)
+    with a_console(folder, clock) as watch:
+        acts.point_at(watch, "Near")
+        acts.arrive(watch)
+        plan(watch)
+        acts.start_run(watch, watch.plans()["Near"])
+        for _ in range(60):
+            clock.advance_s(5.0)
+            watch.tick()
+        assert watch.stage is Stage.READY
+        assert not any(line.remaining for line in watch.plans()["Near"])
+    later_mjd = clock.now_mjd() + 7.0
+    monkeypatch.setattr(SystemClock, "now_mjd", lambda self: later_mjd)
+    logbook = load_logbook(folder)
+
+    def targets(at_mjd: float | None) -> set[str]:
+        order = order_of_night(logbook, NIGHT, at_mjd, None)
+        return {visit.target for visit in order.visits}
+
+    assert targets(None) == {"Near", "Far"}
+    assert targets(clock.now_mjd()) == {"Far"}

@@ -3,8 +3,11 @@
 from __future__ import annotations
 
 import json
+import os
 import re
 import shutil
+import subprocess
+import sys
 from pathlib import Path
 from typing import Any
 
@@ -137,6 +140,8 @@ def test_exposure_json(folder: Path, capsys: pytest.CaptureFixture[str]) -> None
         (("order", "--at", "2027-03-25T22:00:00Z"), 1, "no darkness is left"),
         (("exposure", "--target", "M 76", "--at", AT), 1, "nearest is 'M 6"),
         (("exposure", "--target", "M 67", "--filter", "U", "--at", AT), 2, "B, V, I"),
+        (("order", "--night", NIGHT, "--at", "2027-03-20T12:00:00Z"), 1, "not in the night of"),
+        (("follow", "--json", "--night", NIGHT), 1, "nobody has opened this night"),
     ],
 )
 def test_no_is_an_answer(
@@ -177,3 +182,53 @@ def test_a_logbook_that_is_not_there(tmp_path: Path, capsys: pytest.CaptureFixtu
     for name in ("check", "almanac", "sky", "order"):
         assert main([name, "--logbook", str(tmp_path / "none")]) == 2
         assert "is missing, expected a file" in capsys.readouterr().err
+
+
+@pytest.mark.parametrize(
+    ("words", "said"),
+    [
+        (("almanac", "--night", "9999-12-31"), "from 1900 to 2099"),
+        (("almanac", "--night", "2027-02-30"), "expected a date such as"),
+        (("sky", "--at", "0001-01-01T00:00:00Z"), "from 1900 to 2099"),
+        (("sky", "--at", "2100-01-01T00:00:00Z"), "from 1900 to 2099"),
+        (("sky", "--at", "0001-01-01T00:00:00+14:00"), "from 1900 to 2099"),
+        (("sky", "--seeing", "nan"), "expected 0.1 to 20 arcsec"),
+        (("order", "--seeing", "-1"), "expected 0.1 to 20 arcsec"),
+        (("exposure", "--target", "M 67", "--seconds", "0"), "expected 0.001 to 86400 seconds"),
+        (("exposure", "--target", "M 67", "--seconds", "inf"), "expected 0.001 to 86400 seconds"),
+        (("exposure", "--target", "M 67", "--magnitude", "-1000"), "expected -30 to 40"),
+        (("demo", "--unwatched", "--seed", "-1"), "expected a whole number"),
+        (("demo", "--unwatched", "--pace", "0"), "expected 0.1 to 3600 seconds"),
+    ],
+)
+def test_a_value_out_of_range_is_a_fault_of_the_input(
+    capsys: pytest.CaptureFixture[str], words: tuple[str, ...], said: str
+) -> None:
+    """What was typed and what was expected, in one line behind the usage, status 2."""
+    with pytest.raises(SystemExit) as left:
+        main(words)
+    assert left.value.code == 2
+    assert said in capsys.readouterr().err.splitlines()[-1]
+
+
+def test_a_terminal_without_unicode_gets_escapes(folder: Path) -> None:
+    """The degree sign of a latitude is no reason to end with a traceback; JSON stays JSON."""
+    plain = {**os.environ, "PYTHONIOENCODING": "ascii"}
+    words = [sys.executable, "-m", "tui.command", "check", "--logbook", str(folder)]
+    done = subprocess.run(words, env=plain, capture_output=True, text=True, check=True)
+    assert "latitude -31.2700\\xb0" in done.stdout
+    (folder / "targets.toml").write_text("[[target]]\nname = 'Körper'\n", encoding="utf-8")
+    done = subprocess.run(
+        [*words, "--json"], env=plain, capture_output=True, text=True, check=False
+    )
+    assert "Körper" in json.loads(done.stdout)["faults"][0]["key"]
+
+
+def test_a_rehearsal_replaces_no_file(capsys: pytest.CaptureFixture[str], tmp_path: Path) -> None:
+    """Not a list of targets without an observatory, nor what is no folder at all."""
+    (tmp_path / "targets.toml").write_text("# mine\n")
+    assert main(["demo", "--unwatched", "--into", str(tmp_path)]) == 2
+    assert "targets.toml: is there already" in capsys.readouterr().err
+    assert (tmp_path / "targets.toml").read_text() == "# mine\n"
+    assert main(["demo", "--unwatched", "--into", str(tmp_path / "targets.toml")]) == 2
+    assert "expected a folder to write to" in capsys.readouterr().err

@@ -60,11 +60,11 @@ def test_two_look_on_while_one_observes(tmp_path: Path) -> None:
 def test_follow_as_json_and_without_a_night(
     tmp_path: Path, capsys: pytest.CaptureFixture[str]
 ) -> None:
-    """JSON says where a night stands; a night without a log is a fault in a line."""
+    """JSON says where a night stands; of a night without a log it says so, status 1."""
     folder = a_logbook(tmp_path / "nights")
     words = ["follow", "--json", "--logbook", str(folder), "--night"]
-    assert main([*words, NIGHT]) == 2
-    assert "No such file" in capsys.readouterr().err
+    assert main([*words, NIGHT]) == 1
+    assert "nobody has opened this night" in capsys.readouterr().err
     terminal = Terminal(demo(folder))
     try:
         terminal.wait_for("NEXT")

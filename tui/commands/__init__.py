@@ -6,18 +6,22 @@ work allows. It has one function, ``run(arguments) -> int``, that returns the ex
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Any
 
+from tui.reading import number_between, whole_number
+
 
 @dataclass(frozen=True, slots=True)
 class Option:
-    """One option of one command, as argparse takes it."""
+    """One option of one command: its settings as argparse takes them, and how its text is read."""
 
     flag: str
     help: str
     settings: dict[str, Any] = field(default_factory=dict)
+    read: Callable[[str], Any] | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -37,6 +41,10 @@ class Command:
         return f"tui.commands.{self.name}"
 
 
+SEEING = Option(
+    "--seeing", "zenith seeing, arcsec at 500 nm", read=number_between(0.1, 20.0, "arcsec")
+)
+
 # The console's looks by name; `tui.look` holds them, but brings Textual along.
 LOOK = Option(
     "--look",
@@ -51,7 +59,12 @@ COMMANDS: tuple[Command, ...] = (
         takes_night=True,
         takes_json=False,
         options=(
-            Option("--pace", "seconds of the night in one second", {"type": float, "default": 60}),
+            Option(
+                "--pace",
+                "seconds of the night in one second",
+                {"default": 60.0},
+                number_between(0.1, 3600.0, "seconds"),
+            ),
             Option("--drive", "decide yourself instead of watching", {"action": "store_true"}),
             Option(
                 "--unwatched",
@@ -64,7 +77,7 @@ COMMANDS: tuple[Command, ...] = (
                 {"type": Path, "metavar": "DIR"},
             ),
             LOOK,
-            Option("--seed", "which invented weather", {"type": int, "default": 7}),
+            Option("--seed", "which invented weather", {"default": 7}, whole_number),
         ),
     ),
     Command(
@@ -84,7 +97,7 @@ COMMANDS: tuple[Command, ...] = (
         "sky",
         "print every target at one moment: where, how soft, may it be observed",
         takes_moment=True,
-        options=(Option("--seeing", "zenith seeing, arcsec at 500 nm", {"type": float}),),
+        options=(SEEING,),
     ),
     Command(
         "exposure",
@@ -93,9 +106,17 @@ COMMANDS: tuple[Command, ...] = (
         options=(
             Option("--target", "the target's name", {"required": True, "metavar": "NAME"}),
             Option("--filter", "one filter of its plan (all of them)", {"metavar": "NAME"}),
-            Option("--seconds", "length of an exposure (the plan's)", {"type": float}),
-            Option("--magnitude", "of the star (the target's)", {"type": float}),
-            Option("--seeing", "zenith seeing, arcsec at 500 nm", {"type": float}),
+            Option(
+                "--seconds",
+                "length of an exposure (the plan's)",
+                read=number_between(0.001, 86400.0, "seconds"),
+            ),
+            Option(
+                "--magnitude",
+                "of the star (the target's)",
+                read=number_between(-30.0, 40.0, ""),
+            ),
+            SEEING,
         ),
     ),
     Command(
@@ -104,7 +125,7 @@ COMMANDS: tuple[Command, ...] = (
         takes_moment=True,
         takes_night=True,
         options=(
-            Option("--seeing", "zenith seeing, arcsec at 500 nm", {"type": float}),
+            SEEING,
             Option(
                 "--bound",
                 "prove an upper limit to any order's worth too (needs the extra 'bound')",

@@ -44,7 +44,8 @@ def _reach(
 ) -> Reach:
     scene = Scene(one.filter_index, seen.seeing_arcsec, now.airmass, one.sky_mag_arcsec2)
     observatory = seen.night.observatory
-    return reach(observatory, seen.model, scene, seconds or one.progress.seconds, magnitude)
+    length_s = one.progress.seconds if seconds is None else seconds
+    return reach(observatory, seen.model, scene, length_s, magnitude)
 
 
 def _as_json(

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import json
 import math
+import sys
 from collections.abc import Iterable, Sequence
 from datetime import tzinfo
 from typing import Any
@@ -13,7 +14,8 @@ from engine.times import datetime_from_mjd, iso_from_mjd
 
 def print_json(value: Any) -> None:
     """Print a value as JSON; what is not a finite number becomes null."""
-    print(json.dumps(_finite(value), ensure_ascii=False, indent=1, allow_nan=False))
+    is_plain = "utf" not in (sys.stdout.encoding or "").lower()
+    print(json.dumps(_finite(value), ensure_ascii=is_plain, indent=1, allow_nan=False))
 
 
 def _finite(value: Any) -> Any:

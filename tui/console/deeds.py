@@ -12,7 +12,8 @@ from engine.logbook import typed_target
 from engine.logbook.text import one_line
 from engine.watch import Stage, Watch, acts
 from tui.console.panels.local import ahead
-from tui.console.read import moment_in, number_between
+from tui.console.read import moment_in
+from tui.reading import number_between
 from tui.widgets import LiveList, Question
 
 if TYPE_CHECKING:

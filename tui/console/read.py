@@ -1,8 +1,7 @@
-"""Reading what was typed: a number in its range, or what was expected."""
+"""Reading a time of the night that was typed; see `tui.reading` for the rest."""
 
 from __future__ import annotations
 
-import math
 import re
 from collections.abc import Callable
 from datetime import datetime, timedelta
@@ -13,22 +12,6 @@ from engine.positions import Almanac
 from engine.times import mjd_from_datetime
 
 _CLOCK = re.compile(r"([0-9]{1,2})[:. ]?([0-9]{2})\Z")
-
-
-def number_between(least: float, greatest: float, unit: str) -> Callable[[str], float]:
-    """Return a reader of a number in a range; a comma may stand for the point."""
-    expected = f"expected {least:g} to {greatest:g} {unit}"
-
-    def read(text: str) -> float:
-        try:
-            value = float(text.strip().replace(",", "."))
-        except ValueError:
-            raise ValueError(expected) from None
-        if not math.isfinite(value) or not least <= value <= greatest:
-            raise ValueError(expected)
-        return value
-
-    return read
 
 
 def moment_in(times: Almanac, logbook: Logbook) -> Callable[[str], float]:
