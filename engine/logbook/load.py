@@ -13,7 +13,7 @@ from engine.errors import Fault, LogbookFaults
 from engine.logbook.faults import KeyPath, key_text, problems, unknown
 from engine.logbook.files import TABLE_ENDINGS, Unreadable, parse_toml, read_text, target_files
 from engine.logbook.lines import LineIndex
-from engine.logbook.observatory import FileModel, Observatory
+from engine.logbook.observatory import FileModel, Observatory, Site
 from engine.logbook.targets import Programme, Target
 from engine.logbook.text import nearest, shown
 
@@ -22,6 +22,10 @@ Model = TypeVar("Model", bound=FileModel)
 # A file with more faults than this is no logbook.
 MOST_FAULTS = 200
 SHORT_LIST = 12
+# Clocks further from the Sun than this part the nights where it may be dark; nearer the poles the
+# Sun keeps no hours.
+MOST_HOURS_FROM_THE_SUN = 4.0
+POLAR_LATITUDE_DEG = 66.0
 
 
 @dataclass(frozen=True, slots=True)
@@ -167,10 +171,25 @@ def _read_observatory(path: Path) -> tuple[_File, Observatory | None, tuple[str,
     if not isinstance(file.values, dict):
         return file, None, ()
     observatory = _validated(Observatory, file.values, file)
+    if observatory is not None:
+        _check_zone(file, observatory.site)
     filters = file.values.get("filter")
     wheel = filters if isinstance(filters, list) else []
     names = [each.get("name") for each in wheel if isinstance(each, dict)]
     return file, observatory, tuple(dict.fromkeys(n for n in names if isinstance(n, str)))
+
+
+def _check_zone(file: _File, site: Site) -> None:
+    """Note a zone in which the noon that parts the nights would fall into one of them."""
+    apart_h = site.hours_from_the_sun
+    if apart_h <= MOST_HOURS_FROM_THE_SUN or abs(site.latitude_deg) > POLAR_LATITUDE_DEG:
+        return
+    what = (
+        f"{shown(site.timezone)} is {apart_h:.1f} h from the Sun at longitude_deg "
+        f"{site.longitude_deg:g}, expected the site's own zone (nights are parted at its noon), and "
+        "longitudes positive to the east"
+    )
+    file.note(("site", "timezone"), what)
 
 
 def _read_toml(path: Path) -> tuple[_File, list[_Entry]]:

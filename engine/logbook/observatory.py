@@ -7,6 +7,7 @@ Names are fixed by the file's contract: add keys freely, rename none.
 from __future__ import annotations
 
 import math
+from datetime import datetime
 from typing import Annotated, Any, Literal, Self, TypeGuard
 from zoneinfo import ZoneInfo, available_timezones
 
@@ -105,6 +106,20 @@ class Site(FileModel):
         if wrong:
             raise Misfits(wrong)
         return tuple(skyline)
+
+    @property
+    def hours_from_the_sun(self) -> float:
+        """How many hours its clocks are from the Sun's mean time, in the better half of a year.
+
+        At most 3 where people live by the Sun at all (the west of China); anything where the
+        longitude has the wrong sign, or the zone is that of a clock elsewhere.
+        """
+        apart_h = []
+        for month in (1, 7):
+            offset = datetime(2027, month, 1, tzinfo=ZoneInfo(self.timezone)).utcoffset()
+            clocks_h = offset.total_seconds() / 3600.0 if offset else 0.0
+            apart_h.append(abs((clocks_h - self.longitude_deg / 15.0 + 12.0) % 24.0 - 12.0))
+        return min(apart_h)
 
 
 class Telescope(FileModel):

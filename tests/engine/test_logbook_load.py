@@ -10,6 +10,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
+from engine.errors import LogbookFaults
 from engine.logbook import (
     Observatory,
     PlannedExposures,
@@ -24,7 +25,7 @@ from engine.logbook.faults import field_key
 from engine.logbook.targets import parse_angle
 from engine.logbook.text import NAME_LENGTH, SHOWN, nearest, shown, visible
 from engine.times import mjd_from_iso
-from tests.engine.logbook_files import TARGETS, written
+from tests.engine.logbook_files import OBSERVATORY, TARGETS, written
 
 
 def test_what_is_left_out_has_its_documented_value(tmp_path: Path) -> None:
@@ -63,6 +64,34 @@ def test_values_in_their_units(tmp_path: Path) -> None:
     assert logbook.observatory.filter_index("V") == 1
     with pytest.raises(KeyError):
         logbook.observatory.filter_index("U")
+
+
+@pytest.mark.parametrize(
+    ("latitude_deg", "longitude_deg", "zone", "is_sound"),
+    [
+        (19.8, -155.5, "Pacific/Honolulu", True),
+        (19.8, -155.5, "UTC", False),  # its nights would be parted at two in the morning
+        (32.0, 111.6, "America/Phoenix", False),  # west positive
+        (38.3, 74.9, "Asia/Shanghai", True),  # three hours, the most that people live by
+        (1.9, -157.4, "Pacific/Kiritimati", True),  # beyond the date line
+        (28.8, 342.1, "Atlantic/Canary", True),  # west of Greenwich, counted east
+        (-90.0, 0.0, "Pacific/Auckland", True),  # at the pole every longitude is as good
+    ],
+)
+def test_the_zone_must_be_of_the_site(
+    tmp_path: Path, latitude_deg: float, longitude_deg: float, zone: str, is_sound: bool
+) -> None:
+    """Nights are parted at the zone's noon, so that may not fall into one."""
+    text = OBSERVATORY.replace("-31.27", f"{latitude_deg}").replace("149.07", f"{longitude_deg}")
+    folder = written(tmp_path, {"observatory.toml": text.replace("Australia/Sydney", zone)})
+    if is_sound:
+        assert load_logbook(folder).observatory.site.timezone == zone
+        return
+    with pytest.raises(LogbookFaults) as told:
+        load_logbook(folder)
+    (fault,) = told.value.faults
+    assert (fault.key, fault.line) == ("site.timezone", 6)
+    assert f"'{zone}' is" in fault.what
 
 
 def test_targets_of_several_files_in_order(tmp_path: Path) -> None:
