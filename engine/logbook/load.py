@@ -186,8 +186,8 @@ def _check_zone(file: _File, site: Site) -> None:
         return
     what = (
         f"{shown(site.timezone)} is {apart_h:.1f} h from the Sun at longitude_deg "
-        f"{site.longitude_deg:g}, expected the site's own zone (nights are parted at its noon), and "
-        "longitudes positive to the east"
+        f"{site.longitude_deg:g}, expected the site's own zone (nights are parted at its noon), "
+        "and longitudes positive to the east"
     )
     file.note(("site", "timezone"), what)
 
