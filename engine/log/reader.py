@@ -9,6 +9,7 @@ may say something that was never written.
 from __future__ import annotations
 
 import math
+import time
 from dataclasses import dataclass
 from datetime import date
 from pathlib import Path
@@ -26,6 +27,8 @@ RAW_SHOWN = 60
 ROUNDING_S = 0.002
 # How many stretches away an entry may be to be named as the neighbour of a damaged one.
 NEAR = 8
+# An entry half written is whole a moment later, even on a slow disk; a torn one stays torn.
+LOOKS_AGAIN, LOOKS_AGAIN_S = 3, 0.1
 
 
 @dataclass(frozen=True, slots=True)
@@ -207,12 +210,26 @@ def night_logs(folder: Path) -> list[Path]:
 
 
 def audit(folder: Path) -> list[Fault]:
-    """Return everything that is wrong in any night log of a logbook."""
+    """Return everything that is wrong in any night log of a logbook.
+
+    What is only being written meanwhile is not.
+    """
     findings: list[Fault] = []
     for path in night_logs(folder):
         try:
-            findings += read_log(path).findings
+            findings += _settled(path).findings
         except LogError as error:
             what = str(error).removeprefix(f"{path}:").removeprefix("1:").strip()
             findings.append(Fault(path, 1, "", what))
     return findings
+
+
+def _settled(path: Path) -> LogReading:
+    """Return what a log holds once nobody is in the middle of an entry; LogError as `read_log`."""
+    reading = read_log(path)
+    for _ in range(LOOKS_AGAIN):
+        if not reading.torn:
+            break
+        time.sleep(LOOKS_AGAIN_S)
+        reading = read_log(path)
+    return reading

@@ -29,6 +29,7 @@ class Almanac:
 
     The night runs from local noon (``begin_mjd``) to local noon (``end_mjd``). Dusk is the last
     time the Sun sinks through an altitude before its lowest point, dawn the first time after.
+    ``moonrise`` and ``moonset`` are the first of the night; only near the poles can there be more.
     ``moon_illumination`` (0 to 1) is at the middle of the night, when the Sun is lowest.
     """
 

@@ -293,3 +293,22 @@ def test_logs_are_found_by_their_names_and_audited(tmp_path: Path) -> None:
     ]
     with pytest.raises(LogError, match="No such file"):
         read_log(tmp_path / "2027-03-16.toml")
+
+
+def test_an_entry_that_is_just_being_written_is_no_fault(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """Half of it is there at the first look; a tail that stays torn is told."""
+    whole = log_bytes(notes(1, 2))
+    (tmp_path / NAME).write_bytes(whole[:-20])
+    pauses: list[float] = []
+    monkeypatch.setattr("engine.log.reader.time.sleep", pauses.append)
+    (fault,) = audit(tmp_path)
+    assert "are torn, or just being written" in fault.what
+
+    def goes_on(seconds: float) -> None:
+        (tmp_path / NAME).write_bytes(whole)
+
+    monkeypatch.setattr("engine.log.reader.time.sleep", goes_on)
+    assert audit(tmp_path) == []
+    assert 0.1 <= sum(pauses) <= 1.0

@@ -8,6 +8,7 @@ import re
 import shutil
 import subprocess
 import sys
+import tomllib
 from pathlib import Path
 from typing import Any
 
@@ -175,6 +176,20 @@ def test_check_says_what_the_logbook_holds(
     assert all(line.startswith(f"{folder / 'observatory.toml'}:") for line in lines)
     assert any("site.latitude_deg: -131.27" in line for line in lines)
     assert any("mounting: unknown key" in line and "'mount'" in line for line in lines)
+
+
+def test_check_tells_every_key_of_the_files(capsys: pytest.CaptureFixture[str]) -> None:
+    """Without any logbook: those of the sample's observatory are all among them."""
+    assert main(["check", "--keys"]) == 0
+    told = capsys.readouterr().out
+    tables = tomllib.loads((sample_logbook() / "observatory.toml").read_text())
+    for name, table in tables.items():
+        head = f"[[{name}]]" if isinstance(table, list) else f"[{name}]"
+        part = told.partition(f"observatory.toml {head}\n")[2].partition("\n\n")[0]
+        for key in table[0] if isinstance(table, list) else table:
+            assert f"\n  {key} " in part
+    _, as_json = run_json(capsys, "check", "--keys")
+    assert {"file", "table", "key", "unit", "expects", "default", "help"} == set(as_json["keys"][0])
 
 
 def test_a_logbook_that_is_not_there(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:

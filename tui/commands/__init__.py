@@ -86,7 +86,14 @@ COMMANDS: tuple[Command, ...] = (
         takes_night=True,
         options=(LOOK,),
     ),
-    Command("check", "print every fault in the logbook, or what it holds", takes_night=True),
+    Command(
+        "check",
+        "print every fault in the logbook, or what it holds",
+        takes_night=True,
+        options=(
+            Option("--keys", "print every key that its files may have", {"action": "store_true"}),
+        ),
+    ),
     Command(
         "almanac",
         "print the night's Sun, twilight and Moon times",
