@@ -15,6 +15,8 @@ MOVED_MIN = 20.0
 # What lies further ahead than this will change again before it matters.
 SOON_MIN = 150.0
 SAID_AT_MOST = 6
+# A decision that costs less of the night's worth than this is free.
+COSTS_NOTHING = 0.01
 
 
 def news(before: Plan, after: Plan, plans: Plans) -> tuple[str, ...]:
@@ -27,6 +29,16 @@ def news(before: Plan, after: Plan, plans: Plans) -> tuple[str, ...]:
         *_moved(after.night, before.order, after.order),
     ]
     return tuple(said[:SAID_AT_MOST])
+
+
+def cost_of(order: Order, free: Order) -> tuple[str, ...]:
+    """Return what a decision costs: an order with it against one without, in plain words."""
+    if free.value <= 0.0:
+        return ()
+    share = 1.0 - order.value / free.value
+    if share < COSTS_NOTHING:
+        return ("your choice costs next to nothing",)
+    return (f"your choice costs {share:.0%} of what the rest of the night would bring",)
 
 
 def _next_visit(before: Order, after: Order) -> list[str]:

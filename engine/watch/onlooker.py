@@ -13,6 +13,7 @@ from engine.logbook import load_logbook
 from engine.times import night_of
 from engine.watch.opening import Opened, done_before
 from engine.watch.planning import Planned, Planner
+from engine.watch.triggers import Wish, Work
 from engine.watch.watch import Watch
 
 E = TypeVar("E", bound=Event)
@@ -73,7 +74,7 @@ class Onlooker(Watch):
     def _take_in(self) -> None:
         self._state = self._follower.state
         self._doubted_n = 0
-        self._wanted = "the night went on"
+        self._want(Wish(Work.AFRESH, "the night went on"))
         self.version += 1
         # A night that is not tonight's stands still at its last entry.
         if isinstance(self.clock, HandClock) and self._state.events:

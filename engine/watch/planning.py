@@ -16,19 +16,24 @@ from engine.image import ImageModel
 from engine.log import Exposure, NightState, TargetAdded
 from engine.logbook import Logbook
 from engine.night import Night, Outlook, Outlooks, Plans, open_night, plans
-from engine.order import Problem, build_problem, propose, travel_of
+from engine.order import Order, Problem, Rules, build_problem, propose, refine, retime, travel_of
 from engine.positions import Air
 from engine.seeing import SeeingForecast, SeeingMeasurement, nowcast
 from engine.times import HOURS_PER_DAY
 from engine.watch.listing import listed
-from engine.watch.news import news
+from engine.watch.news import cost_of, news
 from engine.watch.plan import Plan
-from engine.watch.rules import rules_from
+from engine.watch.rules import rules_from, without
+from engine.watch.triggers import Wish, Work
 
 # How long a typed value of the air is taken to hold, and from which change on the tables are made
 # anew: common practice, no source. Each step is worth under 2 % of the dispersion.
 AIR_HOLDS_H = 4.0
 AIR_STEP_HPA, AIR_STEP_C, AIR_STEP_PERCENT = 8.0, 4.0, 40.0
+
+
+# A forecast within this share of the one before leaves sizes and sky as they were.
+SAME_SEEING = 0.005
 
 
 @dataclass(frozen=True, slots=True)
@@ -93,18 +98,52 @@ class Planner:
         """Return the outlook for a zenith seeing (T,), minute by minute (arcsec)."""
         return self._outlooks.given(seeing_arcsec)
 
-    def plan(self, state: NightState, now_mjd: float, because: str, before: Plan | None) -> Plan:
+    def plan(self, state: NightState, now_mjd: float, wish: Wish, before: Plan | None) -> Plan:
         """Return a new plan for the rest of the night from a moment (UTC MJD) on."""
         forecast = self.forecast(state, now_mjd)
-        outlook = self.outlook(forecast.at(self.night.mjd)[0])
-        problem = self.problem(state, outlook, now_mjd)
-        order = propose(problem, in_force=before.order if before else None)
-        fresh = Plan(now_mjd, because, self.night, forecast, outlook, order)
+        outlook = self._outlook_for(forecast, now_mjd, before)
+        rules = rules_from(state, now_mjd)
+        problem = self.problem(state, outlook, now_mjd, rules)
         if before is None:
-            return fresh
-        return replace(fresh, news=news(before, fresh, problem.plans))
+            order = propose(problem)
+            return Plan(now_mjd, wish.because, self.night, forecast, outlook, order)
+        order = ordered(problem, before.order, wish.work)
+        plan = Plan(now_mjd, wish.because, self.night, forecast, outlook, order)
+        said = news(before, plan, problem.plans)
+        if wish.decision is not None:
+            free = self.problem(state, outlook, now_mjd, without(rules, wish.decision))
+            said = (*cost_of(order, ordered(free, before.order, wish.work)), *said)
+        return replace(plan, news=said)
 
-    def problem(self, state: NightState, outlook: Outlook, from_mjd: float) -> Problem:
+    def refined(self, state: NightState, now_mjd: float, plan: Plan, seed: int) -> Plan | None:
+        """Return a plan with a clearly better order than the one in force; None when none is."""
+        problem = self.problem(state, plan.outlook, now_mjd, rules_from(state, now_mjd))
+        order = refine(problem, plan.order, seed=seed)
+        if order is plan.order:
+            return None
+        better = replace(
+            plan, made_mjd=now_mjd, because="a better order was found", order=order, news=()
+        )
+        return replace(better, news=news(plan, better, problem.plans))
+
+    def _outlook_for(
+        self, forecast: SeeingForecast, now_mjd: float, before: Plan | None
+    ) -> Outlook:
+        """Return the outlook for a forecast, or the one before when it differs by next to nothing.
+
+        It is most of what a plan costs, and between measurements the forecast only relaxes.
+        """
+        seeing = forecast.at(self.night.mjd)[0]
+        if before is not None and before.night is self.night:
+            ahead = self.night.index_at(now_mjd)
+            known = before.outlook.seeing_arcsec
+            if np.abs(seeing[ahead:] / known[ahead:] - 1.0).max() < SAME_SEEING:
+                return before.outlook
+        return self.outlook(seeing)
+
+    def problem(
+        self, state: NightState, outlook: Outlook, from_mjd: float, rules: Rules
+    ) -> Problem:
         """Return the rest of the night from a moment (UTC MJD) as the search takes it."""
         known = {target.name for target in self.night.targets}
         sent_to = state.pointing.target if state.pointing else None
@@ -112,12 +151,18 @@ class Planner:
             self.night,
             outlook,
             self.plans(state),
-            rules_from(state, from_mjd),
+            rules,
             from_mjd=from_mjd,
             # A target that has left the list since is nowhere in particular.
             pointing=sent_to if sent_to in known else None,
             travel=self._travel,
         )
+
+
+def ordered(problem: Problem, in_force: Order, work: Work) -> Order:
+    """Return an order that goes on from the one in force, with as much work as is asked for."""
+    kept = retime(problem, in_force) if work <= Work.RETIME else None
+    return kept or propose(problem, in_force, afresh=work is Work.AFRESH)
 
 
 def measured_air(state: NightState, now_mjd: float, otherwise: Air) -> Air:

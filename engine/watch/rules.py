@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 
 from engine.log import NightState, Override, RunStart, RunStop
 from engine.order import Rules
@@ -69,6 +69,28 @@ def rules_from(state: NightState, now_mjd: float) -> Rules:
         hold=hold,
         pinned=dict(standing.pinned),
     )
+
+
+def without(rules: Rules, decision: Override) -> Rules:
+    """Return the rules as they would be had the observer not decided something."""
+    name = decision.target
+    match decision.action:
+        case "drop":
+            return replace(rules, dropped=rules.dropped - {name})
+        case "put_off":
+            return replace(rules, put_off=_less(rules.put_off, name))
+        case "pin" if decision.at_mjd is not None:
+            return replace(rules, pinned=_less(rules.pinned, name))
+        case "forbid":
+            return replace(rules, forbidden_filters=rules.forbidden_filters - {decision.filter})
+        case "pin" | "hold" | "chose":
+            return replace(rules, first=None, hold=False)
+        case _:
+            return rules
+
+
+def _less(moments: dict[str, float], name: str) -> dict[str, float]:
+    return {each: mjd for each, mjd in moments.items() if each != name}
 
 
 def is_pinned(state: NightState, name: str) -> bool:

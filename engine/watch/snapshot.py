@@ -19,6 +19,7 @@ from engine.times import iso_from_mjd, night_of
 from engine.watch.listing import listed
 from engine.watch.opening import done_before
 from engine.watch.planning import Planner, forecast_of
+from engine.watch.rules import rules_from
 
 
 @dataclass(frozen=True, slots=True)
@@ -100,6 +101,8 @@ def order_of_night(
         raise NoAnswer(f"no darkness is left in the night of {night.isoformat()}")
     forecast = planner.forecast(state, start_mjd).at(grid)[0]
     seeing = forecast if seeing_arcsec is None else np.full(len(grid), seeing_arcsec)
-    problem = planner.problem(state, planner.outlook(seeing), start_mjd)
+    problem = planner.problem(
+        state, planner.outlook(seeing), start_mjd, rules_from(state, start_mjd)
+    )
     order = propose(problem)
     return replace(order, bound=upper_limit(problem)) if with_bound else order

@@ -21,6 +21,7 @@ from engine.log import (
     NightState,
     OpenExposure,
     OrderProposed,
+    Override,
     RunStop,
     fold,
 )
@@ -32,9 +33,12 @@ from engine.watch.planning import Planned, Planner
 from engine.watch.record import Ending, exposure_record
 from engine.watch.rules import rules_from
 from engine.watch.stage import NextExposure, Stage, next_in_run, stage_of
+from engine.watch.triggers import Wish, Work, work_after
 
 # How often a plan is made afresh though nothing happened: the sky turns.
 REPLAN_MIN = 10.0
+# How many little searches each plan is worth while nothing happens.
+IDLE_TURNS = 12
 # How many visits of a new order are written to the log.
 ORDER_LOGGED = 8
 # Times in the log are rounded to the millisecond, so that one of now may read as one before it.
@@ -86,7 +90,8 @@ class Watch:
         self._doubted_n = self._state.exposing.n if self._state.exposing else 0
         # Since when somebody has seen what the camera does: nothing before it is counted unasked.
         self._watched_mjd = clock.now_mjd() - ROUNDING_DAYS
-        self._wanted: str | None = "the night begins"
+        self._wanted: Wish | None = Wish(Work.AFRESH, "the night begins")
+        self._idle_turns = 0
         self._kept_plans: tuple[int, Plans] = (-1, {})
         self._logbook: Logbook | None = None
 
@@ -159,9 +164,13 @@ class Watch:
         self.version += 1
         if isinstance(event, ClockStep):
             self._doubt_what_was_jumped_over()
-        if because:
-            self._wanted = because
+        decision = event if isinstance(event, Override) and event.action != "release" else None
+        if because or decision is not None:
+            self._want(Wish(work_after(event), because or "", decision))
         return stamped
+
+    def _want(self, wish: Wish) -> None:
+        self._wanted = self._wanted.and_then(wish) if self._wanted else wish
 
     def _doubt_what_was_jumped_over(self) -> None:
         """Leave to the observer an exposure whose end the clock has jumped over, as in a sleep."""
@@ -178,7 +187,7 @@ class Watch:
     def renew(self, logbook: Logbook, because: str) -> None:
         """Go on with the logbook as it was read anew; ``because`` says what changed in it."""
         self._logbook = logbook
-        self._wanted = because
+        self._want(Wish(Work.AFRESH, because))
         self.version += 1
 
     def end_exposure(self, ending: Ending) -> Event:
@@ -218,7 +227,7 @@ class Watch:
             pass
         plan = self.plan
         if plan is not None and (now_mjd - plan.made_mjd) * MINUTES_PER_DAY > REPLAN_MIN:
-            self._wanted = self._wanted or "the sky turned"
+            self._want(Wish(Work.RETIME, "the sky turned"))
 
     def _one_due(self, now_mjd: float) -> bool:
         stage, exposing = self.stage, self._state.exposing
@@ -266,20 +275,41 @@ class Watch:
         The result is handed to `adopt`. Asking takes the wish away: what happens meanwhile asks
         again.
         """
-        because, self._wanted = self._wanted, None
-        if because is None:
+        wish, self._wanted = self._wanted, None
+        if wish is None:
             return None
         planner, state, before = self.planner, self._state, self.plan
-        logbook = self._logbook
-        # An entry of this very millisecond counts: its time in the log may be rounded up.
-        last_mjd = state.events[-1].t_mjd if state.events else 0.0
-        now_mjd = max(self.clock.now_mjd(), last_mjd)
+        logbook, now_mjd = self._logbook, self._now_mjd()
+        self._idle_turns = 0
 
         def work() -> Planned:
             fit = planner.fit(state, now_mjd, logbook)
-            return Planned(fit, fit.plan(state, now_mjd, because, before))
+            return Planned(fit, fit.plan(state, now_mjd, wish, before))
 
         return work
+
+    def idling(self) -> Callable[[], Planned | None] | None:
+        """Return a little work that looks for a better order; None when enough was looked.
+
+        Like `planning`, to be done on any thread; it returns None when nothing clearly better was
+        found.
+        """
+        planner, state, plan = self.planner, self._state, self.plan
+        if plan is None or self._wanted is not None or self._idle_turns >= IDLE_TURNS:
+            return None
+        self._idle_turns += 1
+        seed, now_mjd = self._idle_turns, self._now_mjd()
+
+        def work() -> Planned | None:
+            better = planner.refined(state, now_mjd, plan, seed)
+            return Planned(planner, better) if better is not None else None
+
+        return work
+
+    def _now_mjd(self) -> float:
+        """Return now; an entry of this very millisecond counts: its time may be rounded up."""
+        last_mjd = self._state.events[-1].t_mjd if self._state.events else 0.0
+        return max(self.clock.now_mjd(), last_mjd)
 
     def adopt(self, planned: Planned) -> None:
         """Put a plan in force; a changed turn of targets goes into the log."""

@@ -155,9 +155,10 @@ class Console(App[None]):
             return
         if event.state is WorkerState.ERROR:
             self._worker_failed(worker)
+        elif event.state is WorkerState.SUCCESS and worker.name == "planning":
+            self._planned(worker.result)
         elif event.state is WorkerState.SUCCESS and worker.result is not None:
-            done = self._opened if worker.name == "opening" else self._planned
-            done(worker.result)
+            self._opened(worker.result)
 
     def _worker_failed(self, worker: Worker[object]) -> None:
         error = worker.error
@@ -206,7 +207,7 @@ class Console(App[None]):
         self._guarded(lambda: self._notice_step(watch))
         self._guarded(watch.tick)
         self._guarded(lambda: self._let_autopilot(watch))
-        self._plan_if_wanted(watch)
+        self._plan_if_wanted(watch, idle=True)
         self.paint()
 
     def _notice_step(self, watch: Watch) -> None:
@@ -233,17 +234,17 @@ class Console(App[None]):
                 f"a defect of warmroom ({error!r}); the log is safe, the night goes on", "bad"
             )
 
-    def _plan_if_wanted(self, watch: Watch) -> None:
+    def _plan_if_wanted(self, watch: Watch, *, idle: bool = False) -> None:
         if self._planning:
             return
-        work = watch.planning()
+        work = watch.planning() or (watch.idling() if idle else None)
         if work is not None:
             self._planning = True
             self.run_worker(work, name="planning", group="plan", thread=True, exit_on_error=False)
 
-    def _planned(self, planned: Planned) -> None:
+    def _planned(self, planned: Planned | None) -> None:
         self._planning = False
-        if self.live is None:
+        if self.live is None or planned is None:
             return
         self.live.adopt(planned)
         for said in reversed(planned.plan.news):
