@@ -149,9 +149,16 @@ def fold(events: Iterable[Event]) -> NightState:
 
 
 def last_undoable(state: NightState) -> Event | None:
-    """Return the entry that `undo` would withdraw now: the last of the observer's that stands."""
+    """Return the entry that `undo` would withdraw now: the last of the observer's that stands.
+
+    Where the telescope was and which run it did stand fast once something was exposed there.
+    """
+    was_exposed = False
     for event in reversed(state.events):
+        was_exposed |= isinstance(event, Exposure)
         if not isinstance(event, UNDOABLE) or event.n in state.withdrawn:
+            continue
+        if was_exposed and isinstance(event, Pointing | RunStart):
             continue
         if isinstance(event, Amendment) and (event.withdrawn or event.with_n is not None):
             continue

@@ -103,10 +103,7 @@ class Player:
         return [f'measured {measured:.2f}" in {last.filter} on {last.target}']
 
     def _accept(self, watch: Watch, now_mjd: float) -> list[str]:
-        visit = next(
-            (v for v in (watch.plan.order.visits if watch.plan else ()) if v.end_mjd > now_mjd),
-            None,
-        )
+        visit = next(iter(watch.plan.ahead(now_mjd)), None) if watch.plan else None
         if visit is None:
             return []
         wait_min = (visit.exposures[0].start_mjd - now_mjd) * MINUTES_PER_DAY
@@ -122,7 +119,7 @@ class Player:
         plan = watch.plan
         if here is None or plan is None:
             return []
-        wanted = next((v for v in plan.order.visits if v.end_mjd > now_mjd), None)
+        wanted = next(iter(plan.ahead(now_mjd)), None)
         if wanted is None or wanted.target != here.target:
             return self._accept(watch, now_mjd)
         lines = acts.lines_now(watch)

@@ -45,9 +45,9 @@ def point_at(watch: Watch, name: str) -> Event:
         raise NotNow("time is being lost; end that first")
     if state.run is not None:
         watch.submit(RunStop(of=state.run.n, why="left for another target"))
-    proposed = watch.plan.order.next if watch.plan else None
-    if proposed is not None and proposed.target != name:
-        watch.submit(Override(action="chose", target=name, instead_of=proposed.target))
+    proposed = watch.plan.ahead(watch.clock.now_mjd())[:1] if watch.plan else ()
+    if proposed and proposed[0].target != name:
+        watch.submit(Override(action="chose", target=name, instead_of=proposed[0].target))
     pointing = Pointing(target=name, ra_deg=target.ra_deg, dec_deg=target.dec_deg)
     return watch.submit(pointing, because=f"the telescope goes to {name}")
 
@@ -75,7 +75,7 @@ def lines_now(watch: Watch) -> tuple[Progress, ...]:
     if not left:
         return ()
     now_mjd = watch.clock.now_mjd()
-    visit = next((v for v in watch.plan.order.visits if v.end_mjd > now_mjd), None)
+    visit = next(iter(watch.plan.ahead(now_mjd)), None)
     if visit is not None and visit.target == pointing.target:
         wanted = {placed.filter for placed in visit.exposures}
         return tuple(line for line in left if line.filter in wanted) or left

@@ -5,7 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 from engine.night import Night, Outlook
-from engine.order import Order
+from engine.order import Order, Visit
 from engine.seeing import SeeingForecast
 
 
@@ -23,3 +23,7 @@ class Plan:
     outlook: Outlook
     order: Order
     news: tuple[str, ...] = ()
+
+    def ahead(self, now_mjd: float) -> tuple[Visit, ...]:
+        """Return the visits of the order that are not over at a moment (UTC MJD), in turn."""
+        return tuple(visit for visit in self.order.visits if visit.end_mjd > now_mjd)

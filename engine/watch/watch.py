@@ -335,4 +335,4 @@ def _end_mjd(exposing: OpenExposure) -> float:
 
 def _first_ahead(plan: Plan, now_mjd: float) -> list[str]:
     """Return the target, in a list, that an earlier plan would have next at a moment."""
-    return [visit.target for visit in plan.order.visits if visit.end_mjd > now_mjd][:1]
+    return [visit.target for visit in plan.ahead(now_mjd)[:1]]

@@ -243,6 +243,22 @@ def test_undo_reaches_for_the_observers_entries_only() -> None:
     assert last_undoable(NightState()) is None
 
 
+def test_a_run_that_was_exposed_stands() -> None:
+    """Its exposures are in the log; what is undone is the entry before it."""
+    before = (
+        Note(text="first"),
+        Pointing(target="KR 12", on_target=True),
+        RunStart(target="KR 12", filters=("B",), seconds=(120.0,), counts=(2,)),
+        start(),
+    )
+    events = numbered(*before)
+    assert last_undoable(fold(events)) == events[2]
+    events = numbered(*before, record(4), RunStop(of=3, why="finished"))
+    assert last_undoable(fold(events)) == events[0]
+    events = numbered(*before, record(4), Pointing(target="KR 3"))
+    assert last_undoable(fold(events)) == events[-1]
+
+
 def test_a_rejection_can_be_undone() -> None:
     """Rejecting is an amendment of the observer's: withdrawn, the exposure counts again."""
     events = numbered(start(), record(1), Amendment(of=2, extra={"outcome": "rejected"}))

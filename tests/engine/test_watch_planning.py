@@ -62,3 +62,18 @@ def test_the_order_of_a_past_night_does_not_count_what_it_was_yet_to_take(
 
     assert targets(None) == {"Near", "Far"}
     assert targets(clock.now_mjd()) == {"Far"}
+
+
+def test_the_proposal_is_the_first_visit_that_is_not_over(tmp_path: Path) -> None:
+    """Who accepts it late, when the plan's first visit has gone by, has chosen nothing instead."""
+    folder = small_logbook(tmp_path)
+    clock = evening_clock(folder)
+    with a_console(folder, clock) as watch:
+        assert watch.plan is not None
+        first, second = watch.plan.order.visits[:2]
+        clock.set_mjd(0.5 * (first.end_mjd + second.end_mjd))
+        assert watch.plan.ahead(clock.now_mjd())[0] == second
+        acts.point_at(watch, second.target)
+        assert not watch.state.overrides
+        acts.point_at(watch, first.target)
+        assert watch.state.overrides[-1].instead_of == second.target

@@ -19,9 +19,7 @@ def local(watch: Watch, mjd: float) -> datetime:
 
 def ahead(watch: Watch) -> tuple[Visit, ...]:
     """Return the visits of the order that are not over, in turn."""
-    now_mjd = watch.clock.now_mjd()
-    visits = watch.plan.order.visits if watch.plan else ()
-    return tuple(visit for visit in visits if visit.end_mjd > now_mjd)
+    return watch.plan.ahead(watch.clock.now_mjd()) if watch.plan else ()
 
 
 def hhmm(watch: Watch, mjd: float) -> str:
