@@ -92,6 +92,8 @@ class Watch:
         self._watched_mjd = clock.now_mjd() - ROUNDING_DAYS
         self._wanted: Wish | None = Wish(Work.AFRESH, "the night begins")
         self._idle_turns = 0
+        self._is_closed = False
+        self._parting: str | None = None
         self._kept_plans: tuple[int, Plans] = (-1, {})
         self._logbook: Logbook | None = None
 
@@ -207,11 +209,17 @@ class Watch:
     def close(self, why: str = "left by the observer") -> str | None:
         """Log that the console was left, and wait for the disk; return what it could not take.
 
-        A log that can't be written in its place is saved whole in the observer's home.
+        A log that can't be written in its place is saved whole in the observer's home. Closing
+        again changes nothing and returns the same: a signal may come while the console is left.
         """
-        self.submit(Close(why=why))
-        if self._pen.close():
-            return None
+        if not self._is_closed:
+            self._is_closed = True
+            self.submit(Close(why=why))
+            self._parting = None if self._pen.close() else self._rescued()
+        return self._parting
+
+    def _rescued(self) -> str:
+        """Save the log elsewhere; return what the observer must be told of that."""
         try:
             saved = self._pen.rescue(Path.home())
         except OSError as error:

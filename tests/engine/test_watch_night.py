@@ -1,4 +1,4 @@
-"""One plan after another, while the list changes under them."""
+"""The watch over a night: plans while the list changes, proposals taken late, leaving."""
 
 from __future__ import annotations
 
@@ -7,9 +7,10 @@ from pathlib import Path
 import pytest
 
 from engine.clock import SystemClock
+from engine.log import Close
 from engine.logbook import load_logbook, typed_target
 from engine.rehearsal import NIGHT
-from engine.watch import Stage, Watch, acts, order_of_night
+from engine.watch import Stage, Watch, acts, open_watch, order_of_night
 from tests.engine.watch_nights import a_console, evening_clock, plan, small_logbook
 
 
@@ -62,6 +63,17 @@ def test_the_order_of_a_past_night_does_not_count_what_it_was_yet_to_take(
 
     assert targets(None) == {"Near", "Far"}
     assert targets(clock.now_mjd()) == {"Far"}
+
+
+def test_a_night_is_closed_once(tmp_path: Path) -> None:
+    """A signal that comes while the console is being left finds nothing more to do."""
+    folder = small_logbook(tmp_path)
+    clock = evening_clock(folder)
+    watch = open_watch(folder, clock, ("A. Tester",), NIGHT).watch
+    assert watch.close("left by the observer") is None
+    assert watch.close("the terminal is gone") is None
+    (close,) = [event for event in watch.state.events if isinstance(event, Close)]
+    assert close.why == "left by the observer"
 
 
 def test_the_proposal_is_the_first_visit_that_is_not_over(tmp_path: Path) -> None:
