@@ -198,7 +198,8 @@ def _worth(
     filters, targets = _columns(lines)
     priorities = np.array([each.priority for each in night.targets], dtype=np.float32)
     until = first + allowed.shape[1]
-    worth = outlook.quality[filters, targets, first:until] * priorities[targets][:, None]
+    at = (filters, targets, slice(first, until))
+    worth = outlook.quality[at] * outlook.chance[at] * priorities[targets][:, None]
     return np.where(allowed, worth, np.float32(0.0))
 
 

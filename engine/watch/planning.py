@@ -94,9 +94,14 @@ class Planner:
         """Return the seeing now and its forecast, from everything measured this night."""
         return forecast_of(state, now_mjd, self.logbook.observatory.seeing.typical_arcsec)
 
-    def outlook(self, seeing_arcsec: NDArray[np.float64]) -> Outlook:
-        """Return the outlook for a zenith seeing (T,), minute by minute (arcsec)."""
-        return self._outlooks.given(seeing_arcsec)
+    def outlook(
+        self, seeing_arcsec: NDArray[np.float64], high_arcsec: NDArray[np.float64] | None = None
+    ) -> Outlook:
+        """Return the outlook for a zenith seeing (T,), minute by minute (arcsec).
+
+        ``high_arcsec`` (T,) is the upper end of its 68 % band.
+        """
+        return self._outlooks.given(seeing_arcsec, high_arcsec)
 
     def plan(self, state: NightState, now_mjd: float, wish: Wish, before: Plan | None) -> Plan:
         """Return a new plan for the rest of the night from a moment (UTC MJD) on."""
@@ -133,13 +138,14 @@ class Planner:
 
         It is most of what a plan costs, and between measurements the forecast only relaxes.
         """
-        seeing = forecast.at(self.night.mjd)[0]
+        seeing, _, high = forecast.at(self.night.mjd)
         if before is not None and before.night is self.night:
             ahead = self.night.index_at(now_mjd)
-            known = before.outlook.seeing_arcsec
-            if np.abs(seeing[ahead:] / known[ahead:] - 1.0).max() < SAME_SEEING:
-                return before.outlook
-        return self.outlook(seeing)
+            known = before.outlook
+            pairs = ((seeing, known.seeing_arcsec), (high, known.high_arcsec))
+            if all(np.abs(a[ahead:] / b[ahead:] - 1.0).max() < SAME_SEEING for a, b in pairs):
+                return known
+        return self.outlook(seeing, high)
 
     def problem(
         self, state: NightState, outlook: Outlook, from_mjd: float, rules: Rules

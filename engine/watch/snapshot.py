@@ -99,10 +99,11 @@ def order_of_night(
     planner = planner.fit(state, start_mjd)
     if not planner.night.dark[:, planner.night.index_at(start_mjd) :].any():
         raise NoAnswer(f"no darkness is left in the night of {night.isoformat()}")
-    forecast = planner.forecast(state, start_mjd).at(grid)[0]
-    seeing = forecast if seeing_arcsec is None else np.full(len(grid), seeing_arcsec)
-    problem = planner.problem(
-        state, planner.outlook(seeing), start_mjd, rules_from(state, start_mjd)
-    )
+    if seeing_arcsec is None:
+        seeing, _, high = planner.forecast(state, start_mjd).at(grid)
+        outlook = planner.outlook(seeing, high)
+    else:
+        outlook = planner.outlook(np.full(len(grid), seeing_arcsec))
+    problem = planner.problem(state, outlook, start_mjd, rules_from(state, start_mjd))
     order = propose(problem)
     return replace(order, bound=upper_limit(problem)) if with_bound else order

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 
 import numpy as np
@@ -22,6 +23,7 @@ from engine.night import (
     reasons_in,
     targets_at,
 )
+from engine.night.outlook import normal_share
 from engine.positions import skyline_altitude_deg
 from engine.rehearsal import NIGHT
 
@@ -164,6 +166,37 @@ def test_a_worse_seeing_softens_what_has_a_limit(logbook: Logbook, night: Night)
         if any(reason.code == "too_soft" for reason in now.reasons)
     ]
     assert "NGC 2243" in soft_now
+
+
+def test_the_chance_of_sharp_images_is_that_of_many_nights(logbook: Logbook, night: Night) -> None:
+    """As often as is said, images are within the limit when the seeing is drawn from its band."""
+    outlooks = Outlooks(night, ImageModel(logbook.observatory, night.air))
+    random = np.random.default_rng(5)
+    median, sigma_ln = 2.0, 0.2
+    shape = len(night.mjd)
+    told = outlooks.given(np.full(shape, median), np.full(shape, median * math.exp(sigma_ln)))
+    drawn = [
+        ~outlooks.given(np.full(shape, median * math.exp(sigma_ln * float(kick)))).soft
+        for kick in random.standard_normal(400)
+    ]
+    up = np.isfinite(night.airmass) & (night.airmass < 3.0)
+    limited = [t.maximum_image_size_arcsec is not None for t in night.targets]
+    judged = (up & np.array(limited)[:, None])[None] & np.ones((told.chance.shape[0], 1, 1), bool)
+    error = told.chance[judged] - np.mean(drawn, axis=0)[judged]
+    # 400 draws scatter by 0.025.
+    assert np.abs(error).max() < 0.1
+    assert abs(error.mean()) < 0.02
+    assert (told.chance[judged] > 0.05).any()
+    assert ((told.chance[judged] > 0.5) == ~told.soft[judged]).all()
+    free = (up & ~np.array(limited)[:, None])[None] & np.ones_like(judged)
+    assert (told.chance[free] == 1.0).all()
+
+
+def test_the_normal_distribution_is_the_library_s() -> None:
+    """The short series against the standard library's error function."""
+    sigmas = np.linspace(-5.0, 5.0, 401)
+    known = [0.5 * (1.0 + math.erf(each / math.sqrt(2.0))) for each in sigmas]
+    assert np.abs(normal_share(sigmas.astype(np.float32)) - known).max() < 1e-6
 
 
 def test_a_finished_plan_is_a_reason(night: Night, logbook: Logbook) -> None:
