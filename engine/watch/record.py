@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass, fields
+from dataclasses import dataclass, fields, replace
 from typing import TYPE_CHECKING
 
 import numpy as np
+from numpy.typing import NDArray
 
 from engine.image import ImageModel, ImageSize, Terms
 from engine.light import MoonLight, Reference, credit, sky_mag_arcsec2
@@ -42,68 +43,34 @@ def exposure_record(
     """Return the record of an exposure: where, how high, how soft, how bright a sky, what worth.
 
     Everything is worked out afresh at its start, middle and end, not read from the minute grid.
-    ``seeing_arcsec`` is the seeing in force, zenith and 500 nm.
+    ``seeing_arcsec`` is the seeing in force, zenith and 500 nm. Of a target or filter that has left
+    the logbook since, only what happened is recorded.
     """
-    site = night.observatory.site
+    bare = _bare_record(began, ending)
     try:
         index = night.target_index(began.target)
         place = night.observatory.filter_index(began.filter)
     except KeyError:
-        return _bare_record(began, ending)
-    filter_ = night.observatory.filters[place]
-    middle_mjd = 0.5 * (began.start_mjd + ending.end_mjd)
-    mjd = np.array([began.start_mjd, middle_mjd, ending.end_mjd])
-
-    where = horizontal(night.places.only(index), mjd, site)
-    seen_deg = apparent_altitude_deg(where.altitude_deg[0], night.air)
-    masses = airmass(seen_deg, site.airmass_model, night.air)
-    the_moon = moon(mjd, site)
-    from_moon_deg = float(
-        separation_deg(
-            night.places.ra_deg[index],
-            night.places.dec_deg[index],
-            the_moon.ra_deg[1],
-            the_moon.dec_deg[1],
-        )
-    )
-    sky = float(
-        sky_mag_arcsec2(
-            filter_,
-            altitude_deg=where.altitude_deg[0, 1],
-            sun_altitude_deg=sun(mjd, site).altitude_deg[1],
-            moon=MoonLight(
-                altitude_deg=the_moon.altitude_deg[1],
-                separation_deg=from_moon_deg,
-                phase_angle_deg=the_moon.phase_angle_deg[1],
-            ),
-            pressure_hpa=night.air.pressure_hpa,
-        )
-    )
-    image = _image(model, place, seeing_arcsec, float(masses[1]))
-    exposed_s = (ending.end_mjd - began.start_mjd) * SECONDS_PER_DAY
+        return bare
+    sight = _sight(night, index, place, np.array([bare.start_mjd, bare.mid_mjd, bare.end_mjd]))
+    image = _image(model, place, seeing_arcsec, sight.airmass[1])
     reference = Reference.of(night.observatory, model, place)
-    worth = float(credit(image.size_arcsec, sky, float(masses[1]), filter_, reference))
-    return Exposure(
-        of=began.n,
-        run=began.run,
-        target=began.target,
-        programme=began.programme,
-        filter=began.filter,
-        seconds=began.seconds,
-        exposed_s=round(exposed_s, 3),
-        start_mjd=began.start_mjd,
-        mid_mjd=middle_mjd,
-        end_mjd=ending.end_mjd,
-        airmass_start=_kept(masses[0]),
-        airmass_mid=_kept(masses[1]),
-        airmass_end=_kept(masses[2]),
-        airmass_effective=_kept(float(effective_airmass(*masses))),
-        altitude_deg=_kept(where.altitude_deg[0, 1]),
-        azimuth_deg=_kept(where.azimuth_deg[0, 1]),
-        hour_angle_h=_kept(where.hour_angle_h[0, 1]),
-        moon_separation_deg=_kept(from_moon_deg),
-        moon_altitude_deg=_kept(the_moon.altitude_deg[1]),
-        moon_illumination=_kept(the_moon.illumination[1]),
+    filter_ = night.observatory.filters[place]
+    worth = float(
+        credit(image.size_arcsec, sight.sky_mag_arcsec2, sight.airmass[1], filter_, reference)
+    )
+    return replace(
+        bare,
+        airmass_start=_kept(sight.airmass[0]),
+        airmass_mid=_kept(sight.airmass[1]),
+        airmass_end=_kept(sight.airmass[2]),
+        airmass_effective=_kept(float(effective_airmass(*sight.airmass))),
+        altitude_deg=_kept(sight.altitude_deg),
+        azimuth_deg=_kept(sight.azimuth_deg),
+        hour_angle_h=_kept(sight.hour_angle_h),
+        moon_separation_deg=_kept(sight.moon_separation_deg),
+        moon_altitude_deg=_kept(sight.moon_altitude_deg),
+        moon_illumination=_kept(sight.moon_illumination),
         image_size_arcsec=_kept(image.size_arcsec),
         image_atmosphere_arcsec=_kept(image.terms.atmosphere),
         image_diffraction_arcsec=_kept(image.terms.diffraction),
@@ -111,17 +78,14 @@ def exposure_record(
         image_tracking_arcsec=_kept(image.terms.tracking),
         image_dispersion_arcsec=_kept(image.terms.dispersion),
         image_sampling_arcsec=_kept(image.terms.sampling),
-        sky_mag_arcsec2=_kept(sky),
+        sky_mag_arcsec2=_kept(sight.sky_mag_arcsec2),
         seeing_arcsec=_kept(seeing_arcsec),
-        frame=began.frame,
-        outcome=ending.outcome,
-        credit=_kept(worth * min(exposed_s / began.seconds, 1.0)),
-        why=ending.why,
+        credit=_kept(worth * min(bare.exposed_s / bare.seconds, 1.0)),
     )
 
 
 def _bare_record(began: OpenExposure, ending: Ending) -> Exposure:
-    """Return the record of an exposure whose target or filter has left the logbook since."""
+    """Return what happened in an exposure, without anything that is worked out."""
     return Exposure(
         of=began.n,
         run=began.run,
@@ -136,6 +100,58 @@ def _bare_record(began: OpenExposure, ending: Ending) -> Exposure:
         frame=began.frame,
         outcome=ending.outcome,
         why=ending.why,
+    )
+
+
+@dataclass(frozen=True, slots=True)
+class _Sight:
+    """Where an exposure looked: ``airmass`` at its start, middle and end, the rest at its middle.
+
+    NaN for what there is none of below the horizon.
+    """
+
+    airmass: tuple[float, float, float]
+    altitude_deg: float
+    azimuth_deg: float
+    hour_angle_h: float
+    moon_separation_deg: float
+    moon_altitude_deg: float
+    moon_illumination: float
+    sky_mag_arcsec2: float
+
+
+def _sight(night: Night, index: int, place: int, mjd: NDArray[np.float64]) -> _Sight:
+    """Return where an exposure of a target looked; ``mjd`` (3,) UTC at start, middle and end."""
+    site = night.observatory.site
+    where = horizontal(night.places.only(index), mjd, site)
+    masses = airmass(
+        apparent_altitude_deg(where.altitude_deg[0], night.air), site.airmass_model, night.air
+    )
+    the_moon = moon(mjd, site)
+    from_moon_deg = separation_deg(
+        night.places.ra_deg[index], night.places.dec_deg[index],
+        the_moon.ra_deg[1], the_moon.dec_deg[1],
+    )  # fmt: skip
+    sky = sky_mag_arcsec2(
+        night.observatory.filters[place],
+        altitude_deg=where.altitude_deg[0, 1],
+        sun_altitude_deg=sun(mjd, site).altitude_deg[1],
+        moon=MoonLight(
+            altitude_deg=the_moon.altitude_deg[1],
+            separation_deg=from_moon_deg,
+            phase_angle_deg=the_moon.phase_angle_deg[1],
+        ),
+        pressure_hpa=night.air.pressure_hpa,
+    )
+    return _Sight(
+        airmass=(float(masses[0]), float(masses[1]), float(masses[2])),
+        altitude_deg=float(where.altitude_deg[0, 1]),
+        azimuth_deg=float(where.azimuth_deg[0, 1]),
+        hour_angle_h=float(where.hour_angle_h[0, 1]),
+        moon_separation_deg=float(from_moon_deg),
+        moon_altitude_deg=float(the_moon.altitude_deg[1]),
+        moon_illumination=float(the_moon.illumination[1]),
+        sky_mag_arcsec2=float(sky),
     )
 
 
