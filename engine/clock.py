@@ -49,12 +49,6 @@ class PacedClock:
         """Seconds of the night per second of the computer's."""
         return self._pace
 
-    def set_pace(self, pace: float) -> None:
-        """Go on from the present moment at another pace."""
-        self._start_mjd = self.now_mjd()
-        self._origin_s = time.monotonic()
-        self._pace = pace
-
     def now_mjd(self) -> float:
         """Return the moment now, UTC MJD (days)."""
         elapsed_s = (time.monotonic() - self._origin_s) * self._pace

@@ -37,10 +37,6 @@ class Logbook:
     programmes: tuple[Programme, ...]
     targets: tuple[Target, ...]
 
-    def with_target(self, target: Target) -> Logbook:
-        """Return the logbook with one more target; nothing is written."""
-        return Logbook(self.folder, self.observatory, self.programmes, (*self.targets, target))
-
 
 class _Lines(Protocol):
     """Something that knows on which line a key of its file stands."""

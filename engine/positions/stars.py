@@ -24,7 +24,6 @@ if TYPE_CHECKING:
 Floats = NDArray[np.float64]
 
 J2000_YR = 2000.0
-DAYS_PER_JULIAN_YEAR = 365.25
 MILLIARCSEC_RAD = np.deg2rad(1.0 / 3600.0e3)
 # Speed of the Earth's surface at the equator over the speed of light: 465.1 m/s / c.
 DIURNAL_ABERRATION_RAD = 465.101 / 299792458.0

@@ -112,11 +112,8 @@ def test_targets_of_several_files_in_order(tmp_path: Path) -> None:
 
 
 def test_a_logbook_does_not_change(tmp_path: Path) -> None:
-    """A target more is another logbook."""
+    """What was read stays as it was read."""
     logbook = load_logbook(written(tmp_path))
-    more = logbook.targets[1].model_copy(update={"name": "SA 98 again"})
-    assert len(logbook.with_target(more).targets) == 3
-    assert len(logbook.targets) == 2
     with pytest.raises(dataclasses.FrozenInstanceError):
         logbook.targets = ()  # type: ignore[misc]
 
