@@ -257,7 +257,7 @@ def test_a_defect_anywhere_is_told_and_survived(
             raise RuntimeError("a wheel came off")
 
         with monkeypatch.context() as patch:
-            patch.setattr("tui.console.view.paint_head", broken)
+            patch.setattr("tui.console.painting.paint_head", broken)
             await trial.wait(1.0)
             assert "a wheel came off" in trial.text("notices")
         with monkeypatch.context() as patch:

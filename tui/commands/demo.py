@@ -64,7 +64,8 @@ def _told(state: NightState, rehearsal: Rehearsal) -> list[str]:
 
 
 def _console(arguments: argparse.Namespace, folder: Path) -> int:
-    from tui.console.app import Autopilot, Console
+    from tui.console.app import Console
+    from tui.console.clockwork import Autopilot
     from tui.console.start import look_for, need_a_terminal, run_console
     from tui.look.terminal import SteadyDriver
 

@@ -8,6 +8,8 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
+from tui.console.views import VIEWS
+
 
 @dataclass(frozen=True, slots=True)
 class Action:
@@ -21,7 +23,7 @@ class Action:
     footer: int = 0  # its place in the footer, from 1; 0 for none
 
 
-GROUPS = ("the common round", "exposures", "conditions", "the night", "the screen")
+GROUPS = ("the common round", "exposures", "conditions", "the night", "the views", "the screen")
 
 ACTIONS: tuple[Action, ...] = (
     Action(
@@ -154,12 +156,13 @@ ACTIONS: tuple[Action, ...] = (
         GROUPS[3],
         footer=10,
     ),
+    *(Action(each.action, (each.key,), each.title, each.sentence, GROUPS[4]) for each in VIEWS),
     Action(
         "next_panel",
         ("tab",),
         "panel",
         "Show the next panel: target, order, log.",
-        GROUPS[4],
+        GROUPS[5],
         footer=3,
     ),
     Action(
@@ -167,12 +170,12 @@ ACTIONS: tuple[Action, ...] = (
         ("slash",),
         "find",
         "Show only targets whose name or programme holds a text.",
-        GROUPS[4],
+        GROUPS[5],
     ),
-    Action("next_look", ("v",), "look", "Change the colours: night, red, day, mono.", GROUPS[4]),
-    Action("help", ("question_mark", "f1"), "help", "Show every key.", GROUPS[4], footer=2),
+    Action("next_look", ("v",), "look", "Change the colours: night, red, day, mono.", GROUPS[5]),
+    Action("help", ("question_mark", "f1"), "help", "Show every key.", GROUPS[5], footer=2),
     Action(
-        "leave", ("q", "ctrl+q"), "leave", "Leave the console; the log keeps the night.", GROUPS[4]
+        "leave", ("q", "ctrl+q"), "leave", "Leave the console; the log keeps the night.", GROUPS[5]
     ),
 )
 

@@ -2,15 +2,14 @@
 
 It paints first and loads the engine after: astropy takes longer to import than all the rest, and an
 observer who opens a console wants to see it. So nothing here imports the engine but its errors; the
-view and the deeds come with the opened night.
+painting, the views and the deeds come with the opened night.
 """
 
 from __future__ import annotations
 
-import logging
 from collections.abc import Callable, Iterable, Sequence
 from functools import partial
-from typing import TYPE_CHECKING, Protocol
+from typing import TYPE_CHECKING
 
 from textual.app import App, ComposeResult, SystemCommand
 from textual.binding import Binding
@@ -19,39 +18,29 @@ from textual.driver import Driver
 from textual.events import Event, Key, Paste, Resize
 from textual.filter import LineFilter
 from textual.screen import Screen
-from textual.worker import Worker, WorkerState
+from textual.worker import Worker
 
 from engine.errors import WarmroomError
-from tui.console.actions import ACTION_OF_KEY, ACTIONS, MOVES, cap, footer_actions
+from tui.console.actions import ACTION_OF_KEY, ACTIONS, MOVES
+from tui.console.clockwork import TICK_S, Autopilot, Clockwork
+from tui.console.foot import foot_keys, foot_line
 from tui.console.help import HelpScreen
+from tui.console.views import NIGHT, VIEW_OF_ACTION
 from tui.look import LOOKS, CleanFilter, MonoFilter, RedFilter
 from tui.look.terminal import MustLeave
 from tui.paint.spans import Line, Span, cut, line
 from tui.widgets import Entry, LiveList, Question, Sheet
 
 if TYPE_CHECKING:
-    from engine.log import StepWatch
-    from engine.watch import Opened, Planned, Watch
+    from engine.watch import Opened, Watch
     from tui.console.deeds import Deeds
-    from tui.console.view import View
+    from tui.console.painting import Painting
+    from tui.console.views.base import View
 
-TICK_S = 0.5
-# With a clock that runs fast, exposures are over in a second or two.
-QUICK_TICK_S = 0.2
 WIDE_COLUMNS, TALL_ROWS = 120, 34
 NOTICES_KEPT = 50
 PANELS_WIDE = ("order", "log")
 PANELS_NARROW = ("list", "target", "order", "log")
-
-log = logging.getLogger(__name__)
-
-
-class Autopilot(Protocol):
-    """Somebody who observes instead of the observer: the rehearsal's player."""
-
-    def tick(self, watch: Watch) -> Sequence[str]:
-        """Do what is to be done now; return what to tell the onlooker."""
-        ...
 
 
 class Console(App[None]):
@@ -78,19 +67,20 @@ class Console(App[None]):
         self.failure: WarmroomError | None = None
         # What the observer must still be told once the terminal is her shell's again.
         self.parting: str | None = None
-        self.live: Watch | None = None
         self.look = look
         self.find_text = ""
         self.panel = "list"
         self.notices: list[Span] = []
-        self._open_night = open_night
-        self._autopilot = autopilot
-        self._tick_s = tick_s
-        self._view: View | None = None
+        self.view = NIGHT
+        self._painting: Painting | None = None
         self._deeds: Deeds | None = None
-        self._planning = False
-        self._notices_steps = notices_steps
-        self._steps: StepWatch | None = None
+        self._clockwork = Clockwork(
+            self,
+            open_night,
+            autopilot=autopilot,
+            tick_s=tick_s,
+            notices_steps=notices_steps,
+        )
 
     # What stands where
 
@@ -104,6 +94,7 @@ class Console(App[None]):
             with Vertical(id="side"):
                 yield Sheet(id="card")
                 yield Sheet(id="panel")
+        yield Sheet(id="view")
         yield Sheet(id="notices")
         yield Entry(id="entry")
         yield Sheet(id="foot")
@@ -115,7 +106,7 @@ class Console(App[None]):
             self.register_theme(look.theme())
         self.set_look(self.look)
         self.sheet("under-way").show([line(Span(" opening the night ...", "dim"))])
-        self.call_after_refresh(self._load)
+        self.call_after_refresh(self._clockwork.open)
 
     def on_resize(self, event: Resize) -> None:
         """Use a wide screen well, and a small one fully."""
@@ -136,126 +127,46 @@ class Console(App[None]):
         """Return a panel by its id."""
         return self.screen_stack[0].query_one(f"#{name}", Sheet)
 
-    # Opening
+    # The night
 
-    def _load(self) -> None:
-        self.run_worker(self._opening, name="opening", thread=True, exit_on_error=False)
-
-    def _opening(self) -> Opened:
-        # Imported here, on the worker's thread: the view brings the whole engine with it.
-        import tui.console.deeds
-        import tui.console.view  # noqa: F401 - so that the handler finds it loaded
-
-        return self._open_night()
-
-    def on_worker_state_changed(self, event: Worker.StateChanged) -> None:
-        """Adopt what a worker made; what it raised is told, and the night goes on."""
-        worker = event.worker
-        if worker.name not in ("opening", "planning"):
-            return
-        if event.state is WorkerState.ERROR:
-            self._worker_failed(worker)
-        elif event.state is WorkerState.SUCCESS and worker.name == "planning":
-            self._planned(worker.result)
-        elif event.state is WorkerState.SUCCESS and worker.result is not None:
-            self._opened(worker.result)
-
-    def _worker_failed(self, worker: Worker[object]) -> None:
-        error = worker.error
-        if worker.name == "opening":
-            self.failure = (
-                error
-                if isinstance(error, WarmroomError)
-                else WarmroomError(f"the night could not be opened: {error!r}")
-            )
-            self.exit()
-            return
-        self._planning = False
-        log.error("planning failed", exc_info=error)
-        self.tell(f"planning failed ({error!r}); the order shown is the last good one", "bad")
-
-    def _opened(self, opened: Opened) -> None:
-        from engine.log import StepWatch
-        from tui.console.deeds import Deeds
-        from tui.console.view import View
-
-        self.live = opened.watch
-        self._view = View(self, opened.watch)
-        self._deeds = Deeds(self, opened.watch)
-        self._view.prepare()
-        if self._notices_steps:
-            self._steps = StepWatch(opened.watch.clock)
-        for finding in opened.findings[:3]:
-            self.tell(f"the log: line {finding.line}: {finding.what}", "warn")
-        # A planner's tables are ready now: the first plan can begin at once.
-        quick = opened.watch.clock.pace != 1.0
-        self.set_interval(min(self._tick_s, QUICK_TICK_S) if quick else self._tick_s, self.beat)
-        self.beat()
-
-    # The clockwork
+    @property
+    def live(self) -> Watch | None:
+        """The watch over the night; None until it is open."""
+        return self._clockwork.watch
 
     @property
     def is_settled(self) -> bool:
         """Whether there is a plan and none is being made."""
-        return self.live is not None and self.live.plan is not None and not self._planning
+        return self._clockwork.is_settled
+
+    def on_worker_state_changed(self, event: Worker.StateChanged) -> None:
+        """Let the clockwork adopt what a worker made."""
+        self._clockwork.take_from(event.worker, event.state)
+
+    def adopt(self, opened: Opened) -> None:
+        """Show the night that was opened."""
+        from tui.console.deeds import Deeds
+        from tui.console.painting import Painting
+
+        self._painting = Painting(self, opened.watch)
+        self._deeds = Deeds(self, opened.watch)
+        for finding in opened.findings[:3]:
+            self.tell(f"the log: line {finding.line}: {finding.what}", "warn")
+
+    def give_up(self, failure: WarmroomError) -> None:
+        """Leave because the night could not be opened."""
+        self.failure = failure
+        self.exit()
 
     def beat(self) -> None:
         """Do what has come due, and show it: called by a timer."""
-        watch = self.live
-        if watch is None:
-            return
-        self._guarded(lambda: self._notice_step(watch))
-        self._guarded(watch.tick)
-        self._guarded(lambda: self._let_autopilot(watch))
-        self._plan_if_wanted(watch, idle=True)
-        self.paint()
-
-    def _notice_step(self, watch: Watch) -> None:
-        """Log and tell when the computer's clock has jumped."""
-        step = self._steps.step() if self._steps is not None else None
-        if step is not None:
-            watch.submit(step)
-            self.tell(f"the computer's clock jumped {step.seconds:+.1f} s: {step.why}", "bad")
-
-    def _let_autopilot(self, watch: Watch) -> None:
-        if self._autopilot is not None and watch.plan is not None:
-            for said in self._autopilot.tick(watch):
-                self.tell(said)
-
-    def _guarded(self, deed: Callable[[], object]) -> None:
-        """Do something; what it raises is told, a defect is written down, and the night goes on."""
-        try:
-            deed()
-        except WarmroomError as error:
-            self.tell(str(error), "warn")
-        except Exception as error:
-            log.exception("a defect")
-            self.tell(
-                f"a defect of warmroom ({error!r}); the log is safe, the night goes on", "bad"
-            )
-
-    def _plan_if_wanted(self, watch: Watch, *, idle: bool = False) -> None:
-        if self._planning:
-            return
-        work = watch.planning() or (watch.idling() if idle else None)
-        if work is not None:
-            self._planning = True
-            self.run_worker(work, name="planning", group="plan", thread=True, exit_on_error=False)
-
-    def _planned(self, planned: Planned | None) -> None:
-        self._planning = False
-        if self.live is None or planned is None:
-            return
-        self.live.adopt(planned)
-        for said in reversed(planned.plan.news):
-            self.tell(said, "now")
-        self._plan_if_wanted(self.live)
+        self._clockwork.beat()
         self.paint()
 
     def paint(self) -> None:
         """Show everything as it is now; only what changed is sent."""
-        if self._view is not None:
-            self._guarded(self._view.paint)
+        if self._painting is not None:
+            self._clockwork.guarded(self._painting.paint)
         self._paint_notices()
 
     def tell(self, text: str, role: str = "text") -> None:
@@ -292,17 +203,26 @@ class Console(App[None]):
         if len(self.screen_stack) != 1:
             return False
         if self._entry.is_open:
-            self._guarded(lambda: self._entry.take_key(event.key, event.character))
+            self._clockwork.guarded(lambda: self._entry.take_key(event.key, event.character))
             self.paint()
         elif event.key in ACTION_OF_KEY:
             self.action_do(ACTION_OF_KEY[event.key])
         elif event.key in MOVES:
-            self._list.move(*MOVES[event.key])
+            self._clockwork.guarded(lambda: self._move(*MOVES[event.key]))
+        elif (view := self._shown_view) is not None and view.take_key(event.key, event.character):
+            self.paint()
         elif event.key == "escape":
             self._put_aside()
         else:
             return False
         return True
+
+    def _move(self, by: int, unit: str) -> None:
+        """Move the cursor of the view that is shown, else that of the list."""
+        view = self._shown_view
+        if view is None or not view.move(by, unit):
+            self._list.move(by, unit)
+        self.paint()
 
     @property
     def _entry(self) -> Entry:
@@ -314,21 +234,46 @@ class Console(App[None]):
 
     def action_do(self, name: str) -> None:
         """Do an action of the table; what can't be done now is told in one line."""
-        own = getattr(self, f"_do_{name}", None)
-        deeds = self._deeds
-        if own is not None:
-            self._guarded(own)
-        elif deeds is None:
+        self._clockwork.guarded(lambda: self._do(name))
+        self.after_deed()
+
+    def _do(self, name: str) -> None:
+        view, own = self._shown_view, getattr(self, f"_do_{name}", None)
+        if name in VIEW_OF_ACTION:
+            self.show_view(VIEW_OF_ACTION[name])
+        elif view is not None and view.take_action(name):
+            return
+        elif own is not None:
+            own()
+        elif self._deeds is None:
             self.tell("the night is still being opened", "dim")
         else:
-            self._guarded(lambda: deeds.do(name))
-        self.after_deed()
+            self._deeds.do(name)
 
     def after_deed(self) -> None:
         """Plan anew if the deed asks for it, and show what it did."""
-        if self.live is not None:
-            self._plan_if_wanted(self.live)
+        self._clockwork.plan_if_wanted()
         self.paint()
+
+    @property
+    def chosen(self) -> str | None:
+        """The name of the target under the cursor, the same in every view."""
+        return self._list.key
+
+    def choose(self, name: str) -> None:
+        """Put the cursor on a target."""
+        self._list.move_to(name)
+
+    def show_view(self, name: str) -> None:
+        """Show a view of the table in the place under the state of the night."""
+        self.view = name
+        self.screen_stack[0].set_class(name != NIGHT, "aside")
+        # The place has its new size only once it is laid out.
+        self.call_after_refresh(self.paint)
+
+    @property
+    def _shown_view(self) -> View | None:
+        return self._painting.view if self._painting is not None else None
 
     def ask(self, question: Question) -> None:
         """Ask for something in the entry line."""
@@ -403,21 +348,12 @@ class Console(App[None]):
         return [*filters, CleanFilter()]
 
     def _paint_foot(self) -> None:
-        if self._view is not None:
-            self._view.paint_foot()
+        if self._painting is not None:
+            self._painting.paint_foot()
             return
-        keys = [(cap(a.keys[0]), a.label) for a in footer_actions()]
-        self.sheet("foot").show([foot_line(keys)])
+        self.sheet("foot").show([foot_line(foot_keys(), self.size.width)])
 
     def get_system_commands(self, screen: Screen[object]) -> Iterable[SystemCommand]:
         """Offer every action of the table in the command palette."""
         for action in ACTIONS:
             yield SystemCommand(action.label, action.sentence, partial(self.action_do, action.name))
-
-
-def foot_line(keys: Iterable[tuple[str, str]]) -> Line:
-    """Return the foot: each key and its word."""
-    spans: list[Span] = []
-    for key, word in keys:
-        spans += [Span(f" {key}", "accent"), Span(f" {word} ", "dim")]
-    return tuple(spans)

@@ -12,6 +12,7 @@ TWILIGHT = ((-50.0 / 60.0, "█"), (-6.0, "▓"), (-12.0, "▒"), (-18.0, "░")
 # The Moon's altitude in eight steps of a cell.
 HEIGHTS = " ▁▂▃▄▅▆▇█"
 LABEL_WIDTH = 6
+ALL_ROWS = 5
 
 
 @dataclass(frozen=True, slots=True)
@@ -43,10 +44,20 @@ class NightStrip:
     roles: tuple[str, str] = field(default=("planned", "planned2"))
 
 
-def paint_strip(strip: NightStrip, width: int) -> list[Line]:
-    """Return the strip's five rows: hours, light, Moon, plan, done."""
+def paint_strip(strip: NightStrip, width: int, rows: int = ALL_ROWS) -> list[Line]:
+    """Return the strip's five rows: hours, light, Moon, plan, done.
+
+    With room for fewer, two: hours, and what was done before now with what is planned after it.
+    """
     columns = max(width - LABEL_WIDTH, 10)
     now = int(strip.now_h / strip.hours * columns)
+    if rows < ALL_ROWS:
+        plan, done = _plan(strip, columns, now), _done(strip, columns, now)
+        both = [p if d.text == " " else d for p, d in zip(plan, done, strict=True)]
+        return [
+            _labelled("", _hours(strip, columns, now)),
+            _labelled("night", both),
+        ]
     return [
         _labelled("", _hours(strip, columns, now)),
         _labelled("light", _light(strip, columns, now)),
@@ -82,7 +93,9 @@ def _hours(strip: NightStrip, columns: int, now: int) -> list[Span]:
     for hour in range(whole, whole + int(strip.hours) + 1):
         at = round((hour - strip.begin_hour) / strip.hours * columns)
         text = f"{hour % 24:02d}"
-        if hour % every == 0 and 0 <= at <= columns - len(text):
+        # An hour whose figures the marker would cut in two is left out.
+        fits = 0 <= at <= columns - len(text) and not at <= now < at + len(text)
+        if hour % every == 0 and fits:
             for offset, character in enumerate(text):
                 cells[at + offset] = Span(character, "dim")
     if 0 <= now < columns:

@@ -13,8 +13,8 @@ from tui.paint.spans import Line
 OUTCOME_GLYPHS = {"good": ("━", "good"), "rejected": ("×", "bad"), "stopped": ("╸", "warn")}
 
 
-def paint_night(watch: Watch, width: int) -> list[Line]:
-    """Return the strip's rows."""
+def paint_night(watch: Watch, width: int, height: int) -> list[Line]:
+    """Return the strip's rows: all five, or the two there is room for."""
     night, now_mjd = watch.planner.night, watch.clock.now_mjd()
     begin_mjd, end_mjd = float(night.mjd[0]), float(night.mjd[-1])
     begin = local(watch, begin_mjd)
@@ -51,7 +51,7 @@ def paint_night(watch: Watch, width: int) -> list[Line]:
         ),
         moon_label=f"{night.moon.illumination[at]:.0%} lit",
     )
-    return paint_strip(strip, width)
+    return paint_strip(strip, width, height)
 
 
 def _outcome(outcome: str) -> tuple[str, str]:

@@ -1,17 +1,20 @@
-"""What every panel shows, from the watch: the only place where panels meet widgets."""
+"""What every panel and view shows, from the watch: the only place where they meet widgets."""
 
 from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
 from engine.watch import Watch, cautions
-from tui.console.actions import cap, footer_actions
+from tui.console.foot import foot_keys, foot_line, views_line
 from tui.console.panels.head import paint_head
 from tui.console.panels.night import paint_night
 from tui.console.panels.record import paint_log, paint_order
 from tui.console.panels.target import paint_target
 from tui.console.panels.targets import COLUMNS, target_rows
 from tui.console.panels.under_way import go_on_label, paint_under_way
+from tui.console.views import NIGHT
+from tui.console.views.base import View
+from tui.console.views.classes import CLASSES
 from tui.paint.spans import Line
 from tui.widgets import LiveList
 
@@ -19,7 +22,7 @@ if TYPE_CHECKING:
     from tui.console.app import Console
 
 
-class View:
+class Painting:
     """Paints the console from its watch. Keeps nothing of the night."""
 
     def __init__(self, console: Console, watch: Watch) -> None:
@@ -28,30 +31,37 @@ class View:
         self._told: set[str] = set()
         self._followed_n = 0
         self._trouble: str | None = None
+        self._views: dict[str, View] = {}
+        self._list.set_columns(COLUMNS)
+
+    @property
+    def view(self) -> View | None:
+        """The view that is shown; None when it is the night itself."""
+        name = self._console.view
+        if name == NIGHT:
+            return None
+        if name not in self._views:
+            self._views[name] = CLASSES[name](self._console, self._watch)
+        return self._views[name]
 
     @property
     def _list(self) -> LiveList:
         return self._console.screen_stack[0].query_one("#list", LiveList)
 
-    def prepare(self) -> None:
-        """Give the list its columns."""
-        self._list.set_columns(COLUMNS)
-
     def paint(self) -> None:
         """Show everything as it is now."""
         console, watch = self._console, self._watch
-        for name, painted in (("head", paint_head), ("night", paint_night)):
-            sheet = console.sheet(name)
-            sheet.show(painted(watch, sheet.size.width))
+        head, night = console.sheet("head"), console.sheet("night")
+        head.show(paint_head(watch, head.size.width))
+        night.show(paint_night(watch, night.size.width, night.size.height))
         under_way = console.sheet("under-way")
         under_way.show(paint_under_way(watch, under_way.size.width, under_way.size.height))
-        self._arrange()
         self._list.set_rows(target_rows(watch, console.find_text))
         self._follow_the_telescope()
-        if console.is_wide:
-            self._paint_panel("card", "target")
-        if console.panel != "list":
-            self._paint_panel("panel", console.panel)
+        if self.view is None:
+            self._paint_panels()
+        else:
+            self._paint_view(self.view)
         self._tell_cautions()
         self._tell_trouble()
         self.paint_foot()
@@ -69,12 +79,24 @@ class View:
             self._list.move_to(state.added[-1].name)
 
     def paint_foot(self) -> None:
-        """Show the keys, the common one with what it does now."""
-        from tui.console.app import foot_line
+        """Show the keys, the common one with what it does now, and those of the view."""
+        own = self.view.hints if self.view is not None else ()
+        keys = foot_keys({"go_on": go_on_label(self._watch)}, own)
+        foot = self._console.sheet("foot")
+        foot.show([foot_line(keys, foot.size.width)])
 
-        label = {"go_on": go_on_label(self._watch)}
-        keys = [(cap(a.keys[0]), label.get(a.name, a.label)) for a in footer_actions()]
-        self._console.sheet("foot").show([foot_line(keys)])
+    def _paint_view(self, view: View) -> None:
+        """Show a view below a line that names it and all others."""
+        sheet = self._console.sheet("view")
+        width, height = sheet.size
+        sheet.show([views_line(self._console.view, width), *view.paint(width, height - 1)])
+
+    def _paint_panels(self) -> None:
+        self._arrange()
+        if self._console.is_wide:
+            self._paint_panel("card", "target")
+        if self._console.panel != "list":
+            self._paint_panel("panel", self._console.panel)
 
     def _arrange(self) -> None:
         """Show list and panels side by side where there is room, else one in place of the other."""

@@ -1,0 +1,49 @@
+"""The foot: the keys that are needed first, as many as fit whole; and the line of the views."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Mapping
+
+from tui.console.actions import action_named, cap, footer_actions
+from tui.console.views import VIEWS
+from tui.paint.spans import Line, Span, cut, width_of
+
+Keys = list[tuple[str, str]]
+# How many of the footer's actions stand before the keys of the views.
+BEFORE_VIEWS = 2
+
+
+def foot_keys(labels: Mapping[str, str] | None = None, own: Iterable[tuple[str, str]] = ()) -> Keys:
+    """Return the foot's keys and words, the most needed first.
+
+    ``labels`` holds other words for actions by name, ``own`` the keys of the view that is shown.
+    """
+    said = labels or {}
+    keys = [(cap(a.keys[0]), said.get(a.name, a.label)) for a in footer_actions()]
+    of_views = [cap(action_named(each.action).keys[0]) for each in VIEWS]
+    views = [(f"{of_views[0]}-{of_views[-1]}", "views")] if len(of_views) > 1 else []
+    return [*keys[:BEFORE_VIEWS], *views, *own, *keys[BEFORE_VIEWS:]]
+
+
+def foot_line(keys: Iterable[tuple[str, str]], width: int) -> Line:
+    """Return the foot: each key and its word, leaving out what does not fit whole."""
+    spans: list[Span] = []
+    for key, word in keys:
+        entry = [Span(f" {key}", "accent"), Span(f" {word} ", "dim")]
+        if width_of([*spans, *entry]) <= width:
+            spans += entry
+    return tuple(spans)
+
+
+def views_line(shown: str, width: int) -> Line:
+    """Return the line that names every view with its key, the one shown in capitals."""
+    spans: list[Span] = []
+    for each in VIEWS:
+        key = cap(action_named(each.action).keys[0])
+        title = each.title.upper() if each.name == shown else each.title
+        spans += [Span(f" {key}", "accent"), Span(f" {title} ", _role(each.name == shown))]
+    return cut(tuple(spans), width)
+
+
+def _role(is_shown: bool) -> str:
+    return "strong" if is_shown else "dim"

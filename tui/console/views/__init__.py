@@ -1,0 +1,39 @@
+"""The console's views: each fills the place under the state of the night, one key away.
+
+This table is light on purpose: the table of actions and the footer read it before the engine is
+loaded. The views themselves are in the modules beside it, and `classes` names them.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+
+@dataclass(frozen=True, slots=True)
+class ViewEntry:
+    """One view: its stable name, its key, its title on the screen, and what it shows."""
+
+    name: str
+    key: str
+    title: str
+    sentence: str
+
+    @property
+    def action(self) -> str:
+        """The name of the action that shows it."""
+        return f"view_{self.name}"
+
+
+# The list with its panels; the frame shows it itself. The others are modules of this package.
+NIGHT = "night"
+
+VIEWS: tuple[ViewEntry, ...] = (
+    ViewEntry(NIGHT, "1", "night", "Show the night under way: the list, a target, the order."),
+)
+
+VIEW_OF_ACTION: dict[str, str] = {each.action: each.name for each in VIEWS}
+
+
+def view_named(name: str) -> ViewEntry:
+    """Return the entry of a view; KeyError for an unknown one."""
+    return next(each for each in VIEWS if each.name == name)

@@ -1,0 +1,7 @@
+"""The classes of the views by their names in the table. Importing this brings the engine."""
+
+from __future__ import annotations
+
+from tui.console.views.base import View
+
+CLASSES: dict[str, type[View]] = {}
