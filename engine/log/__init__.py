@@ -39,6 +39,7 @@ from engine.log.state import (
     OpenExposure,
     Run,
     RunStep,
+    effective,
     fold,
     last_undoable,
 )
@@ -88,6 +89,7 @@ __all__ = [
     "TargetAdded",
     "Word",
     "audit",
+    "effective",
     "fold",
     "last_undoable",
     "night_logs",

@@ -148,6 +148,15 @@ def fold(events: Iterable[Event]) -> NightState:
     return replace(state, events=written, withdrawn=withdrawn)
 
 
+def effective(events: Iterable[Event]) -> tuple[Event, ...]:
+    """Return the events that stand, in the order of their numbers, with amendments carried out.
+
+    They are what `fold` folds, for questions that its state does not answer.
+    """
+    written = tuple(sorted(events, key=lambda event: event.n))
+    return tuple(_effective(written, _withdrawn(written)))
+
+
 def last_undoable(state: NightState) -> Event | None:
     """Return the entry that `undo` would withdraw now: the last of the observer's that stands.
 

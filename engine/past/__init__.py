@@ -1,0 +1,5 @@
+"""Past nights: an index over all logs of a logbook, and the questions it answers."""
+
+from engine.past.index import PastIndex, index_path
+
+__all__ = ["PastIndex", "index_path"]
