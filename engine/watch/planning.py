@@ -74,7 +74,7 @@ class Planner:
         a degree or a hectopascal: small changes of the air keep the tables.
         """
         as_read = logbook or self._as_read
-        air = measured_air(state, now_mjd, self.night.air)
+        air = measured_air(state, now_mjd, self.logbook.observatory.site.elevation_m)
         same_air = not _differs(air, self.night.air)
         if same_air and as_read is self._as_read and state.added == self._added:
             return self
@@ -171,8 +171,12 @@ def ordered(problem: Problem, in_force: Order, work: Work) -> Order:
     return kept or propose(problem, in_force, afresh=work is Work.AFRESH)
 
 
-def measured_air(state: NightState, now_mjd: float, otherwise: Air) -> Air:
-    """Return the air (pressure, temperature, humidity) from what was entered in the last hours."""
+def measured_air(state: NightState, now_mjd: float, elevation_m: float) -> Air:
+    """Return the air (pressure, temperature, humidity) from what was entered in the last hours.
+
+    The standard air of the site's height for what was not, or was withdrawn.
+    """
+    otherwise = Air.standard(elevation_m)
 
     def latest(quantity: str, known: float) -> float:
         entered = state.latest(quantity)

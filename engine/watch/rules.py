@@ -93,6 +93,11 @@ def _less(moments: dict[str, float], name: str) -> dict[str, float]:
     return {each: mjd for each, mjd in moments.items() if each != name}
 
 
+def decided(rules: Rules) -> dict[str, str]:
+    """Return the code of the reason that the observer made, by target: put off, or dropped."""
+    return dict.fromkeys(rules.put_off, "put_off") | dict.fromkeys(rules.dropped, "dropped")
+
+
 def is_pinned(state: NightState, name: str) -> bool:
     """Say whether a target is pinned, next or at a time, and the pin has not served yet."""
     standing = _standing(state)

@@ -18,8 +18,8 @@ from engine.positions import almanac
 from engine.times import iso_from_mjd, night_of
 from engine.watch.listing import listed
 from engine.watch.opening import done_before
-from engine.watch.planning import Planner, forecast_of
-from engine.watch.rules import rules_from
+from engine.watch.planning import Planner, forecast_of, measured_air
+from engine.watch.rules import decided, rules_from
 
 
 @dataclass(frozen=True, slots=True)
@@ -45,7 +45,8 @@ def snapshot(logbook: Logbook, mjd: float | None, seeing_arcsec: float | None) -
     state = state_of_night(logbook, date_, mjd)
     logbook = listed(logbook, state.added)
     times = almanac(observatory.site, date_)
-    night = tables(observatory, logbook.targets, times, np.array([mjd]))
+    air = measured_air(state, mjd, observatory.site.elevation_m)
+    night = tables(observatory, logbook.targets, times, np.array([mjd]), air)
     model = ImageModel(observatory, night.air)
     source = "given"
     if seeing_arcsec is None:
@@ -55,7 +56,7 @@ def snapshot(logbook: Logbook, mjd: float | None, seeing_arcsec: float | None) -
             source = "from the night's log"
     outlook = Outlooks(night, model).given(np.array([seeing_arcsec]))
     progress = plans(logbook.targets, (*done_before(logbook.folder, date_), *state.kept))
-    seen = targets_at(night, outlook, mjd, progress)
+    seen = targets_at(night, outlook, mjd, progress, decided(rules_from(state, mjd)))
     return Snapshot(mjd, night, model, seeing_arcsec, source, seen)
 
 

@@ -31,7 +31,7 @@ from engine.times import MINUTES_PER_DAY, SECONDS_PER_DAY
 from engine.watch.plan import Plan
 from engine.watch.planning import Planned, Planner
 from engine.watch.record import Ending, exposure_record
-from engine.watch.rules import rules_from
+from engine.watch.rules import decided, rules_from
 from engine.watch.stage import NextExposure, Stage, next_in_run, stage_of
 from engine.watch.triggers import Wish, Work, work_after
 
@@ -131,9 +131,8 @@ class Watch:
         if self.plan is None:
             return ()
         now_mjd = self.clock.now_mjd()
-        rules = rules_from(self._state, now_mjd)
-        decided = dict.fromkeys(rules.put_off, "put_off") | dict.fromkeys(rules.dropped, "dropped")
-        return targets_at(self.planner.night, self.plan.outlook, now_mjd, self.plans(), decided)
+        made = decided(rules_from(self._state, now_mjd))
+        return targets_at(self.planner.night, self.plan.outlook, now_mjd, self.plans(), made)
 
     def next_exposure(self) -> tuple[NextExposure, float] | None:
         """Return what comes next in the run under way and when (UTC MJD); None without a run.

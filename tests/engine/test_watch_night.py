@@ -7,10 +7,10 @@ from pathlib import Path
 import pytest
 
 from engine.clock import SystemClock
-from engine.log import Close
+from engine.log import Close, Conditions
 from engine.logbook import load_logbook, typed_target
 from engine.rehearsal import NIGHT
-from engine.watch import Stage, Watch, acts, open_watch, order_of_night
+from engine.watch import Stage, Watch, acts, open_watch, order_of_night, snapshot
 from tests.engine.watch_nights import a_console, evening_clock, plan, small_logbook
 
 
@@ -63,6 +63,53 @@ def test_the_order_of_a_past_night_does_not_count_what_it_was_yet_to_take(
 
     assert targets(None) == {"Near", "Far"}
     assert targets(clock.now_mjd()) == {"Far"}
+
+
+def test_air_that_was_typed_wrongly_and_undone_is_forgotten(tmp_path: Path) -> None:
+    """And air that was typed long ago."""
+    folder = small_logbook(tmp_path)
+    clock = evening_clock(folder)
+    with a_console(folder, clock) as watch:
+
+        def temperature_c() -> float:
+            # The air alone asks for no plan: the observer's next decision does.
+            acts.drop(watch, "Far")
+            plan(watch)
+            return watch.planner.night.air.temperature_c
+
+        standard_c = temperature_c()
+        acts.conditions(watch, Conditions(temperature_c=-25.0))
+        assert temperature_c() == -25.0
+        acts.undo(watch)
+        acts.undo(watch)
+        assert temperature_c() == standard_c
+        acts.conditions(watch, Conditions(temperature_c=-25.0))
+        clock.advance_s(3.9 * 3600.0)
+        assert temperature_c() == -25.0
+        clock.advance_s(0.2 * 3600.0)
+        assert temperature_c() == standard_c
+
+
+def test_who_only_asks_sees_what_the_console_sees(tmp_path: Path) -> None:
+    """The air that was typed, what was dropped, the seeing: all of it is in the log."""
+    folder = small_logbook(tmp_path)
+    clock = evening_clock(folder)
+    with a_console(folder, clock) as watch:
+        acts.conditions(watch, Conditions(temperature_c=-25.0, pressure_hpa=780.0))
+        acts.zenith_seeing(watch, 2.5)
+        acts.drop(watch, "Far")
+        plan(watch)
+        clock.advance_s(60.0)
+        assert watch.plan is not None
+        shown = {each.target.name: each for each in watch.targets_now()}
+        seeing_arcsec = float(watch.plan.forecast.at(clock.now_mjd())[0])
+    seen = snapshot(load_logbook(folder), clock.now_mjd(), None)
+    assert seen.night.air.temperature_c == -25.0
+    assert seen.seeing_arcsec == pytest.approx(seeing_arcsec, rel=0.01)
+    for each in seen.targets:
+        assert each.reasons == shown[each.target.name].reasons
+        assert each.airmass == pytest.approx(shown[each.target.name].airmass, abs=0.01)
+    assert [each.target.name for each in seen.targets if each.reasons] == ["Far"]
 
 
 def test_a_night_is_closed_once(tmp_path: Path) -> None:
