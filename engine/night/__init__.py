@@ -6,7 +6,7 @@
 
 from engine.night.moment import FilterNow, TargetNow, targets_at
 from engine.night.outlook import Outlook, Outlooks
-from engine.night.progress import Plans, Progress, is_finished, plans
+from engine.night.progress import Plans, Progress, Taken, is_finished, plans
 from engine.night.reasons import REASONS, Reason, bit_of, reason_coded, reasons_in
 from engine.night.tables import Night, open_night, tables
 
@@ -19,6 +19,7 @@ __all__ = [
     "Plans",
     "Progress",
     "Reason",
+    "Taken",
     "TargetNow",
     "bit_of",
     "is_finished",

@@ -40,6 +40,9 @@ HEADINGS: tuple[Word, ...] = (
 )
 BACKGROUND = "idle"
 
+# The Sun's altitude bends too little in half an hour to hide anything from the finder.
+STEP_DAYS = 0.5 / 24.0
+
 Span = tuple[float, float]
 
 
@@ -71,7 +74,9 @@ def dark_spans_of(header: Header) -> tuple[Span, ...] | None:
     except (ValueError, OverflowError, KeyError):
         return None
     return tuple(
-        spans_above(lambda mjd: limit_deg - sun(mjd, site).altitude_deg, begin_mjd, end_mjd)
+        spans_above(
+            lambda mjd: limit_deg - sun(mjd, site).altitude_deg, begin_mjd, end_mjd, STEP_DAYS
+        )
     )
 
 

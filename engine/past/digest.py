@@ -10,7 +10,7 @@ import json
 import math
 import zlib
 from collections.abc import Sequence
-from dataclasses import dataclass, field
+from dataclasses import astuple, dataclass, field
 from datetime import date
 from operator import attrgetter
 from pathlib import Path
@@ -26,6 +26,7 @@ from engine.log import (
     Exposure,
     Foreign,
     LogReading,
+    NightState,
     Note,
     Override,
     TargetAdded,
@@ -36,6 +37,7 @@ from engine.log import (
 from engine.log.header import SCHEMA
 from engine.log.reader import read_log_bytes
 from engine.past.account import Account, account, dark_spans_of
+from engine.seeing import SeeingMeasurement, summary
 from engine.times import datetime_from_mjd
 
 # How a log was found. The first that is true is said.
@@ -84,6 +86,8 @@ class Text:
 class Digest:
     """What is kept of one log. ``exposures`` are rows of ``FIELDS`` and why each was judged so.
 
+    ``counts`` says of each outcome how many exposures and how many seconds; ``seeing_in_short`` is
+    count, best, lower quartile, median, upper quartile, worst (arcsec), or nothing.
     ``seeing`` and ``images`` are the bytes of float64 tables with the columns named above.
     """
 
@@ -95,6 +99,8 @@ class Digest:
     site: str = ""
     entries: int = 0
     account: Account | None = None
+    counts: dict[str, tuple[int, float]] = field(default_factory=dict)
+    seeing_in_short: tuple[float, ...] = ()
     exposures: tuple[Row, ...] = ()
     tally: tuple[Row, ...] = ()
     extents: tuple[Row, ...] = ()
@@ -118,7 +124,8 @@ def digest(path: Path, data: bytes) -> Digest:
         said = str(error).removeprefix(f"{path}:").removeprefix("1:").strip()
         return Digest(path.name, path.stem, "unreadable", (said,))
     stands = effective(reading.events)
-    exposures = fold(reading.events).exposures
+    state = fold(reading.events)
+    exposures = state.exposures
     filters = sorted(
         {each.filter for each in exposures}
         | {each.filter for each in stands if isinstance(each, Conditions)}
@@ -135,6 +142,8 @@ def digest(path: Path, data: bytes) -> Digest:
         site=_site(reading),
         entries=len(reading.events),
         account=None if dark is None else account(stands, dark),
+        counts=_counts(exposures),
+        seeing_in_short=_in_short(state),
         exposures=tuple((*_fields(each), judged.get(each.n, "")) for each in exposures),
         tally=_tally(exposures),
         extents=_extents(exposures),
@@ -179,6 +188,19 @@ def _judgements(stands: Sequence[Event]) -> dict[int, str]:
         for event in stands
         if isinstance(event, Amendment) and "outcome" in event.changes and event.why
     }
+
+
+def _counts(exposures: Sequence[Exposure]) -> dict[str, tuple[int, float]]:
+    counts: dict[str, tuple[int, float]] = {}
+    for each in exposures:
+        count, seconds = counts.get(each.outcome, (0, 0.0))
+        counts[each.outcome] = (count + 1, seconds + each.exposed_s)
+    return counts
+
+
+def _in_short(state: NightState) -> tuple[float, ...]:
+    found = summary([SeeingMeasurement(each.mjd, each.zenith_arcsec) for each in state.seeing])
+    return () if found is None else astuple(found)
 
 
 def _tally(exposures: Sequence[Exposure]) -> tuple[Row, ...]:

@@ -7,17 +7,18 @@ thrown away and made anew; where it can't be kept it is made in memory for the t
 from __future__ import annotations
 
 import hashlib
+import os
 import sqlite3
 import time
 from collections.abc import Iterable, Iterator, Sequence
 from contextlib import contextmanager
+from datetime import date
 from pathlib import Path
 from types import TracebackType
 from typing import Any, Self
 
 import platformdirs
 
-from engine.log import night_logs
 from engine.past.build import Progress, Read, read_all
 from engine.past.digest import fingerprint
 from engine.past.schema import SCHEMA, has_full_text, make_tables, put, sum_up, take_out
@@ -63,7 +64,7 @@ class PastIndex:
         self.note: str | None = None
         self._progress = progress
         self._path: Path | None = index_path(folder, cache)
-        if len(night_logs(folder)) < FEW:
+        if len(_log_names(folder)) < FEW:
             self._path = None
         self._db = self._opened(afresh=afresh)
 
@@ -179,9 +180,12 @@ class PastIndex:
             row[0]: row[1:]
             for row in self._db.execute("SELECT name, size, mtime_ns, crc, seen_ns FROM night")
         }
-        paths = night_logs(self.folder)
-        gone = known.keys() - {path.name for path in paths}
-        changed = [path for path in paths if self._has_changed(path, known.get(path.name))]
+        names = _log_names(self.folder)
+        gone = known.keys() - set(names)
+        where = str(self.folder)
+        changed = [
+            self.folder / name for name in names if self._has_changed(where, name, known.get(name))
+        ]
         self.has_full_text = has_full_text(self._db)
         if not gone and not changed:
             return self._sum_up_what_is_left()
@@ -194,7 +198,7 @@ class PastIndex:
         self._take_in(read_all(changed, self._progress), len(changed))
         return True
 
-    def _has_changed(self, path: Path, known: tuple[int, int, int, int] | None) -> bool:
+    def _has_changed(self, folder: str, name: str, known: tuple[int, int, int, int] | None) -> bool:
         """Say whether a log is another than the one that was read.
 
         One that was young when it was read, or that was only touched, is told by its content.
@@ -202,24 +206,23 @@ class PastIndex:
         if known is None:
             return True
         size, mtime_ns, crc, seen_ns = known
+        path = f"{folder}/{name}"
         try:
-            now = path.stat()
+            now = os.stat(path)
+            if now.st_size != size:
+                return True
+            if now.st_mtime_ns == mtime_ns and mtime_ns < seen_ns - YOUNG_NS:
+                return False
+            seen_ns = time.time_ns()
+            with open(path, "rb") as file:
+                is_same = fingerprint(file.read()) == crc
         except OSError:
             return size >= 0
-        if now.st_size != size:
-            return True
-        if now.st_mtime_ns == mtime_ns and mtime_ns < seen_ns - YOUNG_NS:
-            return False
-        try:
-            seen_ns = time.time_ns()
-            is_same = fingerprint(path.read_bytes()) == crc
-        except OSError:
-            return True
         if is_same and now.st_mtime_ns < seen_ns - YOUNG_NS:
             with _changing(self._db):
                 self._db.execute(
                     "UPDATE night SET mtime_ns = ?, seen_ns = ? WHERE name = ? AND crc = ?",
-                    (now.st_mtime_ns, seen_ns, path.name, crc),
+                    (now.st_mtime_ns, seen_ns, name, crc),
                 )
         return not is_same
 
@@ -253,6 +256,23 @@ class PastIndex:
             sum_up(self._db, None)
             self._db.execute("DELETE FROM meta WHERE name = 'unsummed'")
         return True
+
+
+def _log_names(folder: Path) -> list[str]:
+    """Return the names of `engine.log.night_logs`, sorted: thousands in a few milliseconds."""
+    try:
+        names = os.listdir(folder)
+    except FileNotFoundError:
+        return []
+    return sorted(name for name in names if name.endswith(".toml") and _is_date(name[:-5]))
+
+
+def _is_date(text: str) -> bool:
+    try:
+        date.fromisoformat(text)
+    except ValueError:
+        return False
+    return True
 
 
 def _connect(path: Path | str) -> sqlite3.Connection:

@@ -21,12 +21,14 @@ CREATE TABLE night (
     id INTEGER PRIMARY KEY, name TEXT NOT NULL UNIQUE,
     size INTEGER, mtime_ns INTEGER, crc INTEGER, seen_ns INTEGER,
     night TEXT, state TEXT, findings TEXT, observers TEXT, site TEXT, entries INTEGER,
-    dark_s REAL, spent TEXT, lost TEXT, filters TEXT, events TEXT);
+    dark_s REAL, spent TEXT, lost TEXT, filters TEXT, events TEXT,
+    counts TEXT, seeing TEXT);
 CREATE TABLE numbers (night INTEGER PRIMARY KEY, seeing BLOB, images BLOB);
 CREATE TABLE exposure (night INTEGER NOT NULL, place INTEGER NOT NULL, {_COLUMNS}, judged TEXT);
 CREATE INDEX exposure_of_night ON exposure (night, place);
 CREATE INDEX exposure_of_target
     ON exposure (target, night, place, outcome, filter, seconds, credit);
+CREATE INDEX exposure_not_good ON exposure (outcome, judged, why) WHERE outcome <> 'good';
 CREATE TABLE tally (
     night INTEGER, target TEXT, programme TEXT, filter TEXT, seconds REAL, outcome TEXT,
     count INTEGER, exposed_s REAL, credit REAL, first_mjd REAL, last_mjd REAL);
@@ -96,13 +98,14 @@ def put(db: sqlite3.Connection, kept: Digest, stamp: Stamp, *, full_text: bool) 
     touched = take_out(db, kept.name, full_text=full_text)
     account = kept.account
     night = db.execute(
-        "INSERT INTO night VALUES (NULL, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?)",
+        "INSERT INTO night VALUES (NULL, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?)",
         (
             kept.name, stamp.size, stamp.mtime_ns, stamp.crc, stamp.seen_ns,
             kept.night, kept.state, as_json(kept.findings), as_json(kept.observers), kept.site,
             kept.entries, account.dark_s if account else None,
             as_json(account.spent_s if account else {}), as_json(account.lost_s if account else {}),
-            as_json(kept.filters), as_json(kept.events),
+            as_json(kept.filters), as_json(kept.events), as_json(kept.counts),
+            as_json(kept.seeing_in_short),
         ),
     ).lastrowid  # fmt: skip
     db.execute("INSERT INTO numbers VALUES (?, ?, ?)", (night, kept.seeing, kept.images))

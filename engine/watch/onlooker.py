@@ -11,7 +11,7 @@ from engine.errors import Fault, LogError, NoAnswer, NotNow
 from engine.log import Event, Follower
 from engine.logbook import load_logbook
 from engine.times import night_of
-from engine.watch.opening import Opened, done_before
+from engine.watch.opening import Opened, done_for
 from engine.watch.planning import Planned, Planner
 from engine.watch.triggers import Wish, Work
 from engine.watch.watch import Watch
@@ -98,7 +98,7 @@ def open_onlooker(folder: Path, night: date | None = None) -> Opened:
     if follower.reading is None:
         raise LogError(follower.trouble or f"{path}: can't be read")
     added = follower.state.added
-    planner = Planner(logbook, night, done_before(folder, night), added=added)
+    planner = Planner(logbook, night, done_for(logbook, night, added), added=added)
     clock: Clock = SystemClock() if night == tonight else HandClock(float(planner.night.mjd[0]))
     findings: tuple[Fault, ...] = follower.findings
     return Opened(Onlooker(planner, follower, clock), path, findings)

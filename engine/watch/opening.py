@@ -9,10 +9,13 @@ from importlib.metadata import version
 from pathlib import Path
 
 from engine.clock import Clock
-from engine.errors import Fault, LogError
-from engine.log import Event, Exposure, Header, LogWorker, NightLog, fold, night_logs, read_log
-from engine.logbook import load_logbook
+from engine.errors import Fault
+from engine.log import Event, Header, LogWorker, NightLog, TargetAdded, fold
+from engine.logbook import Logbook, load_logbook
+from engine.night import Taken
+from engine.past import done_before
 from engine.times import night_of
+from engine.watch.listing import listed
 from engine.watch.planning import Planner
 from engine.watch.watch import Watch
 
@@ -45,7 +48,7 @@ def open_watch(
     log = NightLog.open(folder, header, clock.now_mjd())
     try:
         added = fold(log.events).added
-        planner = Planner(logbook, night, done_before(folder, night), added=added)
+        planner = Planner(logbook, night, done_for(logbook, night, added), added=added)
     except BaseException:
         log.close()
         raise
@@ -53,17 +56,7 @@ def open_watch(
     return Opened(Watch(planner, worker, clock, log.events), log.path, log.findings)
 
 
-def done_before(folder: Path, night: date) -> tuple[Exposure, ...]:
-    """Return the exposures of all other nights that count for their plans.
-
-    A log that can't be read counts for nothing; `warmroom check` says what is wrong with it.
-    """
-    kept: list[Exposure] = []
-    for path in night_logs(folder):
-        if path.stem == night.isoformat():
-            continue
-        try:
-            kept += fold(read_log(path).events).kept
-        except LogError:
-            continue
-    return tuple(kept)
+def done_for(logbook: Logbook, night: date, added: tuple[TargetAdded, ...]) -> tuple[Taken, ...]:
+    """Return what all other nights have done for the targets of a logbook and those added."""
+    names = [target.name for target in listed(logbook, added).targets]
+    return done_before(logbook.folder, night, names)

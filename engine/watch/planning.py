@@ -13,10 +13,11 @@ import numpy as np
 from numpy.typing import NDArray
 
 from engine.image import ImageModel
-from engine.log import Exposure, NightState, TargetAdded
+from engine.log import NightState, TargetAdded
 from engine.logbook import Logbook
-from engine.night import Night, Outlook, Outlooks, Plans, open_night, plans
+from engine.night import Night, Outlook, Outlooks, Plans, Taken, open_night, plans
 from engine.order import Order, Problem, Rules, build_problem, propose, refine, retime, travel_of
+from engine.past import done_before
 from engine.positions import Air
 from engine.seeing import SeeingForecast, SeeingMeasurement, nowcast
 from engine.times import HOURS_PER_DAY
@@ -54,7 +55,7 @@ class Planner:
         self,
         logbook: Logbook,
         night: date,
-        done_before: tuple[Exposure, ...] = (),
+        done: tuple[Taken, ...] = (),
         *,
         added: tuple[TargetAdded, ...] = (),
         air: Air | None = None,
@@ -64,7 +65,7 @@ class Planner:
         self.model = ImageModel(logbook.observatory, self.night.air)
         self._outlooks = Outlooks(self.night, self.model)
         self._travel = travel_of(self.night)
-        self._done_before = done_before
+        self._done_before = done
         self._as_read, self._added = logbook, added
 
     def fit(self, state: NightState, now_mjd: float, logbook: Logbook | None = None) -> Planner:
@@ -78,10 +79,13 @@ class Planner:
         same_air = not _differs(air, self.night.air)
         if same_air and as_read is self._as_read and state.added == self._added:
             return self
+        night = self.night.almanac.night
+        names = {target.name for target in listed(as_read, state.added).targets}
+        is_known = names == {target.name for target in self.logbook.targets}
         return Planner(
             as_read,
-            self.night.almanac.night,
-            self._done_before,
+            night,
+            self._done_before if is_known else done_before(as_read.folder, night, names),
             added=state.added,
             air=self.night.air if same_air else air,
         )

@@ -17,7 +17,7 @@ from engine.order import Order, propose, upper_limit
 from engine.positions import almanac
 from engine.times import iso_from_mjd, night_of
 from engine.watch.listing import listed
-from engine.watch.opening import done_before
+from engine.watch.opening import done_for
 from engine.watch.planning import Planner, forecast_of, measured_air
 from engine.watch.rules import decided, rules_from
 
@@ -55,7 +55,7 @@ def snapshot(logbook: Logbook, mjd: float | None, seeing_arcsec: float | None) -
             seeing_arcsec = forecast_of(state, mjd, seeing_arcsec).now_arcsec
             source = "from the night's log"
     outlook = Outlooks(night, model).given(np.array([seeing_arcsec]))
-    progress = plans(logbook.targets, (*done_before(logbook.folder, date_), *state.kept))
+    progress = plans(logbook.targets, (*done_for(logbook, date_, ()), *state.kept))
     seen = targets_at(night, outlook, mjd, progress, decided(rules_from(state, mjd)))
     return Snapshot(mjd, night, model, seeing_arcsec, source, seen)
 
@@ -92,7 +92,7 @@ def order_of_night(
     night = night or night_of(moment, site.timezone)
     if at_mjd is not None and night_of(at_mjd, site.timezone) != night:
         raise NoAnswer(f"{iso_from_mjd(at_mjd)} is not in the night of {night.isoformat()}")
-    planner = Planner(logbook, night, done_before(logbook.folder, night))
+    planner = Planner(logbook, night, done_for(logbook, night, ()))
     grid = planner.night.mjd
     inside = at_mjd is not None or grid[0] < now_mjd < grid[-1]
     start_mjd = moment if inside else float(grid[0])

@@ -29,6 +29,7 @@ SEASON_NIGHTS = 90
 ON_THE_LIST = 60
 PEOPLE = ("R. Okonjo", "I. Varga", "T. Lindqvist", "M. Achterberg", "S. Palacios")
 FILTERS = ("B", "V", "R", "I")
+LENGTHS_S = (60.0, 75.0, 80.0, 90.0)
 WORDS = (
     "thin cirrus in the west, halo round the Moon", "guiding lost for a moment, found again",
     "dome slit was late; half of the frame is dark", "focus looks better after the flip",
@@ -92,13 +93,12 @@ class _Night:
         noon_mjd, _ = night_span_mjd(self.night, zone)
         hours = 10.3 - 1.7 * cos(2.0 * pi * (self.place - 110) / 365.25)
         mjd = noon_mjd + (12.5 - hours / 2.0) / 24.0
-        step_s = hours * 3600.0 / self.exposures
         done = 0
         while done < self.exposures:
             if self.chance.random() < 0.012:
                 mjd = self.lose(mjd)
             visit = min(self.chance.randint(6, 14), self.exposures - done)
-            mjd = self.visit(mjd, *self.chance.choice(targets), visit, step_s)
+            mjd = self.visit(mjd, *self.chance.choice(targets), visit)
             done += visit
         self.write("close", mjd, {"why": "left by the observer"})
 
@@ -108,12 +108,12 @@ class _Night:
         self.write("lost_time", mjd, {"phase": "end"})
         return mjd
 
-    def visit(self, mjd: float, target: str, programme: str, count: int, step_s: float) -> float:
+    def visit(self, mjd: float, target: str, programme: str, count: int) -> float:
         pair = self.chance.sample(FILTERS, 2)
         self.write("pointing", mjd, {"target": target})
         mjd += 70.0 / 86400.0
         self.write("pointing", mjd, {"target": target, "on_target": True})
-        seconds = float(max(round(step_s - 18.0), 10))
+        seconds = LENGTHS_S[len(target) % 2 + 2 * (target[-1] in "02468")]
         half = count // 2
         steps: dict[str, Value] = {
             "target": target, "filters": list(pair), "seconds": [seconds, seconds],
