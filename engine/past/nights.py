@@ -6,11 +6,12 @@ import json
 from collections.abc import Sequence
 from dataclasses import dataclass, field
 from datetime import date
+from typing import Any
 
 from engine.past.index import PastIndex
 from engine.seeing import SeeingSummary
 
-HOURS_PER_SECOND = 1.0 / 3600.0
+SECONDS_PER_HOUR = 3600.0
 
 
 @dataclass(frozen=True, slots=True)
@@ -69,39 +70,37 @@ class NightLine:
         return self.counts.get("good", 0)
 
 
-_COLUMNS = "name, night, state, findings, observers, entries, dark_s, spent, lost, counts, seeing"
-
-
 def nights(index: PastIndex, period: Period = ALWAYS) -> tuple[NightLine, ...]:
     """Return a line for every night log of a period, the oldest first."""
     rows = index.ask(
-        f"SELECT {_COLUMNS} FROM night WHERE name >= ? AND name <= ? ORDER BY name", period.limits
+        "SELECT name, night, state, entries, dark_s, line FROM night "
+        "WHERE name >= ? AND name <= ? ORDER BY name",
+        period.limits,
     )
     return tuple(_line(row) for row in rows)
 
 
-def _line(row: Sequence[object]) -> NightLine:
-    name, night, state, findings, observers, entries, dark_s, spent, lost, counts, seeing = row
-    by_outcome = json.loads(str(counts))
-    in_short = json.loads(str(seeing))
+def _line(row: tuple[Any, ...]) -> NightLine:
+    name, night, state, entries, dark_s, line = row
+    findings, observers, spent_s, lost_s, by_outcome, in_short, _ = json.loads(line)
     return NightLine(
-        name=str(name),
-        night=str(night),
-        state=str(state),
-        findings=tuple(json.loads(str(findings))),
-        observers=tuple(json.loads(str(observers))),
-        entries=int(str(entries)),
-        dark_h=None if dark_s is None else float(str(dark_s)) * HOURS_PER_SECOND,
-        spent_h=_hours(str(spent)),
-        lost_h=_hours(str(lost)),
-        open_h=sum(seconds for _, seconds in by_outcome.values()) * HOURS_PER_SECOND,
+        name=name,
+        night=night,
+        state=state,
+        findings=tuple(findings),
+        observers=tuple(observers),
+        entries=entries,
+        dark_h=None if dark_s is None else dark_s / SECONDS_PER_HOUR,
+        spent_h=_hours(spent_s),
+        lost_h=_hours(lost_s),
+        open_h=sum(seconds for _, seconds in by_outcome.values()) / SECONDS_PER_HOUR,
         counts={outcome: count for outcome, (count, _) in by_outcome.items()},
         seeing=SeeingSummary(*in_short) if in_short else None,
     )
 
 
-def _hours(text: str) -> dict[str, float]:
-    return {name: seconds * HOURS_PER_SECOND for name, seconds in json.loads(text).items()}
+def _hours(seconds: dict[str, float]) -> dict[str, float]:
+    return {name: value / SECONDS_PER_HOUR for name, value in seconds.items()}
 
 
 @dataclass(frozen=True, slots=True)

@@ -20,10 +20,9 @@ CREATE TABLE meta (name TEXT PRIMARY KEY, value TEXT) WITHOUT ROWID;
 CREATE TABLE night (
     id INTEGER PRIMARY KEY, name TEXT NOT NULL UNIQUE,
     size INTEGER, mtime_ns INTEGER, crc INTEGER, seen_ns INTEGER,
-    night TEXT, state TEXT, findings TEXT, observers TEXT, site TEXT, entries INTEGER,
-    dark_s REAL, spent TEXT, lost TEXT, filters TEXT, events TEXT,
-    counts TEXT, seeing TEXT);
-CREATE TABLE numbers (night INTEGER PRIMARY KEY, seeing BLOB, images BLOB);
+    night TEXT, state TEXT, entries INTEGER, dark_s REAL, site TEXT, filters TEXT, line TEXT);
+CREATE TABLE seeing (night INTEGER PRIMARY KEY, data BLOB);
+CREATE TABLE images (night INTEGER PRIMARY KEY, data BLOB);
 CREATE TABLE exposure (night INTEGER NOT NULL, place INTEGER NOT NULL, {_COLUMNS}, judged TEXT);
 CREATE INDEX exposure_of_night ON exposure (night, place);
 CREATE INDEX exposure_of_target
@@ -55,7 +54,7 @@ FULL_TEXT_OLDER = "CREATE VIRTUAL TABLE words_found USING fts5 (text, target);"
 
 # With more targets than this all totals are made at once.
 MANY_TARGETS = 300
-_OF_A_NIGHT = ("numbers", "exposure", "tally", "extent", "words")
+_OF_A_NIGHT = ("seeing", "images", "exposure", "tally", "extent", "words")
 _EXPOSURE_MARKS = ", ".join("?" * (len(FIELDS) + 3))
 
 
@@ -97,18 +96,20 @@ def put(db: sqlite3.Connection, kept: Digest, stamp: Stamp, *, full_text: bool) 
     """Put a log's digest in place of what was there; return the targets whose totals change."""
     touched = take_out(db, kept.name, full_text=full_text)
     account = kept.account
+    line = (
+        kept.findings, kept.observers, account.spent_s if account else {},
+        account.lost_s if account else {}, kept.counts, kept.seeing_in_short, kept.events,
+    )  # fmt: skip
     night = db.execute(
-        "INSERT INTO night VALUES (NULL, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?)",
+        "INSERT INTO night VALUES (NULL, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?)",
         (
-            kept.name, stamp.size, stamp.mtime_ns, stamp.crc, stamp.seen_ns,
-            kept.night, kept.state, as_json(kept.findings), as_json(kept.observers), kept.site,
-            kept.entries, account.dark_s if account else None,
-            as_json(account.spent_s if account else {}), as_json(account.lost_s if account else {}),
-            as_json(kept.filters), as_json(kept.events), as_json(kept.counts),
-            as_json(kept.seeing_in_short),
+            kept.name, stamp.size, stamp.mtime_ns, stamp.crc, stamp.seen_ns, kept.night, kept.state,
+            kept.entries, account.dark_s if account else None, kept.site, as_json(kept.filters),
+            as_json(line),
         ),
     ).lastrowid  # fmt: skip
-    db.execute("INSERT INTO numbers VALUES (?, ?, ?)", (night, kept.seeing, kept.images))
+    db.execute("INSERT INTO seeing VALUES (?, ?)", (night, kept.seeing))
+    db.execute("INSERT INTO images VALUES (?, ?)", (night, kept.images))
     db.executemany(
         f"INSERT INTO exposure VALUES ({_EXPOSURE_MARKS})",
         ((night, place, *row) for place, row in enumerate(kept.exposures)),

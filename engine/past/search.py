@@ -5,12 +5,13 @@ from __future__ import annotations
 import re
 from dataclasses import dataclass
 
-from engine.past.digest import QUANTITIES
+from engine.past.digest import QUANTITIES, as_json
 from engine.past.exposures import PAST_COLUMNS, PastExposure
 from engine.past.index import PastIndex
 from engine.past.nights import ALWAYS, Period
 
 MOST = 200
+NIGHTS_AT_ONCE = 16
 # What a condition may be called, beside the log's own key.
 SHORT = {
     "airmass": "airmass_mid",
@@ -116,34 +117,60 @@ def _like(text: str) -> str:
 def find_exposures(index: PastIndex, wanted: Wanted, most: int = MOST) -> tuple[PastExposure, ...]:
     """Return the exposures that are wanted, the newest first, at most so many.
 
-    Only nights whose extremes allow the conditions are looked into.
+    For one target by its own list; else night by night, only those whose filters and extremes allow
+    what is wanted, until there are enough.
     """
-    clauses = ["night.name >= ?", "night.name <= ?"]
-    params: list[object] = [*wanted.period.limits]
+    clauses: list[str] = []
+    params: list[object] = []
     for name, value in (("target", wanted.target), ("filter", wanted.filter)):
         if value:
             clauses.append(f"e.{name} = ?")
             params.append(value)
-    extents = []
-    for place, each in enumerate(wanted.conditions):
+    for each in wanted.conditions:
         clauses.append(f"e.{each.quantity} {each.sign} ?")
         params.append(each.value)
-        end = "least" if each.sign.startswith("<") else "most"
-        extents.append(
-            f"JOIN extent x{place} ON x{place}.night = night.id "
-            f"AND x{place}.quantity = '{each.quantity}' AND x{place}.{end} {each.sign} "
-            f"{each.value!r}"
+    such = " AND ".join(clauses) or "1"
+    newest = "ORDER BY night.name DESC, e.place DESC LIMIT ?"
+    if wanted.target:
+        rows = index.ask(
+            f"SELECT {PAST_COLUMNS} FROM exposure e INDEXED BY exposure_of_target "
+            "JOIN night ON night.id = e.night AND night.name >= ? AND night.name <= ? "
+            f"WHERE {such} {newest}",
+            (*wanted.period.limits, *params, most),
         )
-    # For one target its own index is the quickest way in; else the nights, the newest first.
-    source = (
-        "exposure e INDEXED BY exposure_of_target JOIN night ON night.id = e.night"
-        if wanted.target
-        else f"night {' '.join(extents)} "
-        "CROSS JOIN exposure e INDEXED BY exposure_of_night ON e.night = night.id"
-    )
+        return tuple(PastExposure(*row) for row in rows)
+    found: list[PastExposure] = []
+    possible = _possible_nights(index, wanted)
+    for begin in range(0, len(possible), NIGHTS_AT_ONCE):
+        some = possible[begin : begin + NIGHTS_AT_ONCE]
+        rows = index.ask(
+            f"SELECT {PAST_COLUMNS} FROM night CROSS JOIN exposure e "
+            "INDEXED BY exposure_of_night ON e.night = night.id "
+            f"WHERE night.id IN ({', '.join('?' * len(some))}) AND {such} {newest}",
+            (*some, *params, most - len(found)),
+        )
+        found += [PastExposure(*row) for row in rows]
+        if len(found) >= most:
+            break
+    return tuple(found)
+
+
+def _possible_nights(index: PastIndex, wanted: Wanted) -> list[int]:
+    """Return the nights that may hold what is wanted, the newest first."""
     rows = index.ask(
-        f"SELECT {PAST_COLUMNS} FROM {source} WHERE {' AND '.join(clauses)} "
-        "ORDER BY night.name DESC, e.place DESC LIMIT ?",
-        (*params, most),
+        "SELECT id, filters FROM night WHERE name >= ? AND name <= ? ORDER BY name DESC",
+        wanted.period.limits,
     )
-    return tuple(PastExposure(*row) for row in rows)
+    named = as_json(wanted.filter)
+    nights = [night for night, filters in rows if not wanted.filter or named in filters]
+    for each in wanted.conditions:
+        end = "least" if each.sign.startswith("<") else "most"
+        allow = {
+            night
+            for (night,) in index.ask(
+                f"SELECT night FROM extent WHERE quantity = ? AND {end} {each.sign} ?",
+                (each.quantity, each.value),
+            )
+        }
+        nights = [night for night in nights if night in allow]
+    return nights

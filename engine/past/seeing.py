@@ -86,9 +86,9 @@ def tables_of(
     to which the column ``filter`` then points.
     """
     found = index.ask(
-        f"SELECT night.name, night.filters, numbers.{column} FROM numbers "
-        "JOIN night ON night.id = numbers.night WHERE night.name >= ? AND night.name <= ? "
-        f"AND length(numbers.{column}) > 0 ORDER BY night.name",
+        f"SELECT night.name, night.filters, {column}.data FROM {column} "
+        f"JOIN night ON night.id = {column}.night WHERE night.name >= ? AND night.name <= ? "
+        f"AND length({column}.data) > 0 ORDER BY night.name",
         period.limits,
     )
     width = len(columns) * 8
@@ -131,9 +131,11 @@ def site_seeing(measured: Measurements) -> SiteSeeing:
     months = np.array([int(name[5:7]) for name in measured.nights], dtype=np.intp)
     month = months[measured.night] if months.size else np.zeros(0, np.intp)
     # Noon first, so that the hours of a night stand in their order.
-    hour = np.where(np.isnan(measured.local_h), -1.0, (np.floor(measured.local_h) - 12.0) % 24.0)
-    slot = np.digitize(measured.airmass, AIRMASS_EDGES[1:-1]).astype(np.float64)
-    slot[np.isnan(measured.airmass)] = -1.0
+    known = ~np.isnan(measured.local_h)
+    hour = np.full(zenith.size, -1)
+    hour[known] = (measured.local_h[known].astype(np.intp) - 12) % 24
+    slot = np.digitize(measured.airmass, AIRMASS_EDGES[1:-1])
+    slot[np.isnan(measured.airmass)] = -1
     edges = np.arange(0.0, LAST_ARCSEC + BIN_ARCSEC / 2.0, BIN_ARCSEC)
     counts, _ = np.histogram(np.minimum(zenith, np.nextafter(LAST_ARCSEC, 0.0)), edges)
     filters = [name or "no filter given" for name in measured.filters]
@@ -157,12 +159,15 @@ def _airmass_labels() -> list[str]:
     ]
 
 
-def _groups(
-    zenith: Floats, place: NDArray[np.floating] | NDArray[np.intp], labels: Sequence[str]
-) -> tuple[Group, ...]:
+def _groups(zenith: Floats, place: NDArray[np.intp], labels: Sequence[str]) -> tuple[Group, ...]:
+    """Return the groups that have any value; a place of -1 is in none."""
+    # Small integers are sorted by counting, so all groups together cost no more than one.
+    small = place.astype(np.int16)
+    ordered = zenith[np.argsort(small, kind="stable")]
+    ends = np.cumsum(np.bincount(small + 1, minlength=len(labels) + 1))
     found = []
     for at, label in enumerate(labels):
-        summary = _summary(zenith[place == at])
+        summary = _summary(ordered[ends[at] : ends[at + 1]])
         if summary is not None:
             found.append(Group(label, summary))
     return tuple(found)
