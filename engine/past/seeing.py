@@ -146,13 +146,14 @@ def site_seeing(measured: Measurements) -> SiteSeeing:
         by_month=_groups(zenith, month, ["", *MONTHS]),
         by_hour=_groups(zenith, hour, [f"{(at + 12) % 24:02d} h" for at in range(24)]),
         by_filter=_groups(zenith, measured.filter, filters),
-        by_airmass=_groups(zenith, slot, _airmass_labels()),
+        by_airmass=_groups(zenith, slot, airmass_labels()),
         edges_arcsec=tuple(float(edge) for edge in edges),
         counts=tuple(int(count) for count in counts),
     )
 
 
-def _airmass_labels() -> list[str]:
+def airmass_labels() -> list[str]:
+    """Return the names of the spans between the edges of airmass."""
     pairs = itertools.pairwise(AIRMASS_EDGES)
     return [
         f"{low:.1f} to {high:.1f}" if high < np.inf else f"over {low:.1f}" for low, high in pairs

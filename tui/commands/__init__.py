@@ -11,7 +11,7 @@ from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Any
 
-from tui.reading import number_between, whole_number
+from tui.reading import night, number_between, whole_number
 
 
 @dataclass(frozen=True, slots=True)
@@ -138,6 +138,30 @@ COMMANDS: tuple[Command, ...] = (
                 "prove an upper limit to any order's worth too (needs the extra 'bound')",
                 {"action": "store_true"},
             ),
+        ),
+    ),
+    Command(
+        "past",
+        "print past nights: what was done, how good it was, what remains",
+        options=(
+            Option("--since", "from this night on", {"metavar": "DATE"}, read=night),
+            Option("--until", "up to this night", {"metavar": "DATE"}, read=night),
+            Option("--target", "every exposure of one target", {"metavar": "NAME"}),
+            Option("--find", "notes and reasons that hold all these words", {"metavar": "TEXT"}),
+            Option(
+                "--where",
+                "exposures within a limit such as 'airmass<1.5'; may be repeated",
+                {"metavar": "LIMIT", "action": "append", "default": []},
+            ),
+            Option("--filter", "exposures through one filter", {"metavar": "NAME"}),
+            Option("--refused", "exposures that do not count, and why", {"action": "store_true"}),
+            Option("--seeing", "the site's seeing, in full", {"action": "store_true"}),
+            Option(
+                "--fit",
+                "measured against predicted image size; new values for observatory.toml",
+                {"action": "store_true"},
+            ),
+            Option("--afresh", "read every log again", {"action": "store_true"}),
         ),
     ),
 )
