@@ -195,6 +195,8 @@ def exposures(taken: Sequence[PastExposure]) -> None:
 def _verdict(each: PastExposure) -> str:
     said = each.judged or each.why
     label = LABEL.get(each.outcome, each.outcome)
+    if said.startswith(label):
+        return one_line(said, TEXT)
     return one_line(f"{label}: {said}" if said else label, TEXT)
 
 
@@ -249,10 +251,10 @@ def seeing(site: SiteSeeing, *, briefly: bool = False) -> None:
         ],
     )
     most = max(site.counts)
-    last = max(i for i, count in enumerate(site.counts) if count)
-    for low, high, count in zip(
-        site.edges_arcsec[: last + 1], site.edges_arcsec[1:], site.counts, strict=False
-    ):
+    filled = [place for place, count in enumerate(site.counts) if count]
+    for place in range(filled[0], filled[-1] + 1):
+        low, high = site.edges_arcsec[place : place + 2]
+        count = site.counts[place]
         cells = round(BAR_CELLS * count / most)
         print(f'{low:5.2f}-{high:.2f}" {"█" * cells:{BAR_CELLS}} {count}')
 
