@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 import pytest
@@ -87,6 +87,43 @@ def test_a_targets_own_limits_are_its_own(night: Night) -> None:
     assert inside.sum() == pytest.approx((end - begin) * 1440.0, abs=1.5)
     assert night.mjd[inside].min() >= begin
     assert night.mjd[inside].max() <= end
+
+
+def at_place(name: str, ra_deg: float, dec_deg: float, **limits: float) -> Target:
+    """Return a target somewhere, with limits of its own."""
+    plan = [{"filter": "V", "seconds": 60.0, "count": 1}]
+    place = {"ra": ra_deg % 360.0, "dec": dec_deg}
+    return Target.model_validate({"name": name, "exposures": plan, **place, **limits})
+
+
+def test_nothing_near_the_sun_may_be_observed_while_it_is_up(logbook: Logbook) -> None:
+    """Up is until sunset and from sunrise on; near is what the logbook's caution says."""
+    assert logbook.observatory.caution.sun_separation_deg == 30.0
+    evening = open_night(logbook, NIGHT).sun
+    sun_ra_deg, sun_dec_deg = float(evening.ra_deg[0]), float(evening.dec_deg[0])
+    near = at_place("near", sun_ra_deg + 25.0, sun_dec_deg)
+    far = at_place("far", sun_ra_deg + 36.0, sun_dec_deg)
+    night = open_night(replace(logbook, targets=(near, far)), NIGHT)
+    assert night.almanac.sunset is not None
+    assert night.almanac.sunrise is not None
+    up = (night.mjd < night.almanac.sunset) | (night.mjd > night.almanac.sunrise)
+    assert np.array_equal(with_bit(night, "sun_near")[0], up)
+    assert not with_bit(night, "sun_near")[1].any()
+
+
+def test_a_target_keeps_its_distance_from_a_moon_that_is_up(logbook: Logbook) -> None:
+    """In a night, the Moon walks 7 degrees; below the horizon it harms nobody."""
+    moon = open_night(logbook, NIGHT).moon
+    middle = len(moon.ra_deg) // 2
+    place = (float(moon.ra_deg[middle]), float(moon.dec_deg[middle]))
+    wants = at_place("wants", *place, minimum_moon_separation_deg=30.0)
+    night = open_night(replace(logbook, targets=(wants, at_place("minds not", *place))), NIGHT)
+    assert night.almanac.moonrise is not None
+    moon_is_up = night.moon.altitude_deg > 0.0
+    assert moon_is_up.any()
+    assert not moon_is_up.all()
+    assert np.array_equal(with_bit(night, "moon_near")[0], moon_is_up)
+    assert not with_bit(night, "moon_near")[1].any()
 
 
 def test_daylight_ends_with_the_last_filter_that_is_dark(night: Night) -> None:
