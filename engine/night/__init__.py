@@ -8,6 +8,7 @@ from engine.night.moment import FilterNow, TargetNow, targets_at
 from engine.night.outlook import Outlook, Outlooks
 from engine.night.progress import Plans, Progress, Taken, is_finished, plans
 from engine.night.reasons import REASONS, Reason, bit_of, reason_coded, reasons_in
+from engine.night.stretches import Stretch, runs, stretches
 from engine.night.tables import Night, open_night, tables
 
 __all__ = [
@@ -19,6 +20,7 @@ __all__ = [
     "Plans",
     "Progress",
     "Reason",
+    "Stretch",
     "Taken",
     "TargetNow",
     "bit_of",
@@ -27,6 +29,8 @@ __all__ = [
     "plans",
     "reason_coded",
     "reasons_in",
+    "runs",
+    "stretches",
     "tables",
     "targets_at",
 ]

@@ -20,7 +20,9 @@ from textual.filter import LineFilter
 
 from tests.bench.image import best_s, line
 from tui.look import CleanFilter, RedFilter
+from tui.paint.canvas import Stroke
 from tui.paint.chart import Chart, Curve, paint_chart
+from tui.paint.night_axis import NightAxis
 from tui.paint.night_strip import Block, NightStrip, paint_strip
 from tui.paint.spans import Span
 from tui.widgets import Column, LiveList, Row
@@ -91,15 +93,18 @@ def curves() -> Chart:
         curves=tuple(
             Curve(
                 [80.0 * math.sin(math.pi * (at / SAMPLES + shift / 8)) for at in range(SAMPLES)],
-                "text",
-                1 + shift % 3,
-                f"target {shift}",
+                Stroke("text", 1 + shift % 3),
+                (f"target {shift}",),
             )
             for shift in range(6)
         ),
-        dark=[min(at // 12, (SAMPLES - at) // 12, 4) for at in range(SAMPLES)],
+        axis=NightAxis(
+            12.0,
+            18.5,
+            4.8,
+            [min(at // 12, (SAMPLES - at) // 12, 4) for at in range(SAMPLES)],
+        ),
         limit_deg=[20.0] * SAMPLES,
-        now=0.4,
         airmass_marks=((60.0, "1.15"), (30.0, "1.99")),
     )
 

@@ -6,8 +6,10 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
+from tui.paint.canvas import Stroke
 from tui.paint.chart import Chart, Curve, paint_chart
 from tui.paint.figures import bar, large, minutes_seconds, pips
+from tui.paint.night_axis import NightAxis
 from tui.paint.night_strip import Block, NightStrip, paint_strip
 from tui.paint.spans import Span, cut, fitted, line, spread, width_of, wrapped
 
@@ -109,17 +111,19 @@ def test_a_chart_has_its_curve_limit_and_now() -> None:
     """The curve peaks where its altitude does; below the limit the ground is hatched."""
     altitudes = [90.0 * (1.0 - abs(x - 50) / 50.0) for x in range(100)]
     chart = Chart(
-        curves=(Curve(altitudes, "accent", label="Star"),),
-        dark=[0] * 20 + [4] * 60 + [0] * 20,
+        curves=(Curve(altitudes, Stroke("accent"), ("Star",)),),
+        axis=NightAxis(10.0, 19.5, 2.5, [0] * 20 + [4] * 60 + [0] * 20),
         limit_deg=[20.0] * 100,
-        now=0.25,
         airmass_marks=((60.0, "1.15"),),
     )
     rows = paint_chart(chart, 80, 12)
     assert len(rows) == 12
     assert {width_of(row) for row in rows} == {80}
     told = [text_of(row) for row in rows]
-    assert "Star" in told[0]
+    assert "▲" in told[-1]
+    assert "23" in told[-1]
+    told = told[:-1]
+    assert any("Star" in row for row in told[:2])
     assert any("1.15" in row for row in told)
     assert any("╱" in row for row in told[-3:])
     assert not any("╱" in row for row in told[:6])

@@ -72,6 +72,7 @@ class Console(App[None]):
         self.panel = "list"
         self.notices: list[Span] = []
         self.view = NIGHT
+        self._paint_is_due = False
         self._painting: Painting | None = None
         self._deeds: Deeds | None = None
         self._clockwork = Clockwork(
@@ -116,7 +117,16 @@ class Console(App[None]):
             self.panel = PANELS_WIDE[0]
         elif not wide and self.panel not in PANELS_NARROW:
             self.panel = PANELS_NARROW[0]
-        self.call_after_refresh(self.paint)
+
+    def on_sheet_resized(self, event: Sheet.Resized) -> None:
+        """Paint for the new sizes, once for all sheets that got one."""
+        if not self._paint_is_due:
+            self._paint_is_due = True
+            self.call_after_refresh(self._paint_due)
+
+    def _paint_due(self) -> None:
+        self._paint_is_due = False
+        self.paint()
 
     @property
     def is_wide(self) -> bool:
@@ -268,8 +278,6 @@ class Console(App[None]):
         """Show a view of the table in the place under the state of the night."""
         self.view = name
         self.screen_stack[0].set_class(name != NIGHT, "aside")
-        # The place has its new size only once it is laid out.
-        self.call_after_refresh(self.paint)
 
     @property
     def _shown_view(self) -> View | None:

@@ -2,9 +2,11 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Iterable
 from dataclasses import dataclass, field
 
+from tui.paint.canvas import joined
+from tui.paint.night_axis import NightAxis, hours_line
 from tui.paint.spans import Line, Span, fitted
 
 # Darkness by the Sun's altitude: day, civil, nautical, astronomical twilight, night.
@@ -55,11 +57,11 @@ def paint_strip(strip: NightStrip, width: int, rows: int = ALL_ROWS) -> list[Lin
         plan, done = _plan(strip, columns, now), _done(strip, columns, now)
         both = [p if d.text == " " else d for p, d in zip(plan, done, strict=True)]
         return [
-            _labelled("", _hours(strip, columns, now)),
+            _labelled("", _hours(strip, columns)),
             _labelled("night", both),
         ]
     return [
-        _labelled("", _hours(strip, columns, now)),
+        _labelled("", _hours(strip, columns)),
         _labelled("light", _light(strip, columns, now)),
         _labelled("Moon", _moon(strip, columns, now)),
         _labelled("plan", _plan(strip, columns, now)),
@@ -67,40 +69,17 @@ def paint_strip(strip: NightStrip, width: int, rows: int = ALL_ROWS) -> list[Lin
     ]
 
 
-def _labelled(label: str, cells: list[Span]) -> Line:
-    return (Span(label.ljust(LABEL_WIDTH), "dim"), *_joined(cells))
-
-
-def _joined(cells: list[Span]) -> list[Span]:
-    """Return single cells as spans, neighbours of one role together."""
-    out: list[Span] = []
-    for text, role in cells:
-        if out and out[-1].role == role:
-            out[-1] = Span(out[-1].text + text, role)
-        else:
-            out.append(Span(text, role))
-    return out
+def _labelled(label: str, cells: Iterable[Span]) -> Line:
+    return (Span(label.ljust(LABEL_WIDTH), "dim"), *joined(cells))
 
 
 def _hour_of(strip: NightStrip, column: int, columns: int) -> float:
     return (column + 0.5) / columns * strip.hours
 
 
-def _hours(strip: NightStrip, columns: int, now: int) -> list[Span]:
-    cells = [Span(" ", "dim")] * columns
-    whole = int(strip.begin_hour) + 1
-    every = 1 if columns / strip.hours >= 4 else 2
-    for hour in range(whole, whole + int(strip.hours) + 1):
-        at = round((hour - strip.begin_hour) / strip.hours * columns)
-        text = f"{hour % 24:02d}"
-        # An hour whose figures the marker would cut in two is left out.
-        fits = 0 <= at <= columns - len(text) and not at <= now < at + len(text)
-        if hour % every == 0 and fits:
-            for offset, character in enumerate(text):
-                cells[at + offset] = Span(character, "dim")
-    if 0 <= now < columns:
-        cells[now] = Span("▼", "now")
-    return cells
+def _hours(strip: NightStrip, columns: int) -> Line:
+    axis = NightAxis(strip.hours, strip.begin_hour, strip.now_h)
+    return hours_line(axis, columns, "▼")
 
 
 def _light(strip: NightStrip, columns: int, now: int) -> list[Span]:

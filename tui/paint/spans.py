@@ -53,6 +53,15 @@ def cut(spans: Line, width: int) -> Line:
     return tuple(kept)
 
 
+def phrases(width: int, *parts: Line) -> Line:
+    """Return parts one after the other, leaving out every one that does not fit whole."""
+    kept: list[Span] = []
+    for part in parts:
+        if width_of((*kept, *part)) <= width:
+            kept += part
+    return tuple(kept)
+
+
 def spread(left: Line, right: Line, width: int) -> Line:
     """Return a line with one part at the left edge and one at the right; the left gives way."""
     right = cut(right, width)

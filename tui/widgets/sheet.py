@@ -10,7 +10,9 @@ from collections.abc import Sequence
 
 from rich.segment import Segment
 from rich.style import Style
+from textual.events import Resize
 from textual.geometry import Region
+from textual.message import Message
 from textual.strip import Strip
 from textual.widget import Widget
 
@@ -24,6 +26,9 @@ class Sheet(Widget):
     DEFAULT_CSS = """
     Sheet { height: auto; }
     """
+
+    class Resized(Message):
+        """The sheet has got another size, so what it shows may be of the wrong one."""
 
     def __init__(self, *, id: str | None = None, classes: str | None = None) -> None:
         super().__init__(id=id, classes=classes)
@@ -46,6 +51,10 @@ class Sheet(Widget):
         """Draw with another look's styles."""
         self._look = look
         self.refresh()
+
+    def on_resize(self, event: Resize) -> None:
+        """Tell the owner, who knows what fits now."""
+        self.post_message(self.Resized())
 
     def render_line(self, y: int) -> Strip:
         """Return one row: called by Textual for each row it wants."""

@@ -6,10 +6,11 @@ from engine.log import Event, title
 from engine.seeing import SeeingMeasurement, summary
 from engine.watch import Watch
 from tui.console.panels.local import ahead, arcsec, hhmm, local
-from tui.paint.spans import Line, Span, cut, line
+from tui.paint.spans import Line, Span, cut, line, wrapped
 
 # What the console writes by itself and what every exposure says twice: not worth a line here.
 NOT_SHOWN = ("exposure_start", "order")
+REASON_LINES, NAMES_LINES = 2, 6
 
 
 def paint_order(watch: Watch, width: int, height: int) -> list[Line]:
@@ -29,11 +30,23 @@ def paint_order(watch: Watch, width: int, height: int) -> list[Line]:
                 Span(visit.reason, "dim"),
             )
         )
-    left = [f"{each.target}: {each.reason}" for each in watch.plan.order.left_out]
-    if left:
-        lines.append(line(Span(f" left out, {len(left)}", "title")))
-        lines += [line(Span(f"  {each}", "dim")) for each in left]
+    lines += left_out_lines(watch, width)
     return [cut(each, width) for each in lines[:height]]
+
+
+def left_out_lines(watch: Watch, width: int) -> list[Line]:
+    """Return what the order leaves out, those of one reason together."""
+    left = watch.plan.order.left_out if watch.plan else ()
+    if not left:
+        return []
+    names: dict[str, list[str]] = {}
+    for each in left:
+        names.setdefault(each.reason, []).append(each.target)
+    lines = [line(Span(f" left out  {len(left)}", "title"))]
+    for reason, targets in names.items():
+        lines += wrapped(f"{reason}:", width - 1, "dim", REASON_LINES, indent=1)
+        lines += wrapped(", ".join(targets), width - 1, "text", NAMES_LINES, indent=3)
+    return lines
 
 
 def paint_log(watch: Watch, width: int, height: int) -> list[Line]:

@@ -7,18 +7,16 @@ import math
 import numpy as np
 
 from engine.night import FilterNow, TargetNow
-from engine.positions import skyline_altitude_deg
 from engine.watch import Scene, Watch, reach
+from tui.console.panels.graphs import airmass_marks, lowest_deg, night_axis, picks
 from tui.console.panels.local import arcsec, hhmm
+from tui.paint.canvas import Stroke
 from tui.paint.chart import Chart, Curve, paint_chart
 from tui.paint.figures import bar, pips
 from tui.paint.spans import Line, Span, cut, line
 
-CHART_SAMPLES = 240
 LEAST_CHART_ROWS, MOST_CHART_ROWS = 4, 14
 TERM_BAR = 11
-# Altitudes whose airmass stands at the chart's right edge: airmass 1.0, 1.15, 1.5, 2, 3 about.
-AIRMASS_ALTITUDES_DEG = (85.0, 60.0, 42.0, 30.0, 19.0)
 
 
 def paint_target(watch: Watch, name: str | None, width: int, height: int) -> list[Line]:
@@ -172,29 +170,19 @@ def _seeing(watch: Watch) -> float:
 
 def _chart(watch: Watch, now: TargetNow, width: int, rows: int) -> list[Line]:
     night = watch.planner.night
-    picks = np.linspace(0, night.last, CHART_SAMPLES).round().astype(int)
-    telescope = night.observatory.telescope
-    skyline = skyline_altitude_deg(
-        night.observatory.site.horizon, night.where.azimuth_deg[now.index, picks]
-    )
-    sun = night.sun.altitude_deg[picks]
-    dark = (sun <= -50.0 / 60.0).astype(int) + (sun <= -6.0) + (sun <= -12.0) + (sun <= -18.0)
-    shown_mjd = (watch.clock.now_mjd() - night.mjd[0]) / (night.mjd[-1] - night.mjd[0])
-    heights = night.apparent_altitude_deg[now.index]
-    marks = []
-    for altitude in AIRMASS_ALTITUDES_DEG:
-        near = int(np.argmin(np.abs(heights - altitude)))
-        if abs(heights[near] - altitude) < 1.0:
-            marks.append((altitude, f"{night.airmass[now.index, near]:.2f}"))
+    at = picks(night)
     chart = Chart(
         curves=(
-            Curve(night.moon.altitude_deg[picks].tolist(), "moon", every=3, label="Moon"),
-            Curve(heights[picks].tolist(), "accent", label=now.target.name),
+            Curve(night.moon.altitude_deg[at].tolist(), Stroke("moon", 3), ("Moon",)),
+            Curve(
+                night.apparent_altitude_deg[now.index, at].tolist(),
+                Stroke("accent"),
+                (now.target.name,),
+            ),
         ),
-        dark=dark.tolist(),
-        limit_deg=np.maximum(skyline, telescope.minimum_altitude_deg).tolist(),
-        now=float(shown_mjd),
-        airmass_marks=tuple(marks),
+        axis=night_axis(watch),
+        limit_deg=lowest_deg(night, now.index)[at].tolist(),
+        airmass_marks=airmass_marks(night),
     )
     return paint_chart(chart, width, rows)
 

@@ -29,6 +29,7 @@ NIGHT = "night"
 
 VIEWS: tuple[ViewEntry, ...] = (
     ViewEntry(NIGHT, "1", "night", "Show the night under way: the list, a target, the order."),
+    ViewEntry("sky", "2", "sky", "Show the sky: altitudes through the night, order and limits."),
 )
 
 VIEW_OF_ACTION: dict[str, str] = {each.action: each.name for each in VIEWS}

@@ -3,5 +3,8 @@
 from __future__ import annotations
 
 from tui.console.views.base import View
+from tui.console.views.sky import Sky
 
-CLASSES: dict[str, type[View]] = {}
+CLASSES: dict[str, type[View]] = {
+    "sky": Sky,
+}

@@ -1,0 +1,97 @@
+"""Stories of the views: each a key away, each telling what the night's tables say."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import numpy as np
+import pytest
+
+from tests.tui.trial import Trial, a_logbook, play
+from tui.console.panels.local import hhmm
+from tui.console.views import NIGHT, VIEWS
+from tui.console.views.classes import CLASSES
+
+SIZES = [(80, 24), (120, 40), (160, 50)]
+
+
+@pytest.fixture
+def folder(tmp_path: Path) -> Path:
+    """Return a small logbook."""
+    return a_logbook(tmp_path / "nights")
+
+
+def test_every_view_of_the_table_is_there() -> None:
+    """The light table and the classes name the same views, each with a key of its own."""
+    assert [each.name for each in VIEWS if each.name != NIGHT] == list(CLASSES)
+    assert len({each.key for each in VIEWS}) == len(VIEWS)
+
+
+@pytest.mark.parametrize("size", SIZES)
+def test_every_view_keeps_the_state_of_the_night_in_sight(
+    folder: Path, size: tuple[int, int]
+) -> None:
+    """Head, strip and what is under way stay; a view has at least 13 rows and fits its place."""
+
+    async def story(trial: Trial) -> None:
+        await trial.press("space", "space", "space")
+        await trial.wait(10.0)
+        for entry in VIEWS:
+            await trial.press(entry.key)
+            assert trial.console.view == entry.name
+            assert "Kestrel Ridge" in trial.text("head")
+            assert "▼" in trial.text("night")
+            assert "EXPOSING" in trial.text("under-way")
+            if entry.name != NIGHT:
+                shown = trial.console.sheet("view")
+                assert entry.title.upper() in trial.text("view").splitlines()[0]
+                assert shown.size.height - 1 >= 13
+                lines = CLASSES[entry.name](trial.console, trial.watch).paint(
+                    shown.size.width, shown.size.height - 1
+                )
+                assert 5 < len(lines) < shown.size.height
+        await trial.press(VIEWS[0].key)
+        assert trial.console.query_one("#list").display
+
+    play(folder, story, size=size)
+
+
+@pytest.mark.parametrize("size", SIZES)
+def test_the_sky_says_until_when_and_why(folder: Path, size: tuple[int, int]) -> None:
+    """The chosen target's window is the table's; the cursor keys choose another."""
+
+    async def story(trial: Trial) -> None:
+        await trial.press("2")
+        for _ in range(3):
+            name = trial.console.chosen
+            assert name is not None
+            night = trial.watch.planner.night
+            index = night.target_index(name)
+            now = night.index_at(trial.clock.now_mjd())
+            allowed = night.limits[index] == 0
+            assert allowed[now]
+            last = now + int(np.argmin(allowed[now:]))
+            said = trial.text("view").splitlines()[1]
+            assert name in said
+            assert f"within its limits until {hhmm(trial.watch, float(night.mjd[last]))}" in said
+            await trial.press("j")
+
+    play(folder, story, size=size)
+
+
+def test_the_sky_marks_visits_and_what_was_observed(folder: Path) -> None:
+    """Every visit of the order has its number on the curves, and what is left out its reason."""
+
+    async def story(trial: Trial) -> None:
+        await trial.press("2")
+        text = trial.text("view")
+        assert trial.watch.plan is not None
+        for number, visit in enumerate(trial.watch.plan.order.visits, start=1):
+            assert f"{number} {visit.target}" in text
+        trial.console.choose("Blunt")
+        await trial.press("d")
+        text = trial.text("view")
+        assert "left out  1" in text
+        assert "dropped for tonight by the observer" in text
+
+    play(folder, story)
