@@ -152,7 +152,8 @@ _SUMS = """
 INSERT INTO total
 SELECT target, programme, filter, seconds, outcome, sum(count), sum(exposed_s), sum(credit),
        min(first_mjd), max(last_mjd), count(*)
-FROM (SELECT tally.* FROM tally JOIN night ON night.id = tally.night {which} ORDER BY night.name)
+FROM (SELECT tally.* FROM tally CROSS JOIN night ON night.id = tally.night {which}
+      ORDER BY night.name)
 GROUP BY target, programme, filter, seconds, outcome
 """
 

@@ -95,7 +95,7 @@ def tables_of(
     lengths = [len(data) // width for _, _, data in found]
     rows = table(b"".join(data for _, _, data in found), columns).copy()
     night = np.repeat(np.arange(len(found)), lengths)
-    lists: dict[str, list[str]] = {text: json.loads(text) for _, text, _ in found}
+    lists: dict[str, list[str]] = {text: json.loads(text) for text in {row[1] for row in found}}
     names = sorted({name for each in lists.values() for name in each})
     places = {text: np.array([names.index(n) for n in each]) for text, each in lists.items()}
     at = columns.index("filter")
@@ -137,7 +137,8 @@ def site_seeing(measured: Measurements) -> SiteSeeing:
     slot = np.digitize(measured.airmass, AIRMASS_EDGES[1:-1])
     slot[np.isnan(measured.airmass)] = -1
     edges = np.arange(0.0, LAST_ARCSEC + BIN_ARCSEC / 2.0, BIN_ARCSEC)
-    counts, _ = np.histogram(np.minimum(zenith, np.nextafter(LAST_ARCSEC, 0.0)), edges)
+    bins = np.minimum(zenith / BIN_ARCSEC, edges.size - 2).astype(np.intp)
+    counts = np.bincount(bins, minlength=edges.size - 1)
     filters = [name or "no filter given" for name in measured.filters]
     return SiteSeeing(
         nights=len(np.unique(measured.night)),
