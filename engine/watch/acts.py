@@ -266,7 +266,10 @@ def measured_fwhm(watch: Watch, arcsec: float) -> Event:
     last = watch.state.exposures[-1] if watch.state.exposures else None
     if last is None or last.airmass_mid is None:
         raise NotNow("no exposure yet to have measured it on; type the zenith seeing instead")
-    place = watch.planner.logbook.observatory.filter_index(last.filter)
+    try:
+        place = watch.planner.logbook.observatory.filter_index(last.filter)
+    except KeyError:
+        raise NotNow(f"{last.filter} is no longer in the wheel; type the zenith seeing") from None
     zenith = watch.planner.model.zenith_seeing_arcsec(place, arcsec, last.airmass_mid)
     event = watch.submit(
         Conditions(

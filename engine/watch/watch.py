@@ -143,13 +143,15 @@ class Watch:
         run = self._state.run
         if step is None or run is None:
             return None
-        camera = self.planner.logbook.observatory.camera
+        observatory = self.planner.logbook.observatory
         last = self._state.exposures[-1] if self._state.exposures else None
         ready_mjd, wait_s = self._run_began_mjd(run.n), 0.0
         if last is not None and last.run == run.n:
-            ready_mjd, wait_s = last.end_mjd, camera.readout_s
+            ready_mjd, wait_s = last.end_mjd, observatory.camera.readout_s
         if last is None or last.filter != step.filter:
-            wait_s += self.planner.logbook.observatory.filter_named(step.filter).change_s
+            # A filter may have left the wheel's description since the run began.
+            turns_s = {each.name: each.change_s for each in observatory.filters}
+            wait_s += turns_s.get(step.filter, 0.0)
         return step, ready_mjd + wait_s / SECONDS_PER_DAY
 
     def _run_began_mjd(self, n: int) -> float:

@@ -7,6 +7,7 @@ from pathlib import Path
 import pytest
 
 from engine.clock import SystemClock
+from engine.errors import NotNow
 from engine.log import Close, Conditions
 from engine.logbook import load_logbook, typed_target
 from engine.rehearsal import NIGHT
@@ -110,6 +111,31 @@ def test_who_only_asks_sees_what_the_console_sees(tmp_path: Path) -> None:
         assert each.reasons == shown[each.target.name].reasons
         assert each.airmass == pytest.approx(shown[each.target.name].airmass, abs=0.01)
     assert [each.target.name for each in seen.targets if each.reasons] == ["Far"]
+
+
+def test_a_filter_that_leaves_the_wheel_in_the_middle_of_its_run(tmp_path: Path) -> None:
+    """The console was left for a moment to edit the files; what was exposed stays recorded."""
+    folder = small_logbook(tmp_path)
+    clock = evening_clock(folder)
+    with a_console(folder, clock) as watch:
+        acts.point_at(watch, "Near")
+        acts.arrive(watch)
+        acts.start_run(watch, watch.plans()["Near"])
+        for seconds in (7.0, 30.0):
+            clock.advance_s(seconds)
+            watch.tick()
+        assert watch.stage is Stage.BETWEEN
+    for name in ("observatory.toml", "targets.toml"):
+        text = (folder / name).read_text()
+        (folder / name).write_text(text.replace('"B"', '"Bessell B"'))
+    with a_console(folder, clock) as watch:
+        with pytest.raises(NotNow, match="B is no longer in the wheel"):
+            acts.measured_fwhm(watch, 2.0)
+        for seconds in (9.0, 30.0):
+            clock.advance_s(seconds)
+            watch.tick()
+        assert [each.filter for each in watch.state.kept] == ["B", "B"]
+        assert [each.credit is None for each in watch.state.kept] == [False, True]
 
 
 def test_a_night_is_closed_once(tmp_path: Path) -> None:
