@@ -57,6 +57,7 @@ class Onlooker(Watch):
         """Read what the night's own console has added since."""
         if self._follower.poll():
             self._take_in()
+        self._want_what_is_old()
 
     def vouch(self) -> None:
         """Refuse: it is for the observer to say."""

@@ -234,9 +234,15 @@ class Watch:
         now_mjd = self.clock.now_mjd()
         while self._one_due(now_mjd):
             pass
+        self._want_what_is_old()
+
+    def _want_what_is_old(self) -> None:
+        """Want a plan anew when the sky has turned since the last one."""
         plan = self.plan
-        if plan is not None and (now_mjd - plan.made_mjd) * MINUTES_PER_DAY > REPLAN_MIN:
-            self._want(Wish(Work.RETIME, "the sky turned"))
+        if plan is not None:
+            age_min = (self.clock.now_mjd() - plan.made_mjd) * MINUTES_PER_DAY
+            if age_min > REPLAN_MIN:
+                self._want(Wish(Work.RETIME, "the sky turned"))
 
     def _one_due(self, now_mjd: float) -> bool:
         stage, exposing = self.stage, self._state.exposing
