@@ -142,24 +142,22 @@ def test_a_filter_that_leaves_the_wheel_in_the_middle_of_its_run(tmp_path: Path)
 def test_who_looks_on_has_a_plan_of_now_even_when_nothing_happens(tmp_path: Path) -> None:
     """The sky turns for the onlooker too; a plan in force for ten minutes is made anew."""
     folder = small_logbook(tmp_path)
-    clock = evening_clock(folder)
-    with a_console(folder, clock) as watch:
+    with a_console(folder, evening_clock(folder)) as watch:
         acts.zenith_seeing(watch, 1.1)
-        assert watch._pen.close()
-        onlooker = open_onlooker(folder, NIGHT).watch
-        hand = onlooker.clock
-        assert isinstance(hand, HandClock)
-        plan(onlooker)
-        assert onlooker.state == watch.state
-        onlooker.tick()
-        assert onlooker.planning() is None
-        hand.advance_s(11.0 * 60.0)
-        onlooker.tick()
-        plan(onlooker)
-        assert onlooker.plan is not None
-        assert onlooker.plan.made_mjd == hand.now_mjd()
-        with pytest.raises(NotNow, match="looks on"):
-            acts.note(onlooker, "not mine")
+    onlooker = open_onlooker(folder, NIGHT).watch
+    hand = onlooker.clock
+    assert isinstance(hand, HandClock)
+    plan(onlooker)
+    assert onlooker.state == watch.state
+    onlooker.tick()
+    assert onlooker.planning() is None
+    hand.advance_s(11.0 * 60.0)
+    onlooker.tick()
+    plan(onlooker)
+    assert onlooker.plan is not None
+    assert onlooker.plan.made_mjd == hand.now_mjd()
+    with pytest.raises(NotNow, match="looks on"):
+        acts.note(onlooker, "not mine")
 
 
 def test_a_night_is_closed_once(tmp_path: Path) -> None:
