@@ -95,3 +95,65 @@ def test_the_sky_marks_visits_and_what_was_observed(folder: Path) -> None:
         assert "dropped for tonight by the observer" in text
 
     play(folder, story)
+
+
+@pytest.mark.parametrize("size", SIZES)
+def test_conditions_tell_what_is_measured_how_old_and_what_is_missing(
+    folder: Path, size: tuple[int, int]
+) -> None:
+    """Nothing is made up: a usual value says so, what was typed has an age, the rest is missing."""
+
+    async def story(trial: Trial) -> None:
+        await trial.press("3")
+        text = trial.text("view")
+        assert "nothing measured yet" in text
+        assert "nobody has entered" in text
+        for word in ("wind", "humidity", "dew margin", "cloud", "air", "pressure"):
+            assert word in text
+        assert "●" not in text
+        await trial.press("z")
+        await trial.type("2.1")
+        await trial.press("c", "w")
+        await trial.type("13")
+        await trial.wait(600.0)
+        text = trial.text("view")
+        assert "measured 10 min ago" in text
+        assert "●" in text
+        row = next(each for each in text.splitlines() if "wind" in each)
+        assert row.startswith("!wind")
+        assert "13 m/s" in row
+        assert "above 12" in row
+        assert "10 min" in row
+        await trial.press("c", "t")
+        await trial.type("12")
+        await trial.press("c", "d")
+        await trial.type("5")
+        row = next(each for each in trial.text("view").splitlines() if "dew margin" in each)
+        assert "7 °C" in row
+        assert row.startswith(" dew")
+
+    play(folder, story, size=size)
+
+
+def test_conditions_give_image_and_sky_of_each_filter(folder: Path) -> None:
+    """The sizes are the model's for the seeing now, the sky is the night's table."""
+
+    async def story(trial: Trial) -> None:
+        await trial.press("z")
+        await trial.type("2.1")
+        await trial.press("3")
+        watch = trial.watch
+        night = watch.planner.night
+        assert trial.console.chosen is not None
+        assert watch.plan is not None
+        index = night.target_index(trial.console.chosen)
+        at = night.index_at(trial.clock.now_mjd())
+        seeing = watch.plan.forecast.now_arcsec
+        lines = trial.text("view").splitlines()
+        for place, each in enumerate(night.observatory.filters):
+            size = watch.planner.model.size_arcsec(place, seeing, night.airmass[index, at])
+            sky = night.sky_mag_arcsec2[place, index, at]
+            (row,) = (line for line in lines if f' {each.name:<3} {float(size):.2f}"' in line)
+            assert f"{sky:.1f}" in row
+
+    play(folder, story)

@@ -106,14 +106,12 @@ class Canvas:
 
     def band(self, lows: Sequence[float], highs: Sequence[float], scale: Scale, role: str) -> None:
         """Stipple what lies between two curves."""
-        for x in range(self.columns * 2):
+        for x in range(0, self.columns * 2, 4):
             share = (x + 0.5) / (self.columns * 2)
             low, high = _sample(lows, share), _sample(highs, share)
-            if math.isnan(low) or math.isnan(high):
-                continue
-            for y in range(self.rows * 4):
+            for y in range(x // 2 % 4, self.rows * 4, 4):
                 value = scale.high - (y + 0.5) / (self.rows * 4) * (scale.high - scale.low)
-                if low <= value <= high and x % 2 == 0 and (y + x) % 4 == 0:
+                if low <= value <= high:
                     self._set(x, y, role)
 
     def point(self, share: float, value: float, scale: Scale, mark: Span) -> None:

@@ -30,6 +30,12 @@ NIGHT = "night"
 VIEWS: tuple[ViewEntry, ...] = (
     ViewEntry(NIGHT, "1", "night", "Show the night under way: the list, a target, the order."),
     ViewEntry("sky", "2", "sky", "Show the sky: altitudes through the night, order and limits."),
+    ViewEntry(
+        "conditions",
+        "3",
+        "conditions",
+        "Show seeing, weather and sky: measured, foretold, how old.",
+    ),
 )
 
 VIEW_OF_ACTION: dict[str, str] = {each.action: each.name for each in VIEWS}

@@ -3,8 +3,10 @@
 from __future__ import annotations
 
 from tui.console.views.base import View
+from tui.console.views.conditions import Conditions
 from tui.console.views.sky import Sky
 
 CLASSES: dict[str, type[View]] = {
     "sky": Sky,
+    "conditions": Conditions,
 }
