@@ -16,6 +16,8 @@ from engine.log.disk import Disk
 from engine.log.events import Event, Recovery
 
 NAMES_TRIED = 100
+# Memory sticks and some network disks know no second names: what a link is answered with there.
+NO_SECOND_NAMES = (errno.EPERM, errno.ENOTSUP, errno.ENOSYS)
 
 
 def set_tail_aside(path: Path, fd: int, offset: int, disk: Disk) -> Path:
@@ -82,16 +84,37 @@ def write_fresh(path: Path, data: bytes, disk: Disk) -> tuple[Path, int]:
 
 
 def take_place(fresh: Path, path: Path, end: int, disk: Disk) -> None:
-    """Let a fresh copy take a log's name; the file that had it stays, as ``NAME.failed-END``."""
-    for aside in _names(path, f"failed-{end}"):
-        try:
-            disk.link(path, aside)
-        except FileExistsError:
-            if not aside.samefile(path):
-                continue
-        break
+    """Let a fresh copy take a log's name; the file that had it stays, as ``NAME.failed-END``.
+
+    On a disk without second names it stays as a copy.
+    """
+    try:
+        for aside in _names(path, f"failed-{end}"):
+            try:
+                disk.link(path, aside)
+            except FileExistsError:
+                if not aside.samefile(path):
+                    continue
+            break
+    except OSError as error:
+        if error.errno not in NO_SECOND_NAMES:
+            raise
+        keep_beside(path, f"failed-{end}", path.read_bytes(), disk)
     disk.sync_folder(path.parent)
     disk.replace(fresh, path)
+    disk.sync_folder(path.parent)
+
+
+def take_free_name(fresh: Path, path: Path, disk: Disk) -> None:
+    """Let a fresh copy take a log's name, which no file has; FileExistsError when one has."""
+    try:
+        disk.link(fresh, path)
+    except OSError as error:
+        if error.errno not in NO_SECOND_NAMES:
+            raise
+        if path.exists():
+            raise FileExistsError(errno.EEXIST, os.strerror(errno.EEXIST)) from None
+        disk.replace(fresh, path)
     disk.sync_folder(path.parent)
 
 
@@ -105,8 +128,7 @@ def _give_name(fresh: Path, path: Path, data: bytes, disk: Disk) -> None:
     try:
         disk.link(fresh, path)
     except OSError as error:
-        # Memory sticks and some network disks know no second names: make the file in its place.
-        if error.errno not in (errno.EPERM, errno.ENOTSUP, errno.ENOSYS):
+        if error.errno not in NO_SECOND_NAMES:
             raise
         fd = os.open(path, os.O_WRONLY | os.O_CREAT | os.O_EXCL | os.O_CLOEXEC, 0o644)
         try:

@@ -25,6 +25,7 @@ from engine.log.recovery import (
     keep_beside,
     set_tail_aside,
     sweep,
+    take_free_name,
     take_place,
     unnoted_recoveries,
     write_fresh,
@@ -241,8 +242,7 @@ class NightLog:
             if is_file_at(self._fd, self.path):
                 take_place(fresh, self.path, len(self._whole), self._disk)
             else:
-                self._disk.link(fresh, self.path)
-                self._disk.sync_folder(self.path.parent)
+                take_free_name(fresh, self.path, self._disk)
         except BaseException:
             os.close(fd)
             raise

@@ -223,7 +223,7 @@ class Watch:
         """Save the log elsewhere; return what the observer must be told of that."""
         try:
             saved = self._pen.rescue(Path.home())
-        except OSError as error:
+        except (OSError, RuntimeError) as error:  # RuntimeError: nobody's home is known
             return f"{self.unwritten} entries of the log could not be written anywhere: {error}"
         return f"the log could not be written in its place; the whole night is in {saved}"
 

@@ -267,6 +267,26 @@ def test_the_temporary_disk_of_the_tests_is_a_local_one(tmp_path: Path) -> None:
     log.close()
 
 
+def test_a_disk_without_second_names_may_fail_and_lose_files_like_any_other(tmp_path: Path) -> None:
+    """A fresh file takes over there too, and what it takes over from stays beside it."""
+    disk = FailingDisk()
+    disk.fail["link"] = raising(errno.EPERM)
+    log = open_log(tmp_path, disk)
+    log.append(note(1))
+    disk.fail["sync"] = raising(errno.EIO, times=1)
+    with pytest.raises(OSError, match="errno 5"):
+        log.append(note(2))
+    log.append(note(2))
+    assert log.path.read_bytes() == log_bytes([note(1), note(2)])
+    failed = f"{NAME}.failed-{len(log_bytes([note(1)]))}"
+    assert (tmp_path / failed).read_bytes() == log_bytes([note(1)])
+    log.path.unlink()
+    log.append(note(3))
+    log.close()
+    assert log.path.read_bytes() == log_bytes([note(1), note(2), note(3)])
+    assert files(tmp_path) == [NAME, failed]
+
+
 # What others do to the file while it is open
 
 

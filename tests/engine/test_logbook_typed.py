@@ -34,6 +34,19 @@ def test_coordinates_in_every_form_are_the_same_place(text: str) -> None:
     assert target.name == "T 0535+2201"
 
 
+@pytest.mark.parametrize(
+    ("place", "name"),
+    [
+        ("23:59:50 -00:30:00", "T 0000-0030"),
+        ("12:07:00 +00:30:00", "T 1207+0030"),
+        ("00:59:00 -89:59:40", "T 0059-9000"),
+    ],
+)
+def test_without_a_name_its_coordinates_are_one(place: str, name: str) -> None:
+    """To the minute, with the sign of a declination less than a degree."""
+    assert typed_target(f"{place} V:60x5", WHEEL).name == name
+
+
 def test_a_name_may_stand_anywhere_behind_the_coordinates() -> None:
     target = typed_target("05:34:31 -00:30:00 Ha:300x2 SN in NGC 1 B:30x1", WHEEL)
     assert target.name == "SN in NGC 1"
