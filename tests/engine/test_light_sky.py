@@ -11,6 +11,7 @@ from engine.light import MoonLight, sky_mag_arcsec2, sky_mags_arcsec2
 from engine.light.extinction import rayleigh_mag
 from engine.light.moonlight import ScatteringShares, lamp
 from engine.light.twilight import twilight_nanolambert
+from engine.positions import airmass
 from tests.engine.light_cases import a_filter
 
 NO_MOON = MoonLight(-30.0, 90.0, 180.0)
@@ -121,6 +122,15 @@ def test_the_sky_brightens_gradually_at_moonrise() -> None:
     assert np.all(steps > -1e-3)
     assert steps.max() < 0.3
     assert rising[0] - rising[-1] > 1.5
+
+
+def test_a_low_moon_is_dimmed_along_its_own_air() -> None:
+    """Against one at 20 degrees by the extinction of as many airmasses as it is deeper."""
+    deg = np.array([0.5, 5.0, 12.0, 20.0, 45.0, 90.0])
+    light = lamp(MoonLight(deg, 60.0, 0.0), 550.0, 0.16)
+    assert np.all(np.diff(light) > 0.0)
+    deeper = airmass(deg[:3]) - airmass(20.0)
+    assert light[:3] / light[3] == pytest.approx(10.0 ** (-0.4 * 0.16 * deeper), rel=1e-6)
 
 
 def test_no_seam_where_the_low_moon_begins() -> None:
