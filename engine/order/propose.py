@@ -13,12 +13,13 @@ import numpy as np
 
 from engine.order.blocks import TICKS_PER_MIN, Blocks, cut
 from engine.order.construct import TEMPERS, URGENT, VALUE_FIRST, Start, Temper, Turn, greedies
-from engine.order.improve import Effort, Search, Timed
+from engine.order.improve import Effort, Search
 from engine.order.order import Order, PlacedExposures, Visit
 from engine.order.pins import PIN_WORTH
 from engine.order.prices import price_of_time
 from engine.order.problem import Problem
 from engine.order.reasons import left_out, reason_for
+from engine.order.sequence import Timed
 from engine.order.timeline import Stay, Timeline
 from engine.times import MINUTES_PER_DAY
 

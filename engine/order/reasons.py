@@ -106,6 +106,14 @@ def left_out(problem: Problem, visited: set[str]) -> tuple[LeftOut, ...]:
 
 def _why_left_out(problem: Problem, index: int) -> str:
     name = problem.targets[index].name
+    pin_mjd = problem.rules.pinned.get(name)
+    if pin_mjd is not None:
+        return f"pinned to {local_time(problem, pin_mjd)}, but {_why_not_in(problem, index)}"
+    return _why_not_in(problem, index)
+
+
+def _why_not_in(problem: Problem, index: int) -> str:
+    name = problem.targets[index].name
     if name in problem.rules.dropped:
         return "dropped for tonight by the observer"
     own = [place for place in problem.of_target[index] if place >= 0]

@@ -14,11 +14,11 @@ import numpy as np
 from numpy.typing import NDArray
 
 from engine.order.blocks import TICKS_PER_MIN, Blocks
-from engine.order.improve import Timed
 from engine.order.merit import exposure_worth
 from engine.order.order import Order, PlacedExposures
 from engine.order.pins import pin_worths
 from engine.order.problem import Problem
+from engine.order.sequence import Timed
 from engine.times import MINUTES_PER_DAY
 
 Floats = NDArray[np.float64]

@@ -11,9 +11,10 @@ import pytest
 from engine.order import NoSolver, Order, Rules, build_problem, propose, upper_limit
 from engine.order.blocks import NEVER, cut
 from engine.order.construct import URGENT, VALUE_FIRST, Start, Turn
-from engine.order.improve import Effort, Search, Sequence
+from engine.order.improve import Effort, Search
 from engine.order.prices import price_of_time
 from engine.order.propose import plain_order
+from engine.order.sequence import Sequence
 from tests.bench.order.nights import RandomNight, random_night
 
 
