@@ -66,7 +66,10 @@ class Lost:
 
 @dataclass(frozen=True, slots=True)
 class Measured:
-    """A seeing value: when (UTC MJD), zenith at 500 nm (arcsec), and the event it came in."""
+    """A seeing value: when (UTC MJD), zenith at 500 nm (arcsec), and the event it came in.
+
+    One that was measured on an exposure is of that exposure's middle, however late it was typed.
+    """
 
     mjd: float
     zenith_arcsec: float
@@ -263,7 +266,9 @@ def _after_conditions(state: NightState, event: Conditions) -> NightState:
     }
     seeing = state.seeing
     if event.seeing_arcsec is not None:
-        seeing = (*seeing, Measured(event.t_mjd, event.seeing_arcsec, event.n))
+        measured = next((each for each in state.exposures if each.n == event.of), None)
+        mjd = event.t_mjd if measured is None else measured.mid_mjd
+        seeing = (*seeing, Measured(mjd, event.seeing_arcsec, event.n))
     return replace(state, conditions=state.conditions | entered, seeing=seeing)
 
 

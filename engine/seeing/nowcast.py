@@ -33,18 +33,19 @@ class SeeingMeasurement:
 class SeeingForecast:
     """What is known of the seeing at one moment, and what follows for later ones.
 
-    ``age_min`` is the age of the last measurement, infinite when there is none. ``bank`` is the
-    state of the filters at ``now_mjd``.
+    ``count`` measurements went in; ``age_min`` is the age of the last, infinite when there is none.
+    ``bank`` is the state of the filters at ``now_mjd``.
     """
 
     now_mjd: float
+    count: int
     age_min: float
     bank: Bank
 
     @property
     def measured(self) -> bool:
         """Whether any measurement went in."""
-        return math.isfinite(self.age_min)
+        return self.count > 0
 
     @property
     def night_median_arcsec(self) -> float:
@@ -86,4 +87,6 @@ def nowcast(
         bank = bank.given(math.log(each.zenith_arcsec), each.error_ln)
         last_mjd = each.mjd
     age_min = (now_mjd - last_mjd) * MINUTES_PER_DAY
-    return SeeingForecast(now_mjd, age_min if usable else math.inf, bank.moved_on(age_min))
+    return SeeingForecast(
+        now_mjd, len(usable), age_min if usable else math.inf, bank.moved_on(age_min)
+    )

@@ -53,9 +53,9 @@ def _next_visit(before: Order, after: Order) -> list[str]:
 
 def _seeing(before: Plan, after: Plan) -> list[str]:
     was, now = before.forecast.now_arcsec, after.forecast.now_arcsec
-    measured_mjd = after.made_mjd - after.forecast.age_min / MINUTES_PER_DAY
     # Without a new measurement the forecast only relaxes, as it was said to.
-    if measured_mjd <= before.made_mjd or abs(now / was - 1.0) < SEEING_SHARE:
+    same = after.forecast.count == before.forecast.count
+    if same or abs(now / was - 1.0) < SEEING_SHARE:
         return []
     return [f'seeing {was:.2f}" to {now:.2f}"']
 

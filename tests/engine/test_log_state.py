@@ -226,6 +226,21 @@ def test_conditions_keep_the_latest_of_each_quantity() -> None:
     assert state.latest("humidity_percent") is None
 
 
+def test_a_seeing_is_of_when_it_was_seen() -> None:
+    """Of the middle of the exposure it was measured on; of its entry when typed as such."""
+    state = state_of(
+        start(),
+        record(1),
+        Note(text="a while later"),
+        Conditions(seeing_arcsec=1.4, measured_fwhm_arcsec=1.8, of=2),
+        Conditions(seeing_arcsec=1.2),
+        Conditions(seeing_arcsec=1.3, of=99),
+    )
+    exposure = state.exposures[0]
+    assert exposure.mid_mjd < at(3)
+    assert [each.mjd for each in state.seeing] == [exposure.mid_mjd, at(5), at(6)]
+
+
 def test_undo_reaches_for_the_observers_entries_only() -> None:
     """What the console wrote by itself can't be undone, nor can an exposure that was taken."""
     events = numbered(
