@@ -8,6 +8,7 @@ from collections.abc import Callable
 from dataclasses import fields, is_dataclass
 from typing import Any
 
+from engine.clock import SystemClock
 from engine.errors import NoAnswer, WarmroomError
 from engine.logbook import load_logbook
 from engine.logbook.text import shown
@@ -17,7 +18,7 @@ from engine.past.fit import fit_images
 from engine.past.nights import Period, efficiency, nights
 from engine.past.search import Condition, Wanted, condition, find_exposures, find_words
 from engine.past.seeing import measurements, site_seeing
-from engine.times import iso_from_mjd
+from engine.times import iso_from_mjd, night_of
 from tui.commands import past_pages as pages
 from tui.commands.output import print_json
 
@@ -81,9 +82,12 @@ def _whole(index: PastIndex, arguments: argparse.Namespace, period: Period) -> i
     if not lines:
         raise NoAnswer(f"{arguments.logbook}: no night log is in this logbook and period")
     logbook = load_logbook(arguments.logbook)
+    # The night under way still has most of its time before it.
+    timezone = logbook.observatory.site.timezone
+    tonight = night_of(SystemClock().now_mjd(), timezone).isoformat()
     value = {
         "nights": lines,
-        "time": efficiency(lines),
+        "time": efficiency([line for line in lines if line.night != tonight]),
         "asked": asked(index, logbook),
         "totals": totals(index),
         "seeing": site_seeing(measurements(index, period)),

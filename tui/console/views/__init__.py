@@ -36,6 +36,9 @@ VIEWS: tuple[ViewEntry, ...] = (
         "conditions",
         "Show seeing, weather and sky: measured, foretold, how old.",
     ),
+    ViewEntry(
+        "past", "7", "past", "Show past nights: each again, a target's history, the site's seeing."
+    ),
 )
 
 VIEW_OF_ACTION: dict[str, str] = {each.action: each.name for each in VIEWS}

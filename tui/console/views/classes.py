@@ -4,9 +4,11 @@ from __future__ import annotations
 
 from tui.console.views.base import View
 from tui.console.views.conditions import Conditions
+from tui.console.views.past import Past
 from tui.console.views.sky import Sky
 
 CLASSES: dict[str, type[View]] = {
     "sky": Sky,
     "conditions": Conditions,
+    "past": Past,
 }
