@@ -83,17 +83,27 @@ def test_a_number_that_can_not_be_is_kept_in_the_field(folder: Path) -> None:
 def test_worse_seeing_changes_the_order_and_says_why(folder: Path) -> None:
     """Sizes and order change at once, the limit is named, and undo brings the old ones back."""
 
-    async def story(trial: Trial) -> None:
+    def state_of(trial: Trial, name: str) -> tuple[list[str], list[str]]:
+        """Return the order's targets, and why one of them may not be observed now."""
         assert trial.watch.plan is not None
-        before = [visit.target for visit in trial.watch.plan.order.visits]
-        assert before[0] == "Sharp Two"
+        (now,) = (each for each in trial.watch.targets_now() if each.target.name == name)
+        targets = [visit.target for visit in trial.watch.plan.order.visits]
+        return targets, [reason.code for reason in now.reasons]
+
+    async def story(trial: Trial) -> None:
+        before, reasons = state_of(trial, "Sharp Two")
+        assert "Sharp Two" in before
+        assert reasons == []
         await trial.press("z")
         await trial.type("4.5")
-        after = [visit.target for visit in trial.watch.plan.order.visits]
+        after, reasons = state_of(trial, "Sharp Two")
         assert after[0] != "Sharp Two"
+        assert reasons == ["too_soft"]
         assert "too soft now: Sharp Two" in trial.text("notices")
         await trial.press("u")
-        assert trial.watch.plan.order.visits[0].target == "Sharp Two"
+        again, reasons = state_of(trial, "Sharp Two")
+        assert "Sharp Two" in again
+        assert reasons == []
         assert not trial.watch.state.seeing
         amendments = [e for e in trial.watch.state.events if isinstance(e, Amendment)]
         assert [each.withdrawn for each in amendments] == [True]

@@ -38,7 +38,7 @@ ra = "09:20:00"
 dec = "-31:11:00"
 priority = 3
 exposures = [ { filter = "V", seconds = 240, count = 6 } ]
-maximum_image_size_arcsec = 2.4
+maximum_image_size_arcsec = 2.6
 
 [[target]]
 name = "Blunt"
