@@ -8,7 +8,10 @@ from engine.logbook.targets import Target
 
 def planned_hours(targets: tuple[Target, ...]) -> float:
     """Return the open-shutter time (h) that the plans of targets ask for."""
-    return sum(e.seconds * e.count for target in targets for e in target.exposures) / 3600.0
+    return (
+        sum(e.seconds * e.count * target.visits for target in targets for e in target.exposures)
+        / 3600.0
+    )
 
 
 def describe(logbook: Logbook) -> list[str]:

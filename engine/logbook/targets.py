@@ -4,9 +4,9 @@ from __future__ import annotations
 
 import re
 from datetime import datetime
-from typing import Annotated, Literal
+from typing import Annotated, Literal, Self
 
-from pydantic import BeforeValidator, Field, field_validator
+from pydantic import BeforeValidator, Field, field_validator, model_validator
 
 from engine.logbook.faults import KeyPath, Misfits
 from engine.logbook.observatory import LONGEST_LIST, FileModel, Name, key
@@ -133,7 +133,34 @@ class Target(FileModel):
     contiguous_min: float | None = key(
         "wants this long without leaving", unit="min", gt=0, le=1440, default=None
     )
+    visits: int = key(
+        "how often all of its exposures are wanted in one night", ge=1, le=200, default=1
+    )
+    least_gap_min: float | None = key(
+        "from the begin of one visit to the next, at least", unit="min", gt=0, le=1440, default=None
+    )
+    greatest_gap_min: float | None = key(
+        "from the begin of one visit to the next, at most", unit="min", gt=0, le=1440, default=None
+    )
+    each_night: bool = key(
+        "wanted anew every night: what earlier nights have done does not count", default=False
+    )
     role: Literal["science", "standard"] = key("what it is for", default="science")
+
+    @model_validator(mode="after")
+    def _gaps_of_visits(self) -> Self:
+        least, greatest = self.least_gap_min, self.greatest_gap_min
+        if self.visits > 1 and least is None:
+            raise Misfits(
+                [(("least_gap_min",), "is missing, expected for more than one of visits")]
+            )
+        if self.visits == 1 and (least or greatest):
+            name = "least_gap_min" if least else "greatest_gap_min"
+            raise Misfits([((name,), "is between visits, expected more than one of visits")])
+        if least and greatest and least > greatest:
+            what = f"{greatest:g}, expected at least least_gap_min, {least:g}"
+            raise Misfits([(("greatest_gap_min",), what)])
+        return self
 
     @field_validator("windows", mode="before")
     @classmethod

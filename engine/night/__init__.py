@@ -9,6 +9,7 @@ from engine.night.outlook import Outlook, Outlooks
 from engine.night.progress import Plans, Progress, Taken, is_finished, plans
 from engine.night.reasons import REASONS, Reason, bit_of, reason_coded, reasons_in
 from engine.night.stretches import Stretch, runs, stretches
+from engine.night.series import Series, TakenTonight, series_of
 from engine.night.tables import Night, open_night, tables
 
 __all__ = [
@@ -20,8 +21,10 @@ __all__ = [
     "Plans",
     "Progress",
     "Reason",
+    "Series",
     "Stretch",
     "Taken",
+    "TakenTonight",
     "TargetNow",
     "bit_of",
     "is_finished",
@@ -31,6 +34,7 @@ __all__ = [
     "reasons_in",
     "runs",
     "stretches",
+    "series_of",
     "tables",
     "targets_at",
 ]

@@ -55,19 +55,28 @@ class Progress:
 Plans = dict[str, tuple[Progress, ...]]
 
 
-def plans(targets: Iterable[Target], taken: Iterable[Taken]) -> Plans:
+def plans(
+    targets: Iterable[Target], tonight: Iterable[Taken], earlier: Iterable[Taken] = ()
+) -> Plans:
     """Return every target's plan with what was taken counted in, by target name.
+
+    What was taken on earlier nights counts but for targets that are wanted anew each night.
 
     An exposure counts for the line of its filter and length; where a plan has several such, for
     the first that is not complete. One of another length counts for the line of its filter that
     lacks most: the observer chose that length for that plan.
     Exposures of targets or filters that are in no plan count for nothing.
     """
+    targets = tuple(targets)
+    anew = {target.name for target in targets if target.each_night}
     lines = {
-        target.name: [Progress(each.filter, each.seconds, each.count) for each in target.exposures]
+        target.name: [
+            Progress(each.filter, each.seconds, each.count * target.visits)
+            for each in target.exposures
+        ]
         for target in targets
     }
-    for exposure in taken:
+    for exposure in (*(each for each in earlier if each.target not in anew), *tonight):
         plan = lines.get(exposure.target, [])
         same_filter = [i for i, line in enumerate(plan) if line.filter == exposure.filter]
         if not same_filter:

@@ -10,12 +10,14 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
 from engine.order.pins import pin_worths
 from engine.order.problem import Problem
+from engine.order.repeats import SAMPLED_SHARE, Part
 
 Singles = NDArray[np.float32]
 Places = NDArray[np.int64]
@@ -28,8 +30,8 @@ HALVINGS = 4
 # The value of beginning where a block may not: worse than anything it could win.
 NEVER = np.float32(-1e9)
 
-# So many exposures of one line.
-Part = tuple[int, int]
+# What never and long ago are in ticks, and how far apart visits stay from their greatest gap.
+FAR, FAR_BACK, SLIP = 10**6, -(10**7), 2
 
 
 @dataclass(frozen=True, slots=True)
@@ -37,7 +39,12 @@ class Blocks:
     """Every block: its target, parts and minutes, and its value (B, K+1) by the tick it begins.
 
     ``value`` is `NEVER` where a limit forbids it; what a pin counts is in it for targets that are
-    ``pinned`` (B,). ``ready`` (B, K+1) is the next tick at which no limit forbids, K for never
+    ``pinned`` (B,). Visits of a series (`engine.order.repeats`) are blocks of their own: ``series``
+    (B,) is their target, -1 for other blocks, ``least`` and ``greatest`` (B,) the ticks from the
+    begin of the last of them to this one, ``last`` when that was, by target. Visits of a standard
+    have an airmass of their own, ``own_part`` (B,), at which they count in full: ``parts_at`` says
+    which part of its range a target is in at each tick, ``sampled`` which are done.
+    ``ready`` (B, K+1) is the next tick at which no limit forbids, K for never
     again. What finishing a plan earns is in the value when the plan is one block; ``pieces`` (N,)
     counts the blocks of the other plans that can be finished,
     0 for the rest, and ``bonus`` (N,) is what all of them together earn.
@@ -51,6 +58,13 @@ class Blocks:
     pieces: Places
     bonus: Singles
     pinned: NDArray[np.bool_]
+    series: Places
+    least: Places
+    greatest: Places
+    last: dict[int, int]
+    own_part: Places
+    parts_at: dict[int, Places]
+    sampled: dict[int, frozenset[int]]
 
     def finishing(self, order: list[int]) -> float:
         """Return what the plans of several blocks earn that are all in an order."""
@@ -73,10 +87,15 @@ def cut(problem: Problem) -> Blocks:
     integral = _integral(problem)
     kept: list[tuple[int, tuple[Part, ...]]] = []
     values: list[Singles] = []
+    parts_at = _airmass_parts(problem)
+    own_parts: list[int] = []
     for _ in range(HALVINGS):
         table = _values(problem, waiting, integral)
+        own = _own_parts(problem, waiting)
+        _sample_airmass(waiting, own, parts_at, table)
         fits = np.asarray((table > NEVER).any(axis=1))
         kept += [each for each, fit in zip(waiting, fits, strict=True) if fit]
+        own_parts += [each for each, fit in zip(own, fits, strict=True) if fit]
         values.append(table[fits])
         waiting = [
             (target, less)
@@ -98,7 +117,38 @@ def cut(problem: Problem) -> Blocks:
         pieces=_pieces_to_finish(problem, kept),
         bonus=problem.bonus.astype(np.float32),
         pinned=np.array([target in problem.pins for target, _ in kept], dtype=bool),
+        **_gaps(problem, kept),
+        own_part=np.array(own_parts, dtype=np.int64),
+        parts_at=parts_at,
+        sampled={
+            target: each.spread.sampled
+            for target, each in problem.repeats.items()
+            if each.spread is not None
+        },
     )
+
+
+def _gaps(problem: Problem, kept: list[tuple[int, tuple[Part, ...]]]) -> dict[str, Any]:
+    """Return what binds visits of a series to each other, in ticks."""
+    series = np.full(len(kept), -1, dtype=np.int64)
+    least, greatest = np.zeros(len(kept), dtype=np.int64), np.full(len(kept), FAR)
+    for row, (target, parts) in enumerate(kept):
+        repeats = problem.repeats.get(target)
+        # What remains of a visit that was begun is bound to nothing.
+        if repeats is None or (repeats.begun and parts == repeats.visits[0]):
+            continue
+        series[row] = target
+        least[row] = math.ceil(repeats.least_min * TICKS_PER_MIN)
+        if repeats.greatest_min < math.inf:
+            # A little less: the exact times may slip by seconds, and later is not lawful.
+            greatest[row] = max(int(repeats.greatest_min * TICKS_PER_MIN) - SLIP, least[row])
+    last = dict.fromkeys(problem.repeats, FAR_BACK)
+    for target, each in problem.repeats.items():
+        if each.last_min > -math.inf and each.visits:
+            # A block begins with the filter's change, a visit with its first exposure.
+            change_min = problem.lines[each.visits[-1][0][0]].change_min
+            last[target] = math.floor((each.last_min - change_min) * TICKS_PER_MIN)
+    return {"series": series, "least": least, "greatest": greatest, "last": last}
 
 
 def _ready(value: Singles) -> Places:
@@ -144,6 +194,8 @@ def _pieces(problem: Problem, target: int) -> list[tuple[Part, ...]]:
     parts = tuple((line, problem.lines[line].count) for line in own)
     if not parts:
         return []
+    if target in problem.repeats:
+        return list(problem.repeats[target].visits)
     # A run that must not be broken is cut only where each piece is still long enough.
     if asked_min <= max(WHOLE_MIN, 2.0 * unbroken_min):
         return [parts]
@@ -186,6 +238,8 @@ def _halves(problem: Problem, target: int, parts: tuple[Part, ...]) -> list[tupl
 
     A run that must not be broken keeps its first exposures for as long as it asks, and no more.
     """
+    if target in problem.repeats:
+        return []  # a visit is taken whole or not at all
     least_min = float(problem.contiguous_min[target])
     if least_min > 0.0:
         return [_shortest(problem, parts, least_min)]
@@ -265,3 +319,38 @@ def _values(
     table[:, :-1][~possible] = NEVER
     table[:, -1] = NEVER
     return table
+
+
+def _airmass_parts(problem: Problem) -> dict[int, Places]:
+    """Return which part of its airmass each standard of several visits is in at each tick (K,)."""
+    found: dict[int, Places] = {}
+    for target, each in problem.repeats.items():
+        if each.spread is not None:
+            minutes = slice(problem.first, problem.first + problem.minutes)
+            parts = each.spread.part(problem.night.airmass[target, minutes])
+            found[target] = np.repeat(parts, TICKS_PER_MIN)
+    return found
+
+
+def _own_parts(problem: Problem, blocks: list[tuple[int, tuple[Part, ...]]]) -> list[int]:
+    """Return the part of its airmass at which each block counts in full; -1 for none of its own."""
+    wanting = {
+        target: list(each.spread.unsampled)
+        for target, each in problem.repeats.items()
+        if each.spread is not None
+    }
+    return [wanting[target].pop(0) if wanting.get(target) else -1 for target, _ in blocks]
+
+
+def _sample_airmass(
+    blocks: list[tuple[int, tuple[Part, ...]]],
+    own_parts: list[int],
+    parts_at: dict[int, Places],
+    table: Singles,
+) -> None:
+    """Let each visit of a standard count in full in its own part of the airmass, else half."""
+    for row, ((target, _), own) in enumerate(zip(blocks, own_parts, strict=True)):
+        if target in parts_at:
+            elsewhere = parts_at[target] != own
+            can = elsewhere & (table[row, :-1] > NEVER)
+            table[row, :-1][can] *= np.float32(SAMPLED_SHARE)

@@ -12,7 +12,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from engine.order.blocks import NEVER, TICKS_PER_MIN, Blocks
+from engine.order.blocks import FAR, FAR_BACK, NEVER, TICKS_PER_MIN, Blocks
 from engine.order.travel import Travel
 
 Singles = NDArray[np.float32]
@@ -80,6 +80,7 @@ def greedies(
     moments = [list(held.ticks) for _ in range(rows)]
     state_tick = np.full(rows, tick)
     state_here = np.full(rows, here)
+    gaps = _Gaps.of(blocks, rows)
     free = np.ones((rows, len(blocks.target)), dtype=bool)
     free[:, list(start.first)] = False
     active = np.ones(rows, dtype=bool)
@@ -88,22 +89,58 @@ def greedies(
         minute = np.minimum(state_tick // TICKS_PER_MIN, ticks // TICKS_PER_MIN - 1)
         way = travel.between(state_here[:, None], blocks.target[None], minute[:, None])
         arrive = np.minimum(state_tick[:, None] + np.rint(way * TICKS_PER_MIN).astype(int), ticks)
+        if gaps is not None:
+            arrive = np.minimum(np.maximum(arrive, gaps.first()), ticks)
         begin = tables.ready[tables.row, arrive]
         score = tables.score(begin, state_tick)
         score[~free] = -np.inf
+        if gaps is not None:
+            score[begin > gaps.last()] = -np.inf
         if blocks.pinned.any():
             _wait_for_pins(blocks, travel, score, begin, free)
         chosen = score.argmax(axis=1)
         active &= np.isfinite(score[row_index, chosen])
-        for row in np.flatnonzero(active):
+        for row in np.flatnonzero(active).tolist():
             block = int(chosen[row])
             sequences[row].append(block)
             moments[row].append(int(begin[row, block]))
             free[row, block] = False
             state_tick[row] = begin[row, block] + tables.length[block]
             state_here[row] = blocks.target[block]
+            if gaps is not None:
+                gaps.take(row, block, int(begin[row, block]))
         state_tick = np.minimum(state_tick, ticks)
     return [Turn(tuple(s), tuple(m)) for s, m in zip(sequences, moments, strict=True)]
+
+
+@dataclass(slots=True)
+class _Gaps:
+    """When the last visit of every series began, for each greedy (G, B)."""
+
+    blocks: Blocks
+    since: Places
+
+    @classmethod
+    def of(cls, blocks: Blocks, rows: int) -> _Gaps | None:
+        """Return what binds the visits of series at first; None when there are none."""
+        if not (blocks.series >= 0).any():
+            return None
+        since = [blocks.last.get(int(target), FAR_BACK) for target in blocks.series]
+        return cls(blocks, np.repeat(np.array([since], dtype=np.int64), rows, axis=0))
+
+    def first(self) -> Places:
+        """Return the first tick at which each block may begin."""
+        return np.where(self.since > FAR_BACK, self.since + self.blocks.least, 0)
+
+    def last(self) -> Places:
+        """Return the last tick at which each block may begin."""
+        return np.where(self.since > FAR_BACK, self.since + self.blocks.greatest, FAR)
+
+    def take(self, row: int, block: int, tick: int) -> None:
+        """Remember that a greedy has a visit begin at a tick."""
+        series = self.blocks.series[block]
+        if series >= 0:
+            self.since[row, self.blocks.series == series] = tick
 
 
 def _wait_for_pins(

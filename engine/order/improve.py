@@ -12,7 +12,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
-from engine.order.blocks import TICKS_PER_MIN, Blocks
+from engine.order.blocks import FAR, FAR_BACK, NEVER, TICKS_PER_MIN, Blocks
 from engine.order.construct import Start, Turn
 from engine.order.pins import PIN_WORTH
 from engine.order.sequence import CARRY, Sequence, Timed
@@ -87,6 +87,7 @@ class Search:
         self._lengths = blocks.minutes * TICKS_PER_MIN
         self._rows = np.arange(len(blocks.target)) * (blocks.ticks + 1)
         self._value, self._ready = blocks.value.ravel(), blocks.ready.ravel()
+        self._in_series = bool((blocks.series >= 0).any())
         self._in_pieces = bool((blocks.pieces > 0).any())
         self._place, self._back = self._now.held, False
 
@@ -143,6 +144,8 @@ class Search:
         if value < now.value - slack or list(filled.blocks) == now.order[begin:end]:
             return
         changed = now.changed(begin, end, filled, moved, self._back)
+        if self._in_series:
+            changed = changed.retimed()
         if changed.value >= now.value - slack:
             self._now = changed
 
@@ -164,7 +167,10 @@ class Search:
         moments: list[int] = []
         value = now.joined(gap.left, gap.right, here, lasts, after, tick)
         while pool.size:
-            worth, moment, lag = self._worths(pool, gap)
+            windows = None
+            if self._in_series:
+                windows = self._windows(pool, begin, end, Turn(tuple(filled), tuple(moments)))
+            worth, moment, lag = self._worths(pool, gap, windows)
             gain = worth - value - loss
             noise = self._random.uniform(0.8, 1.2, len(pool))
             score = gain * noise / self._lengths[pool] ** leaning
@@ -224,7 +230,8 @@ class Search:
             near = [
                 place
                 for place in range(max(begin - REACH, now.held), min(end + REACH, len(now.order)))
-                if not begin <= place < end
+                # Visits of a series are bound to each other: they are not moved one by one.
+                if not begin <= place < end and self._blocks.series[now.order[place]] < 0
             ]
             for at in self._random.permutation(len(near))[:ELSEWHERE]:
                 others.append(now.order[near[at]])
@@ -234,7 +241,42 @@ class Search:
         loss[len(pool) - len(others) :] = losses
         return pool, loss, set(others)
 
-    def _worths(self, pool: Places, gap: _Gap) -> tuple[Singles, Places, Places]:
+    def _windows(
+        self, pool: Places, begin: int, end: int, filled: Turn
+    ) -> tuple[Places, Places] | None:
+        """Return the first and last tick at which each block may begin for its series' sake.
+
+        As far as the visits around a stretch are where they are; None when the pool has none.
+        """
+        blocks, now = self._blocks, self._now
+        bound = np.flatnonzero(blocks.series[pool] >= 0)
+        if not bound.size:
+            return None
+        before = [
+            *zip(now.order[:begin], now.ticks[:begin], strict=True),
+            *zip(filled.blocks, filled.ticks, strict=True),
+        ]
+        behind = list(zip(now.order[end:], now.ticks[end:], strict=True))
+        first = np.full(len(pool), FAR_BACK, dtype=np.int64)
+        last = np.full(len(pool), FAR, dtype=np.int64)
+        for row in bound:
+            block = int(pool[row])
+            series, least, greatest = (
+                int(each[block]) for each in (blocks.series, blocks.least, blocks.greatest)
+            )
+            mates = [tick for other, tick in before if blocks.series[other] == series]
+            mate = max(mates, default=blocks.last[series])
+            if mate > FAR_BACK:
+                first[row], last[row] = mate + least, mate + greatest
+            mates = [tick for other, tick in behind if blocks.series[other] == series]
+            if mates:
+                first[row] = max(first[row], min(mates) - greatest)
+                last[row] = min(last[row], min(mates) - least)
+        return first, last
+
+    def _worths(
+        self, pool: Places, gap: _Gap, windows: tuple[Places, Places] | None
+    ) -> tuple[Singles, Places, Places]:
         """Return each block's best value in a gap, its moment, and its lag from the left."""
         ticks = self._blocks.ticks
         minute = np.array(min(int(gap.tick + gap.lasts), ticks - 1) // TICKS_PER_MIN)
@@ -249,12 +291,16 @@ class Search:
         width = max(gap.until - gap.tick, 4)
         spread = (np.arange(MOMENTS) * (width / MOMENTS)).astype(np.int64)
         arrive = np.minimum(gap.tick + lag, ticks)
+        if windows is not None:
+            arrive = np.clip(windows[0], arrive, ticks)
         first = self._ready.take(rows + arrive)
         moments = np.minimum(first[:, None] + spread, ticks)
         worths = gap.left.take(moments - lag[:, None])
         worths += self._value.take(moments + rows[:, None])
         leave = moments + onward.astype(np.int64)[:, None]
         worths += gap.right.take(np.minimum(leave, ticks))
+        if windows is not None:
+            worths[moments > windows[1][:, None]] = NEVER
         best = worths.argmax(axis=1)
         at = np.arange(len(pool)) * MOMENTS + best
         return worths.take(at), moments.take(at), lag

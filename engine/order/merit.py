@@ -5,9 +5,14 @@
 
 Quality is the credit of `engine.light`: how much of the depth asked for a second there buys, from
 predicted image size, sky and extinction. Chance is how likely the images are to be within the
-target's own limit, as far as the seeing is known: 1 without a limit. Limits are limits: an exposure
-that breaks one at its start, middle or end is worth nothing. That the bonus is a tenth is common
-practice, no source.
+target's own limit, as far as the seeing is known: 1 without a limit.
+
+Limits are limits: an exposure that breaks one at its start, middle or end is worth nothing, nor is
+one of a repeat visit that doesn't keep its gaps. A standard that is wanted several times a night is
+bright, and wanted over a spread of airmass: its quality is 1, and a visit at an airmass that was
+sampled that night already counts half (`engine.order.repeats`).
+
+That the bonus is a tenth is common practice, no source.
 """
 
 from __future__ import annotations

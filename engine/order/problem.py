@@ -6,15 +6,18 @@ night. Minutes are counted from the grid's minute at or before now.
 
 from __future__ import annotations
 
+import math
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
 
 from engine.logbook import Target
-from engine.night import Night, Outlook, Plans
+from engine.night import Night, Outlook, Plans, TakenTonight, series_of
 from engine.order.merit import finished_worth
 from engine.order.order import Rules
+from engine.order.repeats import Repeats, repeats_of
 from engine.order.travel import Travel, travel_of
 from engine.times import MINUTES_PER_DAY
 
@@ -49,7 +52,8 @@ class Problem:
     ``worth`` (L, T): priority x quality of a second, 0 where it may not. ``of_target`` (N, K)
     holds each target's lines, -1 for none. ``bonus`` (N,): what finishing a plan earns, 0 where
     it can't be finished. ``pointing`` is N when nobody has said where the telescope points.
-    ``pins`` holds, by target, the minute at which its exposures are to begin.
+    ``pins`` holds, by target, the minute at which its exposures are to begin, ``repeats`` what is
+    left of those that are visited several times.
     """
 
     night: Night
@@ -69,6 +73,7 @@ class Problem:
     travel: Travel
     pointing: int
     pins: dict[int, float]
+    repeats: dict[int, Repeats]
 
     @property
     def targets(self) -> tuple[Target, ...]:
@@ -102,10 +107,12 @@ def build_problem(
     from_mjd: float,
     pointing: str | None,
     travel: Travel | None = None,
+    tonight: Sequence[TakenTonight] = (),
 ) -> Problem:
     """Return the rest of a night from a moment (UTC MJD) on, ready for the search.
 
     ``travel`` is the night's, if the caller keeps it: at 500 targets it is most of the work.
+    ``tonight`` are the night's exposures that are kept: they bind the next visits of a series.
     """
     if rules.first is not None and all(each.name != rules.first for each in night.targets):
         # A target that has left the list can't come first.
@@ -142,6 +149,7 @@ def build_problem(
             for index, target in enumerate(night.targets)
             if target.name in rules.pinned
         },
+        repeats=_repeats(night, plans, rules, of_target, first, tonight),
     )
 
 
@@ -199,7 +207,11 @@ def _worth(
     priorities = np.array([each.priority for each in night.targets], dtype=np.float32)
     until = first + allowed.shape[1]
     at = (filters, targets, slice(first, until))
-    worth = outlook.quality[at] * outlook.chance[at] * priorities[targets][:, None]
+    quality = outlook.quality[at]
+    spread = [each.role == "standard" and each.visits > 1 for each in night.targets]
+    # A standard is bright, and wanted low as well as high.
+    quality[np.array(spread, dtype=bool)[targets]] = 1.0
+    worth = quality * outlook.chance[at] * priorities[targets][:, None]
     return np.where(allowed, worth, np.float32(0.0))
 
 
@@ -244,5 +256,41 @@ def _bonuses(night: Night, plans: Plans, of_target: Counts, allowed: Mask) -> Fl
         asked = sum(1 for line in plans[target.name] if line.remaining)
         if len(own) and len(own) == asked and possible[own].all():
             planned_s = sum(each.seconds * each.count for each in target.exposures)
-            bonus[index] = finished_worth(target.priority, planned_s)
+            bonus[index] = finished_worth(target.priority, planned_s * target.visits)
     return bonus
+
+
+def _repeats(
+    night: Night,
+    plans: Plans,
+    rules: Rules,
+    of_target: Counts,
+    first: int,
+    tonight: Sequence[TakenTonight],
+) -> dict[int, Repeats]:
+    """Return what is left of every target that is visited several times."""
+    wheel, readout_s = night.observatory, night.observatory.camera.readout_s
+    found: dict[int, Repeats] = {}
+    for index, target in enumerate(night.targets):
+        series = series_of(target, plans[target.name], tonight)
+        if series is None or (own := of_target[index])[0] < 0:
+            continue
+        rest = iter([int(place) for place in own if place >= 0])
+        wanted = tuple(
+            next(rest) if each.remaining and each.filter not in rules.forbidden_filters else None
+            for each in plans[target.name]
+        )
+        last_mjd = series.last_start_mjd
+        begins_min = (
+            -math.inf
+            if last_mjd is None
+            else (last_mjd - float(night.mjd[first])) * MINUTES_PER_DAY
+        )
+        # The whole night's range: which parts of it are sampled must not change with the hour.
+        places = [wheel.filter_index(each.filter) for each in target.exposures]
+        may = (night.limits[index] == 0) & night.dark[places].all(axis=0)
+        each_min = tuple((each.seconds + readout_s) / 60.0 for each in target.exposures)
+        found[index] = repeats_of(
+            series, target, wanted, each_min, begins_min, night.airmass[index, may]
+        )
+    return found

@@ -9,6 +9,8 @@ without going through the order again. In symbols, for blocks 0 to P-1 in turn w
 
 Tables are made when they are asked for. A sequence made from another by a change in the middle
 takes over those on either side, so a search that moves along the order makes one or two a step.
+
+Tables know nothing of what binds visits of one series to each other: only timing a sequence does.
 """
 
 from __future__ import annotations
@@ -18,8 +20,9 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from engine.order.blocks import NEVER, TICKS_PER_MIN, Blocks
+from engine.order.blocks import FAR_BACK, NEVER, TICKS_PER_MIN, Blocks
 from engine.order.construct import Start, Turn
+from engine.order.repeats import SAMPLED_SHARE
 from engine.order.travel import Travel
 
 Singles = NDArray[np.float32]
@@ -177,11 +180,20 @@ class Sequence:
         kept, ticks, worth, held = list[int](), list[int](), 0.0, 0
         here, leaves = self._start.here, float(self._start.tick)
         night, places = self._blocks.ticks, len(self.order)
+        blocks, last = self._blocks, dict(self._blocks.last)
+        sampled = {target: set(parts) for target, parts in blocks.sampled.items()}
         for place, block in enumerate(self.order):
             at = int(leaves + self.way(here, block, round(leaves)) + CARRY)
             if at >= night:
                 break
-            ahead = self._chosen[places - 1 - place][at:]
+            until, series = night + 1, int(blocks.series[block])
+            if series >= 0 and last[series] > FAR_BACK:
+                # A visit of a series stands off from the one before, but not too far.
+                at = max(at, last[series] + int(blocks.least[block]))
+                until = min(until, last[series] + int(blocks.greatest[block]) + 1)
+                if at >= min(until, night):
+                    continue
+            ahead = self._chosen[places - 1 - place][at:until]
             best = int(ahead.argmax())
             if place < len(self._start.first) and block == self._start.first[place]:
                 # Wanted first: as soon as it may be, whatever else that costs.
@@ -193,7 +205,9 @@ class Sequence:
                 continue
             kept.append(block)
             ticks.append(at + best)
-            worth += float(self._blocks.value[block, at + best])
+            if series >= 0:
+                last[series] = at + best
+            worth += self._worth_of(block, at + best, sampled)
             here = int(self._blocks.target[block])
             leaves = at + best + float(self._blocks.minutes[block]) * TICKS_PER_MIN
         if len(kept) < places:
@@ -202,6 +216,22 @@ class Sequence:
         # Worth is without what finishing plans of several blocks earns, value with it.
         self.worth = worth
         self.value = worth + self._blocks.finishing(kept)
+
+    def _worth_of(self, block: int, tick: int, sampled: dict[int, set[int]]) -> float:
+        """Return what a block is worth at a tick.
+
+        Which visit of a standard is which does not matter: the first in each part of its airmass
+        counts in full, whatever the tables say of the one that happens to stand there.
+        """
+        blocks = self._blocks
+        value, target = float(blocks.value[block, tick]), int(blocks.target[block])
+        if target not in sampled:
+            return value
+        part = int(blocks.parts_at[target][tick])
+        told = 1.0 if part == blocks.own_part[block] else SAMPLED_SHARE
+        counts = SAMPLED_SHARE if part in sampled[target] else 1.0
+        sampled[target].add(part)
+        return value * counts / told
 
     # Lags: ticks from the begin of one block to the begin of the next
 

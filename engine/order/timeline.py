@@ -18,6 +18,7 @@ from engine.order.merit import exposure_worth
 from engine.order.order import Order, PlacedExposures
 from engine.order.pins import pin_worths
 from engine.order.problem import Problem
+from engine.order.repeats import SAMPLED_SHARE, Repeats
 from engine.order.sequence import Timed
 from engine.times import MINUTES_PER_DAY
 
@@ -134,6 +135,30 @@ class Timeline:
                 return (line, count) if count > 0 else None
         return None
 
+    def _may_begin(self, stay: Stay, parts: Sequence[tuple[int, int]]) -> bool:
+        """Say whether a stay is a whole visit of its series and stands off from the one before."""
+        repeats = self.problem.repeats.get(stay.target)
+        if repeats is None or self._goes_on(repeats, parts):
+            return True
+        whole = [(run.line, run.count) for run in stay.runs] == list(parts)
+        last_min = self._last_begin_min(stay.target)
+        return whole and repeats.may_begin(stay.runs[0].begin_min, last_min)
+
+    def _goes_on(self, repeats: Repeats, parts: Sequence[tuple[int, int]]) -> bool:
+        """Say whether parts are what is left of a visit that was begun before now."""
+        whole = max(sum(count for _, count in visit) for visit in repeats.visits)
+        return repeats.begun and sum(count for _, count in parts) < whole
+
+    def _last_begin_min(self, target: int) -> float:
+        repeats = self.problem.repeats[target]
+        begins = [
+            stay.runs[0].begin_min
+            for stay in self.stays
+            if stay.target == target
+            and not self._goes_on(repeats, [(run.line, run.count) for run in stay.runs])
+        ]
+        return max([repeats.last_min, *begins])
+
     def _append(
         self,
         target: int,
@@ -148,6 +173,10 @@ class Timeline:
         arrive_min = leave_min + problem.travel.exact_min(here, leave_min, target, leave_min)
         if wanted_min > arrive_min + put_off_min:
             arrive_min = wanted_min
+        repeats = problem.repeats.get(target)
+        if repeats is not None and not self._goes_on(repeats, parts):
+            first_min = self._last_begin_min(target) + repeats.least_min
+            arrive_min = max(arrive_min, first_min - problem.lines[parts[0][0]].change_min)
         stay = Stay(target, leave_min, arrive_min)
         for line, count in parts:
             run = self._run(here, leave_min, line, count, stay.end_min)
@@ -155,7 +184,7 @@ class Timeline:
                 stay.runs.append(run)
                 stay.end_min = run.begin_min + run.count * problem.lines[line].each_min
                 here, leave_min = target, stay.end_min
-        if stay.runs and self._long_enough(stay):
+        if stay.runs and self._long_enough(stay) and self._may_begin(stay, parts):
             self._take(stay)
             self._join(len(self.stays), stay)
 
@@ -261,7 +290,9 @@ class Timeline:
         if end_min - begin_min < GAP_MIN:
             return None
         here = before.target if before else problem.pointing
-        left = np.flatnonzero((self.left > 0) & self._usable(begin_min, end_min))
+        left = np.flatnonzero(
+            (self.left > 0) & ~self._tables.repeated & self._usable(begin_min, end_min)
+        )
         if not left.size:
             return None
         tables = self._tables.only(left)
@@ -357,11 +388,29 @@ class Timeline:
             if target in begins
         )
 
+    def _sample(self, stay: Stay, sampled: dict[int, set[int]]) -> float:
+        """Return what share a visit counts: all but for a standard at an airmass sampled before."""
+        problem = self.problem
+        repeats = problem.repeats.get(stay.target)
+        if repeats is None or repeats.spread is None:
+            return 1.0
+        at = problem.first + int(stay.runs[0].begin_min)
+        part = int(repeats.spread.part(problem.night.airmass[stay.target, at : at + 1])[0])
+        is_new = part not in sampled[stay.target]
+        sampled[stay.target].add(part)
+        return 1.0 if is_new else SAMPLED_SHARE
+
     def value(self) -> float:
         """Return what the stays are worth by the documented merit, exposure by exposure."""
         problem = self.problem
         total = 0.0
+        sampled = {
+            target: set(each.spread.sampled)
+            for target, each in problem.repeats.items()
+            if each.spread is not None
+        }
         for stay in self.stays:
+            share = self._sample(stay, sampled)
             for run in stay.runs:
                 line = problem.lines[run.line]
                 middles = (
@@ -369,7 +418,7 @@ class Timeline:
                 )
                 # `worth` holds priority x quality already.
                 quality = problem.worth[run.line, middles.astype(np.int64)].astype(float)
-                total += float(exposure_worth(1, line.seconds, 1.0) * quality.sum())
+                total += float(exposure_worth(1, line.seconds, share) * quality.sum())
         for target, bonus in enumerate(problem.bonus):
             own = problem.lines_of(target)
             if bonus > 0.0 and not self.left[own].any():
@@ -401,6 +450,7 @@ class _LineTables:
     change: Floats
     each: Floats
     seconds: Floats
+    repeated: NDArray[np.bool_]
 
     @classmethod
     def of(cls, problem: Problem) -> _LineTables:
@@ -410,10 +460,15 @@ class _LineTables:
             np.array([line.change_min for line in lines]),
             np.array([line.each_min for line in lines]),
             np.array([line.seconds for line in lines]),
+            np.array([line.target in problem.repeats for line in lines], dtype=bool),
         )
 
     def only(self, rows: NDArray[np.int64]) -> _LineTables:
         """Return some of the lines."""
         return _LineTables(
-            self.target[rows], self.change[rows], self.each[rows], self.seconds[rows]
+            self.target[rows],
+            self.change[rows],
+            self.each[rows],
+            self.seconds[rows],
+            self.repeated[rows],
         )

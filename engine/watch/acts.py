@@ -5,6 +5,8 @@ An act that makes no sense at this stage raises `NotNow` and does nothing.
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 from engine.errors import NotNow
 from engine.log import (
     Amendment,
@@ -21,7 +23,7 @@ from engine.log import (
     title,
 )
 from engine.logbook import Target
-from engine.night import Progress
+from engine.night import Progress, series_of
 from engine.times import MINUTES_PER_DAY, SECONDS_PER_DAY
 from engine.watch.listing import added_event
 from engine.watch.record import Ending, credit_measured
@@ -71,7 +73,7 @@ def lines_now(watch: Watch) -> tuple[Progress, ...]:
     pointing = watch.state.pointing
     if pointing is None or watch.plan is None:
         return ()
-    left = tuple(line for line in watch.plans().get(pointing.target, ()) if line.remaining)
+    left = tuple(line for line in this_visit(watch, pointing.target) if line.remaining)
     if not left:
         return ()
     now_mjd = watch.clock.now_mjd()
@@ -88,6 +90,19 @@ def lines_now(watch: Watch) -> tuple[Progress, ...]:
         if night.dark[place, at] and not outlook.soft[place, index, at]
     )
     return open_now or left
+
+
+def this_visit(watch: Watch, name: str) -> tuple[Progress, ...]:
+    """Return a target's plan for one visit: of one visited several times, only the next."""
+    plan = watch.plans().get(name, ())
+    target = next((each for each in watch.planner.night.targets if each.name == name), None)
+    series = series_of(target, plan, watch.state.kept) if target is not None else None
+    if series is None or not series.visits:
+        return plan
+    return tuple(
+        replace(line, planned=line.done + count)
+        for line, count in zip(plan, series.visits[0], strict=True)
+    )
 
 
 def start_run(watch: Watch, lines: tuple[Progress, ...]) -> Event:

@@ -92,7 +92,7 @@ class Planner:
 
     def plans(self, state: NightState) -> Plans:
         """Return every target's plan with past nights and this one counted in."""
-        return plans(self.night.targets, (*self._done_before, *state.kept))
+        return plans(self.night.targets, state.kept, self._done_before)
 
     def forecast(self, state: NightState, now_mjd: float) -> SeeingForecast:
         """Return the seeing now and its forecast, from everything measured this night."""
@@ -166,6 +166,7 @@ class Planner:
             # A target that has left the list since is nowhere in particular.
             pointing=sent_to if sent_to in known else None,
             travel=self._travel,
+            tonight=state.kept,
         )
 
 

@@ -55,7 +55,7 @@ def snapshot(logbook: Logbook, mjd: float | None, seeing_arcsec: float | None) -
             seeing_arcsec = forecast_of(state, mjd, seeing_arcsec).now_arcsec
             source = "from the night's log"
     outlook = Outlooks(night, model).given(np.array([seeing_arcsec]))
-    progress = plans(logbook.targets, (*done_for(logbook, date_, ()), *state.kept))
+    progress = plans(logbook.targets, state.kept, done_for(logbook, date_, ()))
     seen = targets_at(night, outlook, mjd, progress, decided(rules_from(state, mjd)))
     return Snapshot(mjd, night, model, seeing_arcsec, source, seen)
 

@@ -41,6 +41,7 @@ def faults(order: Order, night: Night, outlook: Outlook, plans: Plans, rules: Ru
     prepare_astropy()
     return [
         *_counts(order, plans, rules),
+        *_repeats(order, night),
         *_overlaps(order, night),
         *_breaks(order, night),
         *_limits(order, night, rules),
@@ -80,6 +81,25 @@ def _runs(order: Order, observatory: Observatory) -> list[tuple[Visit, str, floa
         for visit in order.visits
         for r in visit.exposures
     ]
+
+
+def _repeats(order: Order, night: Night) -> list[str]:
+    """Return visits of a series that are not whole, or too near or too far from the one before."""
+    found = []
+    for target in night.targets:
+        if target.visits == 1:
+            continue
+        whole = sum(each.count for each in target.exposures)
+        own = [visit for visit in order.visits if visit.target == target.name]
+        counts = [sum(run.count for run in visit.exposures) for visit in own]
+        found += [f"{target.name}: {n} exposures of {whole}" for n in counts if n != whole]
+        for one, other in pairwise(own):
+            gap = (other.exposures[0].start_mjd - one.exposures[0].start_mjd) * 1440.0
+            if gap < (target.least_gap_min or 0.0) - 0.02:
+                found.append(f"{target.name}: visits {gap:.1f} min apart, too near")
+            if target.greatest_gap_min and gap > target.greatest_gap_min + 0.02:
+                found.append(f"{target.name}: visits {gap:.1f} min apart, too far")
+    return found
 
 
 def _overlaps(order: Order, night: Night) -> list[str]:

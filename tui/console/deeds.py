@@ -160,7 +160,7 @@ class Deeds:
         """Start a run in one filter of the plan."""
         watch = self._watch
         pointing = watch.state.pointing
-        plan = watch.plans().get(pointing.target, ()) if pointing else ()
+        plan = acts.this_visit(watch, pointing.target) if pointing else ()
         left = [line for line in plan if line.remaining]
         if watch.stage is not Stage.READY or not left:
             raise NotNow("the telescope is not on a target with something left of its plan")
