@@ -28,6 +28,8 @@ LONGEST_HEAD = 20_000
 
 _FIELDS = {field_key(name, each): each for name, each in Target.model_fields.items()}
 _TEXT_KEYS = frozenset({"name", "programme", "role"})
+_WHOLE_KEYS = frozenset({"priority", "visits"})
+_YES_OR_NO = frozenset({"each_night"})
 _WHOLE = re.compile(r"[+-]?[0-9]{1,18}\Z")
 _ASTROPY_PLACE = re.compile(r"[^\s:]*:([0-9]+):[0-9]+: (?:[WE][0-9]+: )?")
 _DELIMITER = re.compile(r"^# delimiter: '?(,|\s)", re.MULTILINE)
@@ -174,17 +176,26 @@ def _value(key: str, cell: Any, factor: float) -> Any:
     if key in _TEXT_KEYS:
         return str(cell).strip() or None if cell is not None else None
     if isinstance(cell, str):
-        return _from_text(key, cell.strip())
+        return _as_wanted(key, _from_text(key, cell.strip()))
     if isinstance(cell, float | int) and not isinstance(cell, bool) and factor != 1.0:
         cell = cell * factor
-    if isinstance(cell, float) and key == "priority" and cell.is_integer():
-        return int(cell)
-    return cell
+    return _as_wanted(key, cell)
+
+
+def _as_wanted(key: str, value: Any) -> Any:
+    """Return a number as TOML would give it where a table's column had to make it another."""
+    if key in _YES_OR_NO and value in (0, 1):
+        return bool(value)
+    if isinstance(value, float) and key in _WHOLE_KEYS and value.is_integer():
+        return int(value)
+    return value
 
 
 def _from_text(key: str, cell: str) -> Any:
     if not cell:
         return None
+    if key in _YES_OR_NO and cell.casefold() in ("true", "false"):
+        return cell.casefold() == "true"
     if key == "exposures":
         return [_exposures(part) for part in cell.split()]
     if key == "windows":

@@ -172,7 +172,8 @@ def _carried_on(
     if lost_share < BROKEN_SHARE and _begins_as_wanted(kept) and not afresh:
         return kept
     fresh = _afresh(problem, blocks, effort, seed)
-    return fresh if _is_better(fresh, kept, KEEPING_BONUS) else kept
+    # Who has just decided something expects the order to change.
+    return fresh if _is_better(fresh, kept, CLEAR_GAIN if afresh else KEEPING_BONUS) else kept
 
 
 def _is_better(one: Timeline, other: Timeline, by_share: float) -> bool:

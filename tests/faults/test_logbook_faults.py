@@ -275,7 +275,7 @@ IN_TARGETS = {
         "ra = 103.02",
         "ra_deg = 103.02",
         "18: target['SA 98'].ra: is missing, expected " + RA + " (right ascension, ICRS)",
-        "20: target['SA 98'].ra_deg: unknown key, expected one of the 16 known ones, "
+        "20: target['SA 98'].ra_deg: unknown key, expected one of the 20 known ones, "
         "nearest is 'ra'",
     ),
     "an unknown list": (
@@ -398,7 +398,7 @@ TABLES = {
     "unknown and missing columns": (
         "name,ra_deg,dec,exposures\nA,1,2,V:1x1\nB,1,200,V:1x1\n",
         "1: ra: no such column, expected one (right ascension, ICRS)",
-        "1: ra_deg: unknown key, expected one of the 16 known ones, nearest is 'ra'",
+        "1: ra_deg: unknown key, expected one of the 20 known ones, nearest is 'ra'",
         f"3: target['B'].dec: 200, expected {DEC}",
     ),
     "cells": (
