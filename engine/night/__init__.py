@@ -8,8 +8,8 @@ from engine.night.moment import FilterNow, TargetNow, targets_at
 from engine.night.outlook import Outlook, Outlooks
 from engine.night.progress import Plans, Progress, Taken, is_finished, plans
 from engine.night.reasons import REASONS, Reason, bit_of, reason_coded, reasons_in
-from engine.night.stretches import Stretch, runs, stretches
 from engine.night.series import Series, TakenTonight, series_of
+from engine.night.stretches import Stretch, runs, stretches
 from engine.night.tables import Night, open_night, tables
 
 __all__ = [
@@ -33,8 +33,8 @@ __all__ = [
     "reason_coded",
     "reasons_in",
     "runs",
-    "stretches",
     "series_of",
+    "stretches",
     "tables",
     "targets_at",
 ]
