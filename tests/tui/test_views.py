@@ -2,13 +2,14 @@
 
 from __future__ import annotations
 
+from dataclasses import fields
 from pathlib import Path
 
 import numpy as np
 import pytest
 
 from tests.tui.trial import Trial, a_logbook, play
-from tui.console.panels.local import hhmm
+from tui.console.panels.local import hhmm, whole_hours
 from tui.console.views import NIGHT, VIEWS
 from tui.console.views.classes import CLASSES
 
@@ -157,3 +158,76 @@ def test_conditions_give_image_and_sky_of_each_filter(folder: Path) -> None:
             assert f"{sky:.1f}" in row
 
     play(folder, story)
+
+
+@pytest.mark.parametrize("size", SIZES)
+def test_the_image_view_takes_apart_what_the_model_gives(
+    folder: Path, size: tuple[int, int]
+) -> None:
+    """Each term of each filter stands in figures, and the blur to blame is pointed at."""
+
+    async def story(trial: Trial) -> None:
+        await trial.press("4")
+        trial.console.choose("Sharp One")
+        await trial.wait(1.0)
+        watch = trial.watch
+        now = next(each for each in watch.targets_now() if each.target.name == "Sharp One")
+        assert watch.plan is not None
+        at = watch.planner.night.index_at(trial.clock.now_mjd())
+        seeing = float(watch.plan.outlook.seeing_arcsec[at])
+        lines = trial.text("view").splitlines()
+        assert "diffraction" in lines[2]
+        for row, each in zip(lines[3:], now.filters, strict=False):
+            image = watch.planner.model.breakdown(
+                each.filter_index, round(seeing, 2), round(now.airmass, 2)
+            )
+            assert row.startswith(f" {each.progress.filter}")
+            assert f"{image.size_arcsec:.2f}" in row
+            for field in fields(image.terms):
+                value = f"{getattr(image.terms, field.name):.2f}"
+                assert (f"▸{value}" if field.name == image.blame else f" {value}") in row
+        hours = next(each for each in lines if each.startswith(" at"))
+        moments = whole_hours(watch, (size[0] - 3) // 6, least_min=30.0)
+        assert hours.split()[1:] == [hhmm(watch, mjd) for mjd in moments]
+
+    play(folder, story, size=size)
+
+
+@pytest.mark.parametrize("size", SIZES)
+def test_the_image_view_says_what_is_soft_and_when(folder: Path, size: tuple[int, int]) -> None:
+    """In bad seeing the target with a limit is soft now; tab gives the bands all the place."""
+
+    async def story(trial: Trial) -> None:
+        await trial.press("4", "tab")
+        assert "one target" in trial.text("foot")
+        text = trial.text("view")
+        plan, night = trial.watch.plan, trial.watch.planner.night
+        assert plan is not None
+        index = night.target_index("Sharp Two")
+        place = night.observatory.filter_index("V")
+        later = np.arange(night.last + 1) >= night.index_at(trial.clock.now_mjd())
+        soft = plan.outlook.soft[place, index] & (night.limits[index] == 0) & later
+        first = hhmm(trial.watch, float(night.mjd[int(np.argmax(soft))]))
+        assert f"soft {first}" in band_of(text, "Sharp Two")
+        assert "─" in band_of(text, "Sharp One")
+        await trial.press("z")
+        await trial.type("4.5")
+        trial.console.choose("Sharp Two")
+        await trial.wait(1.0)
+        row = band_of(trial.text("view"), "Sharp Two")
+        assert "█" in row
+        assert "soft now" in row
+        assert ("atmosphere" in row) == (size[0] >= 120)
+        await trial.press("tab")
+        lines = trial.text("view").splitlines()
+        assert 'limit 2.4"' in lines[1]
+        assert any(f" {each.filter}!" in lines[3] for each in trial.watch.plans()["Sharp Two"])
+
+    play(folder, story, size=size)
+
+
+def band_of(text: str, name: str) -> str:
+    """Return the line of one target among the bands."""
+    lines = text.splitlines()
+    first = next(place for place, each in enumerate(lines) if "soft, and when" in each)
+    return next(each for each in lines[first:] if name in each)

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping
+from collections.abc import Iterable, Mapping, Sequence
 
 from tui.console.actions import action_named, cap, footer_actions
 from tui.console.views import VIEWS
@@ -13,7 +13,7 @@ Keys = list[tuple[str, str]]
 BEFORE_VIEWS = 2
 
 
-def foot_keys(labels: Mapping[str, str] | None = None, own: Iterable[tuple[str, str]] = ()) -> Keys:
+def foot_keys(labels: Mapping[str, str] | None = None, own: Sequence[tuple[str, str]] = ()) -> Keys:
     """Return the foot's keys and words, the most needed first.
 
     ``labels`` holds other words for actions by name, ``own`` the keys of the view that is shown.
@@ -22,7 +22,10 @@ def foot_keys(labels: Mapping[str, str] | None = None, own: Iterable[tuple[str, 
     keys = [(cap(a.keys[0]), said.get(a.name, a.label)) for a in footer_actions()]
     of_views = [cap(action_named(each.action).keys[0]) for each in VIEWS]
     views = [(f"{of_views[0]}-{of_views[-1]}", "views")] if len(of_views) > 1 else []
-    return [*keys[:BEFORE_VIEWS], *views, *own, *keys[BEFORE_VIEWS:]]
+    # A view may have given a key of the table another meaning while it is shown.
+    taken = {key for key, _ in own}
+    rest = [(key, word) for key, word in keys[BEFORE_VIEWS:] if key not in taken]
+    return [*keys[:BEFORE_VIEWS], *views, *own, *rest]
 
 
 def foot_line(keys: Iterable[tuple[str, str]], width: int) -> Line:

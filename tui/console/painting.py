@@ -89,7 +89,9 @@ class Painting:
         """Show a view below a line that names it and all others."""
         sheet = self._console.sheet("view")
         width, height = sheet.size
-        sheet.show([views_line(self._console.view, width), *view.paint(width, height - 1)])
+        # It has no size until it has been laid out; then it is painted again.
+        if height > 1:
+            sheet.show([views_line(self._console.view, width), *view.paint(width, height - 1)])
 
     def _paint_panels(self) -> None:
         self._arrange()

@@ -7,7 +7,7 @@ from datetime import datetime
 from zoneinfo import ZoneInfo
 
 from engine.order import Visit
-from engine.times import datetime_from_mjd
+from engine.times import MINUTES_PER_DAY, datetime_from_mjd
 from engine.watch import Watch
 
 
@@ -25,6 +25,24 @@ def ahead(watch: Watch) -> tuple[Visit, ...]:
 def hhmm(watch: Watch, mjd: float) -> str:
     """Return a moment as local hours and minutes, to the nearest minute."""
     return f"{local(watch, mjd + 0.5 / 1440.0):%H:%M}"
+
+
+def whole_hours(watch: Watch, room: int, least_min: float = 60.0) -> list[float]:
+    """Return round local times of the night from now on (UTC MJD), at most so many.
+
+    They are ``least_min`` minutes apart, or as many hours as it takes to have room.
+    """
+    night, now_mjd = watch.planner.night, watch.clock.now_mjd()
+    moment = local(watch, now_mjd)
+    gone_min = moment.minute + moment.second / 60.0
+    for step_min in (least_min, *(60.0 * hours for hours in range(1, 25))):
+        first_mjd = now_mjd + (step_min - gone_min % min(step_min, 60.0)) / MINUTES_PER_DAY
+        if step_min > 60.0:
+            first_mjd = now_mjd + (60.0 - gone_min) / MINUTES_PER_DAY
+        count = max(int((night.mjd[-1] - first_mjd) * MINUTES_PER_DAY / step_min) + 1, 0)
+        if count <= max(room, 1):
+            return [first_mjd + place * step_min / MINUTES_PER_DAY for place in range(count)]
+    return []
 
 
 def arcsec(value: float) -> str:

@@ -36,6 +36,7 @@ VIEWS: tuple[ViewEntry, ...] = (
         "conditions",
         "Show seeing, weather and sky: measured, foretold, how old.",
     ),
+    ViewEntry("image", "4", "image", "Show image sizes: which blur, what will be soft, and when."),
     ViewEntry(
         "past", "7", "past", "Show past nights: each again, a target's history, the site's seeing."
     ),

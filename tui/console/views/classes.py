@@ -4,11 +4,13 @@ from __future__ import annotations
 
 from tui.console.views.base import View
 from tui.console.views.conditions import Conditions
+from tui.console.views.image import Image
 from tui.console.views.past import Past
 from tui.console.views.sky import Sky
 
 CLASSES: dict[str, type[View]] = {
     "sky": Sky,
     "conditions": Conditions,
+    "image": Image,
     "past": Past,
 }

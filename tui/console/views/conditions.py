@@ -14,10 +14,10 @@ from engine.log import NightState
 from engine.logbook import Caution
 from engine.night import TargetNow
 from engine.seeing import SeeingMeasurement, summary
-from engine.times import HOURS_PER_DAY, MINUTES_PER_DAY
+from engine.times import MINUTES_PER_DAY
 from engine.watch import Watch
 from tui.console.panels.graphs import night_axis, picks, share_of
-from tui.console.panels.local import ago, local
+from tui.console.panels.local import ago, local, whole_hours
 from tui.console.views.base import View
 from tui.paint.canvas import joined
 from tui.paint.figures import bar
@@ -240,7 +240,7 @@ def _filters(watch: Watch, chosen: TargetNow | None, width: int) -> list[Line]:
     is_up = math.isfinite(chosen.airmass)
     seeing = np.array([float(value) for value in watch.plan.forecast.at(now_mjd)])
     sizes = watch.planner.model.sizes_arcsec(seeing, chosen.airmass if is_up else 1.0)
-    hours = _hours_ahead(watch, (width - 23) // HOUR_WIDTH)
+    hours = whole_hours(watch, (width - 23) // HOUR_WIDTH)
     at_now = night.index_at(now_mjd)
     where = f"airmass {chosen.airmass:.2f}" if is_up else "down; image at the zenith"
     lines = [
@@ -268,13 +268,3 @@ def _filters(watch: Watch, chosen: TargetNow | None, width: int) -> list[Line]:
 
 def _magnitude(value: float) -> str:
     return (f"{value:.1f}" if math.isfinite(value) else "-").rjust(HOUR_WIDTH)
-
-
-def _hours_ahead(watch: Watch, room: int) -> list[float]:
-    """Return so many whole local hours of the night from now on (UTC MJD), evenly thinned."""
-    night, now_mjd = watch.planner.night, watch.clock.now_mjd()
-    moment = local(watch, now_mjd)
-    first = now_mjd + (60.0 - moment.minute - moment.second / 60.0) / MINUTES_PER_DAY
-    count = max(int((night.mjd[-1] - first) * HOURS_PER_DAY) + 1, 0)
-    every = max(math.ceil(count / max(room, 1)), 1)
-    return [first + hour / HOURS_PER_DAY for hour in range(0, count, every)]
