@@ -106,6 +106,11 @@ PAST_COLUMNS = ", ".join(
 _OF_ITS_NIGHT = "exposure e JOIN night ON night.id = e.night"
 
 
+def limit(most: int | None) -> int:
+    """Return how many rows SQLite is to give at most; it takes a negative number for all."""
+    return -1 if most is None else most
+
+
 def history(index: PastIndex, target: str, period: Period = ALWAYS) -> tuple[PastExposure, ...]:
     """Return every exposure of a target, whatever became of it, the oldest first."""
     rows = index.ask(
@@ -125,24 +130,26 @@ class Refused:
     count: int
 
 
-def refused(index: PastIndex) -> tuple[Refused, ...]:
+def refused(index: PastIndex, period: Period = ALWAYS) -> tuple[Refused, ...]:
     """Return how many exposures do not count, and why, the most frequent first."""
     rows = index.ask(
         "SELECT outcome, CASE WHEN judged <> '' THEN judged ELSE why END AS reason, count(*) "
-        "FROM exposure WHERE outcome <> 'good' GROUP BY outcome, reason ORDER BY 3 DESC, 1, 2"
+        f"FROM {_OF_ITS_NIGHT} WHERE outcome <> 'good' AND night.name >= ? AND night.name <= ? "
+        "GROUP BY outcome, reason ORDER BY 3 DESC, 1, 2",
+        period.limits,
     )
     return tuple(Refused(*row) for row in rows)
 
 
 def frames_refused(
-    index: PastIndex, period: Period = ALWAYS, most: int = 200
+    index: PastIndex, period: Period = ALWAYS, most: int | None = None
 ) -> tuple[PastExposure, ...]:
-    """Return the newest exposures that do not count, at most so many, the newest first."""
+    """Return the exposures that do not count, the newest first; at most so many if any most."""
     rows = index.ask(
         f"SELECT {PAST_COLUMNS} FROM night CROSS JOIN exposure e "
         "ON e.night = night.id AND e.outcome <> 'good' "
         "WHERE night.name >= ? AND night.name <= ? "
         "ORDER BY night.name DESC, e.place DESC LIMIT ?",
-        (*period.limits, most),
+        (*period.limits, limit(most)),
     )
     return tuple(PastExposure(*row) for row in rows)

@@ -6,10 +6,11 @@ import re
 from dataclasses import dataclass
 
 from engine.past.digest import QUANTITIES, as_json
-from engine.past.exposures import PAST_COLUMNS, PastExposure
+from engine.past.exposures import PAST_COLUMNS, PastExposure, limit
 from engine.past.index import PastIndex
 from engine.past.nights import ALWAYS, Period
 
+# As many as a screen is searched for; None for all there are.
 MOST = 200
 NIGHTS_AT_ONCE = 16
 # What a condition may be called, beside the log's own key.
@@ -74,7 +75,11 @@ class FoundWords:
 
 
 def find_words(
-    index: PastIndex, text: str, period: Period = ALWAYS, target: str = "", most: int = MOST
+    index: PastIndex,
+    text: str,
+    period: Period = ALWAYS,
+    target: str = "",
+    most: int | None = MOST,
 ) -> tuple[FoundWords, ...]:
     """Return what was written with all words of a text in it, the newest first, at most so many.
 
@@ -87,7 +92,7 @@ def find_words(
         f"AND night.name >= ? AND night.name <= ? {about}"
         "ORDER BY night.name DESC, words.n DESC LIMIT ?"
     )
-    tail = (*period.limits, *params, most)
+    tail = (*period.limits, *params, limit(most))
     query = _full_text_query(text)
     if index.has_full_text and query:
         rows = index.ask(
@@ -114,7 +119,9 @@ def _like(text: str) -> str:
     return "%" + re.sub(r"([\\%_])", r"\\\1", text) + "%"
 
 
-def find_exposures(index: PastIndex, wanted: Wanted, most: int = MOST) -> tuple[PastExposure, ...]:
+def find_exposures(
+    index: PastIndex, wanted: Wanted, most: int | None = MOST
+) -> tuple[PastExposure, ...]:
     """Return the exposures that are wanted, the newest first, at most so many.
 
     For one target by its own list; else night by night, only those whose filters and extremes allow
@@ -136,7 +143,7 @@ def find_exposures(index: PastIndex, wanted: Wanted, most: int = MOST) -> tuple[
             f"SELECT {PAST_COLUMNS} FROM exposure e INDEXED BY exposure_of_target "
             "JOIN night ON night.id = e.night AND night.name >= ? AND night.name <= ? "
             f"WHERE {such} {newest}",
-            (*wanted.period.limits, *params, most),
+            (*wanted.period.limits, *params, limit(most)),
         )
         return tuple(PastExposure(*row) for row in rows)
     found: list[PastExposure] = []
@@ -147,10 +154,10 @@ def find_exposures(index: PastIndex, wanted: Wanted, most: int = MOST) -> tuple[
             f"SELECT {PAST_COLUMNS} FROM night CROSS JOIN exposure e "
             "INDEXED BY exposure_of_night ON e.night = night.id "
             f"WHERE night.id IN ({', '.join('?' * len(some))}) AND {such} {newest}",
-            (*some, *params, most - len(found)),
+            (*some, *params, limit(None if most is None else most - len(found))),
         )
         found += [PastExposure(*row) for row in rows]
-        if len(found) >= most:
+        if most is not None and len(found) >= most:
             break
     return tuple(found)
 

@@ -113,3 +113,24 @@ def test_exit_status(
     assert main(["past", "--logbook", str(folder), *words]) == status
     assert main(["past", "--logbook", str(folder / "nowhere")]) == 2
     capsys.readouterr()
+
+
+def test_what_is_found_is_all_there_is(folder: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    """However many: who counts them for a paper gets no round number."""
+    exposures = [each for state in folded(folder).values() for each in state.exposures]
+    high = [each for each in exposures if each.airmass_mid is not None and each.airmass_mid < 2.0]
+    assert len(high) > 200
+    _, told = run_json(capsys, "--logbook", str(folder), "--where", "airmass<2")
+    assert len(told["found"]) == len(high)
+
+
+def test_what_was_refused_is_of_the_period_asked_for(
+    folder: Path, capsys: pytest.CaptureFixture[str]
+) -> None:
+    """The reasons and the frames are of the same nights."""
+    _, whole = run_json(capsys, "--logbook", str(folder), "--refused")
+    words = ("--refused", "--until", "2027-03-10")
+    _, told = run_json(capsys, "--logbook", str(folder), *words)
+    counted = [sum(each["count"] for each in page["refused"]) for page in (told, whole)]
+    assert counted == [len(page["newest"]) for page in (told, whole)]
+    assert 0 < counted[0] < counted[1]

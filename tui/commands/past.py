@@ -43,7 +43,7 @@ def _page(index: PastIndex, arguments: argparse.Namespace) -> int:
     """Print the page that the options ask for."""
     period = Period(arguments.since, arguments.until)
     if arguments.find is not None:
-        words = find_words(index, arguments.find, period, arguments.target or "")
+        words = find_words(index, arguments.find, period, arguments.target or "", most=None)
         return _told(arguments, {"found": words}, lambda: pages.words(words), is_any=bool(words))
     if arguments.where or arguments.filter:
         wanted = Wanted(
@@ -52,7 +52,7 @@ def _page(index: PastIndex, arguments: argparse.Namespace) -> int:
             period=period,
             conditions=tuple(_condition(text) for text in arguments.where),
         )
-        some = find_exposures(index, wanted)
+        some = find_exposures(index, wanted, most=None)
         return _told(arguments, {"found": some}, lambda: pages.exposures(some), is_any=bool(some))
     if arguments.target is not None:
         taken = history(index, arguments.target, period)
@@ -62,7 +62,7 @@ def _page(index: PastIndex, arguments: argparse.Namespace) -> int:
         value = {"totals": sums, "exposures": taken}
         return _told(arguments, value, lambda: pages.target(sums, taken))
     if arguments.refused:
-        why, frames = refused(index), frames_refused(index, period)
+        why, frames = refused(index, period), frames_refused(index, period)
         value = {"refused": why, "newest": frames}
         return _told(arguments, value, lambda: pages.refused(why, frames), is_any=bool(why))
     if arguments.seeing:
