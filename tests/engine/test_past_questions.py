@@ -249,8 +249,11 @@ def test_seeing_of_many_nights(index: PastIndex, archive: Path) -> None:
     assert len(measurements(index, Period(until=date(2018, 9, 1))).nights) == 1
 
 
-def test_what_remains_follows_every_change_of_verdict(archive: Path, tmp_path: Path) -> None:
+def test_what_remains_follows_every_change_of_verdict(
+    archive: Path, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
     """Done counts tonight; rejected, it comes back on the plan; taken back, it is done again."""
+    monkeypatch.setattr("platformdirs.user_cache_path", lambda name: tmp_path / "cache" / name)
     folder = tmp_path / "nights"
     shutil.copytree(archive, folder)
     target = load_logbook(folder).targets[0]

@@ -55,7 +55,7 @@ def test_nights_stand_with_their_pictures(folder: Path, size: tuple[int, int]) -
         rows = trial.text("view").splitlines()
         assert " 3 nights, shutter open 84% of the dark  1 unreadable" in rows[1]
         assert [row[2:12] for row in rows[3:6]] == ["2027-03-12", "2027-03-10", "2027-03-02"]
-        assert "█" in rows[3]
+        assert "━━" in rows[3]
         assert "●" in rows[3]
         assert "273/282" in rows[3]
         assert "unreadable" in rows[5]
@@ -97,7 +97,7 @@ def test_a_targets_history_follows_the_cursor_of_the_list(folder: Path) -> None:
         trial.console.choose("NGC 3621")
         await trial.press("j", "k")
         kept = sum(each.outcome == "good" for each in taken)
-        assert f"NGC 3621  {kept} kept of {len(taken)} in 1 nights" in trial.text("view")
+        assert f"NGC 3621  {kept} kept of {len(taken)} in 1 night" in trial.text("view")
         await trial.press("G", "enter")
         assert "▶ " in trial.text("view")
         assert f" {taken[0].n:>4}  " in next(
@@ -171,7 +171,7 @@ def test_the_nights_work_goes_on_under_it(folder: Path) -> None:
 def test_pictures_have_the_width_they_are_given() -> None:
     """Whatever the numbers: no cell too many, the shares in their order."""
     spent = {"open": 6.0, "lost": 2.0, "between": 1.0, "moving": 0.5, "ready": 0.5, "idle": 0.0}
-    assert "".join(span.text for span in time_picture(spent, 20)) == "█" * 12 + "▒▒░·╌╌╌╌"
+    assert "".join(span.text for span in time_picture(spent, 20)) == "━" * 12 + "──›·╌╌╌╌"
     assert [len(time_picture(some, 9)) for some in ({}, {"open": 0.0}, {"idle": 3.0})] == [9] * 3
     for seeing in (None, Quartiles(0.1, 0.2, 0.3), Quartiles(1.0, 2.0, 9.0)):
         assert len(seeing_picture(seeing, 13)) == 13
@@ -179,6 +179,9 @@ def test_pictures_have_the_width_they_are_given() -> None:
     assert len(bars) == 2
     assert all(width_of(bar) <= 40 for bar in bars)
     assert histogram((0.0, 1.0), (0,), 40, 10) == []
+    together = histogram(range(9), (0, 1, 2, 3, 4, 5, 6, 0), 40, 3)
+    assert [bar[0].text.strip() for bar in together] == ['1.00-3.00"', '3.00-5.00"', '5.00-7.00"']
+    assert [bar[2].text for bar in together] == [" 3", " 7", " 11"]
 
 
 def test_the_cursor_is_always_in_sight() -> None:

@@ -8,17 +8,20 @@ from dataclasses import dataclass
 from tui.paint.canvas import joined
 from tui.paint.spans import Line, Span, fitted
 
-# How each kind of time is drawn; told apart by glyph, not by colour alone.
+# How each kind of time is drawn; told apart by glyph, not by colour alone, and by lines rather than
+# blocks, which would be a lamp in a dark dome.
 TIME_GLYPHS = {
-    "open": ("█", "good"),
-    "between": ("▒", "dim"),
-    "moving": ("░", "dim"),
+    "open": ("━", "good"),
+    "between": ("─", "dim"),
+    "moving": ("›", "dim"),
     "ready": ("·", "dim"),
     "lost": ("╌", "lost"),
     "idle": (" ", "dim"),
 }
 # From the left edge to the right of a picture of seeing (arcsec).
 SEEING_LOW, SEEING_HIGH = 0.5, 3.5
+# What stands to both sides of a bar: its span, and a count of up to seven figures.
+BESIDE_BAR = 20
 
 
 @dataclass(frozen=True, slots=True)
@@ -92,20 +95,23 @@ def seeing_scale(width: int) -> str:
 
 
 def histogram(edges: Sequence[float], counts: Sequence[int], width: int, rows: int) -> list[Line]:
-    """Return a distribution as bars, a row a bin, from the first bin with anything to the last."""
+    """Return a distribution as bars, from the first bin with anything to the last.
+
+    A row is one bin, or as many together as it takes to show them all in so many rows.
+    """
     filled = [place for place, count in enumerate(counts) if count]
-    if not filled:
+    if not filled or rows < 1:
         return []
-    most = max(counts)
-    room = max(width - 20, 4)
-    lines: list[Line] = []
-    for place in range(filled[0], filled[-1] + 1)[:rows]:
-        cells = round(room * counts[place] / most)
-        lines.append(
-            (
-                Span(f' {edges[place]:.2f}-{edges[place + 1]:.2f}" ', "dim"),
-                Span("█" * cells, "accent"),
-                Span(f" {counts[place]}", "text"),
-            )
+    first, after = filled[0], filled[-1] + 1
+    step = -(-(after - first) // rows)
+    groups = [(at, min(at + step, after)) for at in range(first, after, step)]
+    sums = [sum(counts[begin:end]) for begin, end in groups]
+    room = max(width - BESIDE_BAR, 1)
+    return [
+        (
+            Span(f' {edges[begin]:.2f}-{edges[end]:.2f}" ', "dim"),
+            Span("▄" * round(room * count / max(sums)), "accent"),
+            Span(f" {count}", "text"),
         )
-    return lines
+        for (begin, end), count in zip(groups, sums, strict=True)
+    ]

@@ -25,6 +25,7 @@ from tui.console.views.past_pages import (
     found_page,
     night_page,
     nights_page,
+    seeing_groups,
     seeing_page,
     target_page,
 )
@@ -88,7 +89,7 @@ class Past(View):
             case "target":
                 return target_page(self.console.chosen, self._history(read), cursor, width, height)
             case "seeing":
-                return seeing_page(read.seeing, width, height)
+                return seeing_page(read.seeing, cursor, width, height)
             case "found":
                 return found_page(self._text, self._found, cursor, width, height)
             case _:
@@ -163,7 +164,7 @@ class Past(View):
             case "found":
                 return self._found
             case _:
-                return ()
+                return seeing_groups(read.seeing)
 
     @property
     def _cursor(self) -> int:
@@ -213,7 +214,7 @@ class Past(View):
 
     def _open_under_cursor(self) -> None:
         rows = self._rows
-        if not rows or self._page == "night":
+        if not rows or self._page in ("night", "seeing"):
             return
         row: Any = rows[self._cursor]
         name = row.name if isinstance(row, NightLine) else row.log
@@ -251,9 +252,6 @@ class Past(View):
         match self._page:
             case "night" if self._replay is not None:
                 return self._replay.at(len(self._replay.events) - 1).exposures
-            case "seeing":
-                seen = read.seeing
-                return (*seen.by_month, *seen.by_hour, *seen.by_filter, *seen.by_airmass)
             case _:
                 return self._rows
 

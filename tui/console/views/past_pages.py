@@ -4,7 +4,9 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
+from dataclasses import replace
 from datetime import UTC
+from itertools import zip_longest
 from zoneinfo import ZoneInfo
 
 import numpy as np
@@ -16,7 +18,7 @@ from engine.past.exposures import PastExposure
 from engine.past.nights import NightLine, efficiency
 from engine.past.replay import Replay
 from engine.past.search import FoundWords
-from engine.past.seeing import SiteSeeing
+from engine.past.seeing import Group, SiteSeeing
 from engine.seeing import SeeingSummary
 from engine.times import HOURS_PER_DAY, datetime_from_mjd
 from tui.console.panels.night import OUTCOME_GLYPHS
@@ -30,13 +32,14 @@ from tui.paint.past import (
     time_legend,
     time_picture,
 )
-from tui.paint.spans import BLANK, Line, Span, fitted, line, phrases
+from tui.paint.spans import BLANK, Line, Span, fitted, line, phrases, width_of
 
 LABEL = {word.value: word.label for word in (*OUTCOMES, *LOST_CAUSES, *STATES)}
 # Widths of the pictures on a narrow screen and on a wide one.
 TIME_CELLS, SEEING_CELLS = (18, 36), (13, 25)
 WIDE = 120
 PLANS_SHOWN = 4
+LABEL_CELLS = 19
 
 
 def window(count: int, cursor: int, rows: int) -> range:
@@ -212,7 +215,11 @@ def target_page(
     head = phrases(
         width,
         line(Span(f" {name}", "strong")),
-        line(Span(f"  {len(kept)} kept of {len(taken)} in {nights} nights", "text")),
+        line(
+            Span(
+                f"  {len(kept)} kept of {len(taken)} in {nights} night{'s'[: nights != 1]}", "text"
+            )
+        ),
         line(
             Span(f"  depth {sum(1.0 if e.credit is None else e.credit for e in kept):.1f}", "text")
         ),
@@ -243,44 +250,49 @@ def _verdict(each: PastExposure) -> str:
     return one_line(f"{LABEL.get(each.outcome, each.outcome)} {said}".strip(), 120)
 
 
-def seeing_page(site: SiteSeeing, width: int, rows: int) -> list[Line]:
-    """Return the site's seeing: quartiles by month and hour, filter and airmass, distribution."""
+def seeing_groups(site: SiteSeeing) -> list[Group]:
+    """Return the groups of a site's seeing, each named so that it stands alone."""
+    return [
+        *site.by_month,
+        *site.by_hour,
+        *(replace(group, label=f"filter {group.label}") for group in site.by_filter),
+        *(replace(group, label=f"airmass {group.label}") for group in site.by_airmass),
+    ]
+
+
+def seeing_page(site: SiteSeeing, first: int, width: int, rows: int) -> list[Line]:
+    """Return the site's seeing: quartiles of its groups from one of them on, its distribution."""
     if site.all is None:
         return [line(Span(" no seeing was measured on any night", "dim"))]
-    half = width // 2 if width >= WIDE else width
     cells = SEEING_CELLS[int(width >= WIDE)]
     head = line(
         Span(f" seeing of {site.nights} nights", "strong"),
         Span(f"  {site.all.count} values, {site.from_images} from images", "text"),
     )
-    left = [line(Span(f" {'':<16} {seeing_scale(cells)}  median", "dim"))]
-    left.append(_group_row("all", site.all, cells, half))
-    groups = (*site.by_month, *site.by_hour, *site.by_filter, *site.by_airmass)
-    left += [_group_row(group.label, group.summary, cells, half) for group in groups]
-    room = rows - 1
-    if half == width:
-        bars = histogram(site.edges_arcsec, site.counts, width, max(room - 8, 0))
-        return [head, *left[: room - len(bars)], *bars]
-    bars = histogram(site.edges_arcsec, site.counts, width - half, room)
-    # Months and hours may be more than there are rows: what does not fit goes under the bars.
-    right = [*bars, *([BLANK, *left[room:]] if len(left) > room else [])][:room]
-    left = left[:room]
-    return [head, *_beside(left, right, half, room)]
+    above = [
+        line(Span(f" {'':<{LABEL_CELLS}} {seeing_scale(cells)}  median  values", "dim")),
+        _group_row("all", site.all, cells),
+    ]
+    groups = [_group_row(each.label, each.summary, cells) for each in seeing_groups(site)]
+    under = rows - 1 - len(above)
+    first = min(first, max(len(groups) - under, 0))
+    left = [*above, *groups[first : first + under]]
+    beside = max(width_of(above[0]) + 2, width // 2 if width >= WIDE else 0)
+    bars = histogram(site.edges_arcsec, site.counts, width - beside, rows - 1)
+    return [head, *_beside(left, bars, beside)]
 
 
-def _group_row(label: str, summary: SeeingSummary, cells: int, width: int) -> Line:
+def _group_row(label: str, summary: SeeingSummary, cells: int) -> Line:
     picture = seeing_picture(quartiles(summary), cells)
+    name = fitted(one_line(label, LABEL_CELLS), LABEL_CELLS)
     after = f"  {summary.median_arcsec:6.2f} {summary.count:>7}"
-    return pictures_row(f" {fitted(one_line(label, 16), 16)}", (), picture, after, "text")
+    return pictures_row(f" {name}", (), picture, after, "text")
 
 
-def _beside(left: list[Line], right: list[Line], width: int, rows: int) -> list[Line]:
+def _beside(left: list[Line], right: list[Line], width: int) -> list[Line]:
     shown: list[Line] = []
-    for at in range(min(max(len(left), len(right)), rows)):
-        one = left[at] if at < len(left) else BLANK
-        gap = width - sum(len(span.text) for span in one)
-        other = right[at] if at < len(right) else BLANK
-        shown.append((*one, Span(" " * max(gap, 0)), *other))
+    for one, other in zip_longest(left, right, fillvalue=BLANK):
+        shown.append((*one, Span(" " * max(width - width_of(one), 0)), *other))
     return shown
 
 
