@@ -149,7 +149,7 @@ def digest(path: Path, data: bytes) -> Digest:
         extents=_extents(exposures),
         texts=tuple(_texts(stands, exposures, judged)),
         filters=tuple(filters),
-        seeing=_seeing_table(stands, filters, _zone(reading)),
+        seeing=_seeing_table(stands, state, filters, _zone(reading)),
         images=_image_table(exposures, filters),
         events={kind: kinds.count(kind) for kind in sorted(set(kinds))},
     )
@@ -251,12 +251,15 @@ def _texts(
     return sorted(found, key=lambda text: text.n)
 
 
-def _seeing_table(stands: Sequence[Event], filters: list[str], zone: ZoneInfo | None) -> bytes:
+def _seeing_table(
+    stands: Sequence[Event], state: NightState, filters: list[str], zone: ZoneInfo | None
+) -> bytes:
+    seen_mjd = {each.n: each.mjd for each in state.seeing}
     rows = [
         (
-            event.t_mjd,
+            seen_mjd[event.n],
             event.seeing_arcsec,
-            _local_h(event.t_mjd, zone),
+            _local_h(seen_mjd[event.n], zone),
             filters.index(event.filter),
             math.nan if event.airmass is None else event.airmass,
             math.nan if event.measured_fwhm_arcsec is None else event.measured_fwhm_arcsec,

@@ -9,7 +9,7 @@ from dataclasses import dataclass
 from engine.past.digest import FIELDS, Digest, as_json
 
 # Raised whenever the tables, or what a digest holds, change: an index of another one is made anew.
-SCHEMA = 1
+SCHEMA = 2
 
 _TEXT = {"target", "programme", "filter", "frame", "outcome", "why"}
 _COLUMNS = ", ".join(

@@ -234,7 +234,9 @@ def test_hostile_text_is_only_text(tmp_path: Path, full_text: bool) -> None:
 
 def test_seeing_of_many_nights(index: PastIndex, archive: Path) -> None:
     """Quartiles by numpy over the folds; every value counted once in each grouping."""
-    values = [each.zenith_arcsec for state in folded(archive).values() for each in state.seeing]
+    measured = [each for state in folded(archive).values() for each in state.seeing]
+    values = [each.zenith_arcsec for each in measured]
+    assert sorted(measurements(index).mjd) == sorted(each.mjd for each in measured)
     site = site_seeing(measurements(index))
     assert site.all is not None
     assert site.all.count == len(values) == sum(site.counts)
