@@ -70,7 +70,8 @@ class Night:
 
     def index_at(self, mjd: float) -> int:
         """Return the place in the grid nearest to a moment, held to the grid's ends."""
-        return int(np.clip(np.searchsorted(self.mjd, mjd - 0.5 / MINUTES_PER_DAY), 0, self.last))
+        place = int(np.searchsorted(self.mjd, mjd - 0.5 / MINUTES_PER_DAY))
+        return min(place, self.last)
 
     @property
     def last(self) -> int:

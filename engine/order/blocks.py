@@ -84,13 +84,14 @@ def cut(problem: Problem) -> Blocks:
         for target in range(len(problem.targets))
         for piece in _pieces(problem, target)
     ]
-    integral = _integral(problem)
+    longest_min = max((_length_min(problem, parts) for _, parts in waiting), default=0.0)
+    lines = _LineTicks.of(problem, longest_min)
     kept: list[tuple[int, tuple[Part, ...]]] = []
     values: list[Singles] = []
     parts_at = _airmass_parts(problem)
     own_parts: list[int] = []
     for _ in range(HALVINGS):
-        table = _values(problem, waiting, integral)
+        table = _values(problem, waiting, lines)
         own = _own_parts(problem, waiting)
         _sample_airmass(waiting, own, parts_at, table)
         fits = np.asarray((table > NEVER).any(axis=1))
@@ -265,58 +266,55 @@ def _shortest(problem: Problem, parts: tuple[Part, ...], least_min: float) -> tu
     return tuple(kept)
 
 
-def _integral(problem: Problem) -> Singles:
-    """Return the worth of each line (L, K+1) summed up to each tick, per minute."""
-    by_tick = np.repeat(problem.worth, TICKS_PER_MIN, axis=1) / np.float32(TICKS_PER_MIN)
-    sums = np.zeros((by_tick.shape[0], by_tick.shape[1] + 1), dtype=np.float32)
-    np.cumsum(by_tick, axis=1, out=sums[:, 1:])
-    return sums
+@dataclass(frozen=True, slots=True)
+class _LineTicks:
+    """Lines by tick, and on behind the night's end for the longest block: all shifts are slices.
+
+    ``worth`` (L, K+M+1) is summed up to each tick, per minute. ``reach`` (L, K+M) is how far
+    beyond each tick a line may be exposed without a break, in ticks; negative where it may not
+    begin.
+    """
+
+    ticks: int
+    beyond: int
+    worth: Singles
+    reach: NDArray[np.int32]
+
+    @classmethod
+    def of(cls, problem: Problem, longest_min: float) -> _LineTicks:
+        lines, ticks = len(problem.lines), _ticks(problem)
+        beyond = min(math.ceil(longest_min * TICKS_PER_MIN) + 1, ticks)
+        worth = np.empty((lines, ticks + beyond + 1), dtype=np.float32)
+        worth[:, 0] = 0.0
+        np.cumsum(problem.worth, axis=1, out=worth[:, 2 : ticks + 1 : 2])
+        worth[:, 1:ticks:2] = 0.5 * (worth[:, 0:ticks:2] + worth[:, 2 : ticks + 1 : 2])
+        worth[:, ticks + 1 :] = worth[:, ticks : ticks + 1]
+        reach = np.empty((lines, ticks + beyond), dtype=np.int32)
+        ahead = problem.run_end.astype(np.int32)
+        closed = ahead < 0
+        ahead -= np.arange(problem.minutes, dtype=np.int32)
+        ahead *= TICKS_PER_MIN
+        ahead[closed] = -1
+        reach[:, 0:ticks:2], reach[:, 1:ticks:2] = ahead, ahead - 1
+        reach[:, ticks:] = -1
+        return cls(ticks, beyond, worth, reach)
 
 
 def _values(
-    problem: Problem, blocks: list[tuple[int, tuple[Part, ...]]], integral: Singles
+    problem: Problem, blocks: list[tuple[int, tuple[Part, ...]]], lines: _LineTicks
 ) -> Singles:
     """Return the value (B, K+1) of each block at each tick."""
-    ticks = _ticks(problem)
-    table = np.zeros((len(blocks), ticks + 1), dtype=np.float32)
-    if not blocks:
-        return table
-    possible = np.ones((len(blocks), ticks), dtype=bool)
-    at = np.arange(ticks)
-    offset_min = np.zeros(len(blocks))
-    for column in range(max(len(parts) for _, parts in blocks)):
-        rows = np.array([i for i, (_, parts) in enumerate(blocks) if len(parts) > column])
-        own = [blocks[row][1][column] for row in rows]
-        places = np.array([line for line, _ in own])
-        lines = [problem.lines[line] for line in places]
-        counts = np.array([count for _, count in own])
-        each_min = np.array([line.each_min for line in lines])
-        begin_min = offset_min[rows] + np.array([line.change_min for line in lines])
-        end_min = begin_min + counts * each_min
-        offset_min[rows] = end_min
-        begin_tick = np.rint(begin_min * TICKS_PER_MIN).astype(int)
-        end_tick = np.maximum(np.rint(end_min * TICKS_PER_MIN).astype(int), begin_tick + 1)
-        begin, end = (np.minimum(at[None] + m[:, None], ticks) for m in (begin_tick, end_tick))
-        # Exposures times the mean worth of the ticks they take, whatever rounding made of those.
-        exposed_s = counts * np.array([line.seconds for line in lines])
-        rate = exposed_s * TICKS_PER_MIN / (end_tick - begin_tick)
-        gained = integral[places[:, None], end] - integral[places[:, None], begin]
-        table[rows, :-1] += gained * rate.astype(np.float32)[:, None]
-        # Half a tick each way, so that the exact times are lawful too.
-        first = np.floor(begin_min[:, None] + at[None] / TICKS_PER_MIN).astype(int)
-        last = np.ceil(
-            end_min[:, None] - problem.readout_min + (at[None] + 0.5) / TICKS_PER_MIN
-        ).astype(int)
-        fits = problem.run_end[places[:, None], np.minimum(first, problem.minutes - 1)] >= last
-        possible[rows] &= fits & (first < problem.minutes)
-    whole = dict(_whole_plans(problem))
-    bonus = [problem.bonus[target] if parts == whole[target] else 0.0 for target, parts in blocks]
-    table[:, :-1] += np.array(bonus, dtype=np.float32)[:, None]
+    ticks = lines.ticks
+    table = np.empty((len(blocks), ticks + 1), dtype=np.float32)
+    at_min = np.arange(ticks) / TICKS_PER_MIN
     for row, (target, parts) in enumerate(blocks):
+        value, possible = _value_of(problem, parts, lines)
+        value += np.float32(_finishes(problem, target, parts))
         if target in problem.pins:
             change_min = problem.lines[parts[0][0]].change_min
-            table[row, :-1] += pin_worths(problem, target, at / TICKS_PER_MIN + change_min)
-    table[:, :-1][~possible] = NEVER
+            value += pin_worths(problem, target, at_min + change_min)
+        value[~possible] = NEVER
+        table[row, :-1] = value
     table[:, -1] = NEVER
     return table
 
@@ -354,3 +352,34 @@ def _sample_airmass(
             elsewhere = parts_at[target] != own
             can = elsewhere & (table[row, :-1] > NEVER)
             table[row, :-1][can] *= np.float32(SAMPLED_SHARE)
+
+
+def _value_of(
+    problem: Problem, parts: tuple[Part, ...], lines: _LineTicks
+) -> tuple[Singles, NDArray[np.bool_]]:
+    """Return what parts earn begun at each tick (K,), and where they may begin."""
+    ticks = lines.ticks
+    value = np.zeros(ticks, dtype=np.float32)
+    possible = np.ones(ticks, dtype=bool)
+    end_min = 0.0
+    for place, count in parts:
+        line = problem.lines[place]
+        begin_min = end_min + line.change_min
+        end_min = begin_min + count * line.each_min
+        begin = min(round(begin_min * TICKS_PER_MIN), lines.beyond)
+        end = min(max(round(end_min * TICKS_PER_MIN), begin + 1), lines.beyond + 1)
+        # Exposures times the mean worth of the ticks they take, whatever rounding made of those.
+        rate = np.float32(count * line.seconds * TICKS_PER_MIN / (end - begin))
+        worth = lines.worth[place]
+        value += (worth[end : end + ticks] - worth[begin : begin + ticks]) * rate
+        # Half a tick each way, so that the exact times are lawful too.
+        first = min(math.floor(begin_min * TICKS_PER_MIN), lines.beyond)
+        last = math.ceil((end_min - problem.readout_min) * TICKS_PER_MIN + 0.5)
+        possible &= lines.reach[place, first : first + ticks] >= max(last - first, 0)
+    return value, possible
+
+
+def _finishes(problem: Problem, target: int, parts: tuple[Part, ...]) -> float:
+    """Return what a block earns by finishing its plan alone."""
+    whole = tuple((line, problem.lines[line].count) for line in problem.lines_of(target))
+    return float(problem.bonus[target]) if parts == whole else 0.0

@@ -91,7 +91,7 @@ def greedies(
         arrive = np.minimum(state_tick[:, None] + np.rint(way * TICKS_PER_MIN).astype(int), ticks)
         if gaps is not None:
             arrive = np.minimum(np.maximum(arrive, gaps.first()), ticks)
-        begin = tables.ready[tables.row, arrive]
+        begin = tables.ready.take(tables.row + arrive)
         score = tables.score(begin, state_tick)
         score[~free] = -np.inf
         if gaps is not None:
@@ -186,10 +186,40 @@ def _after_first(blocks: Blocks, travel: Travel, start: Start) -> tuple[Turn, in
 
 
 @dataclass(frozen=True, slots=True)
-class _Tables:
-    """What every greedy reads: (B, K+1) each but for the first and last ones."""
+class _Columns:
+    """The tempers as columns (G, 1); ``urgent`` are the rows that feel urgency at all."""
 
-    tempers: tuple[Temper, ...]
+    price: Singles
+    regret: Singles
+    per_time: Singles
+    urgency: Singles
+    felt_ticks: Singles
+    urgent: Places
+
+    @classmethod
+    def of(cls, tempers: tuple[Temper, ...]) -> _Columns:
+        def column(name: str) -> Singles:
+            return np.array([[getattr(temper, name)] for temper in tempers], dtype=np.float32)
+
+        urgency = column("urgency")
+        return cls(
+            column("price"),
+            column("regret"),
+            column("per_time"),
+            urgency,
+            column("felt_min") * TICKS_PER_MIN,
+            np.flatnonzero(urgency > 0.0),
+        )
+
+
+@dataclass(frozen=True, slots=True)
+class _Tables:
+    """What every greedy reads: by block (B,), or by block and tick and laid out flat (B (K+1),),
+    with where each block's ticks begin in ``row``.
+    """
+
+    columns: _Columns
+    ticks: int
     row: Places
     length: Places
     ready: Places
@@ -206,38 +236,39 @@ class _Tables:
         paid = np.zeros(ticks + 1, dtype=np.float32)
         np.cumsum(price, out=paid[1:])
         ends = np.minimum(np.arange(ticks + 1)[None] + length[:, None], ticks)
-        net = np.where(possible, blocks.value - (paid[ends] - paid[None]), np.float32(0.0))
-        net = np.maximum(net, 0.0)
+        net = blocks.value - paid.take(ends)
+        net += paid
+        # What may not begin has no value to speak of, far below zero.
+        np.maximum(net, 0.0, out=net)
         later = np.maximum.accumulate(net[:, ::-1], axis=1)[:, ::-1]
-        last = np.where(possible, np.arange(ticks + 1), -1).max(axis=1)
         return cls(
-            tempers,
-            np.arange(len(blocks.target))[None],
+            _Columns.of(tempers),
+            ticks,
+            np.arange(len(blocks.target)) * (ticks + 1),
             length,
-            blocks.ready,
-            blocks.value,
+            blocks.ready.ravel(),
+            blocks.value.ravel(),
             paid,
-            later,
-            last,
+            later.ravel(),
+            ticks - np.argmax(possible[:, ::-1], axis=1),
         )
 
     def score(self, begin: Places, now: Places) -> Singles:
         """Return how good each block (G, B) is that would begin when said, for each greedy."""
-        ticks = self.value.shape[1] - 1
-        value = self.value[self.row, begin]
-        end = np.minimum(begin + self.length[None], ticks)
-        cost = self.paid[end] - self.paid[np.minimum(now, ticks)][:, None]
-        soon = np.minimum(begin + 20 * TICKS_PER_MIN, ticks)
-        column = {
-            name: np.array([getattr(t, name) for t in self.tempers], dtype=np.float32)[:, None]
-            for name in ("price", "regret", "per_time", "urgency", "felt_min")
-        }
-        net = value - column["price"] * cost - column["regret"] * self.later[self.row, soon]
+        columns = self.columns
+        value = self.value.take(self.row + begin)
+        end = np.minimum(begin + self.length, self.ticks)
+        cost = self.paid.take(end)
+        cost -= self.paid.take(now)[:, None]
+        soon = np.minimum(begin + 20 * TICKS_PER_MIN, self.ticks)
+        net = value - columns.price * cost
+        net -= columns.regret * self.later.take(self.row + soon)
         taken = np.maximum(end - now[:, None], 1).astype(np.float32)
-        slack = np.maximum(self.last[None] - begin, 0) / (column["felt_min"] * TICKS_PER_MIN)
-        score = net / taken ** column["per_time"]
+        score: Singles = net / taken**columns.per_time
+        rows = columns.urgent
+        slack = np.maximum(self.last - begin[rows], 0).astype(np.float32) / columns.felt_ticks[rows]
         # Only what is worth taking can be urgent.
-        score *= np.where(net > 0.0, 1.0 + column["urgency"] * np.exp(-slack), 1.0)
+        haste = np.where(net[rows] > 0.0, 1.0 + columns.urgency[rows] * np.exp(-slack), 1.0)
+        score[rows] *= haste.astype(np.float32)
         score[value <= NEVER] = -np.inf
-        found: Singles = score
-        return found
+        return score

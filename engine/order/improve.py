@@ -140,22 +140,36 @@ class Search:
         else:
             begin = max(min(self._place, len(now.order)), now.held)
             end = min(begin + size, len(now.order))
-        filled, value, moved = self._fill(begin, end)
-        if value < now.value - slack or list(filled.blocks) == now.order[begin:end]:
+        filled, value, moved = self._fill(now, begin, end, self._random.random() < 0.5)
+        if list(filled.blocks) == now.order[begin:end] or (value < now.value - slack and not moved):
             return
         changed = now.changed(begin, end, filled, moved, self._back)
+        for block in moved:
+            changed = self._refilled(changed, self._vacated(now, changed, block))
         if self._in_series:
             changed = changed.retimed()
         if changed.value >= now.value - slack:
             self._now = changed
 
-    def _fill(self, begin: int, end: int) -> tuple[Turn, float, list[int]]:
+    def _vacated(self, before: Sequence, after: Sequence, block: int) -> int:
+        """Return the place in an order at which a block stood that was moved in it."""
+        behind = before.order[before.order.index(block) + 1 :]
+        places = {other: place for place, other in enumerate(after.order)}
+        return next((places[other] for other in behind if other in places), len(after.order))
+
+    def _refilled(self, now: Sequence, place: int) -> Sequence:
+        """Return a sequence with what gains most put in at a place."""
+        filled, _, _ = self._fill(now, place, place, False)
+        return now.changed(place, place, filled, [], self._back) if filled.blocks else now
+
+    def _fill(
+        self, now: Sequence, begin: int, end: int, moving: bool
+    ) -> tuple[Turn, float, list[int]]:
         """Return blocks for a stretch, the value then, and which stood elsewhere before."""
-        now = self._now
         here, lasts, after, tick = now.edge(begin - 1, end)
         until = now.ticks[end] if end < len(now.ticks) else self._blocks.ticks
         gap = _Gap(now.before(begin), now.behind(end), here, lasts, after, tick, until)
-        pool, loss, elsewhere = self._pool(begin, end, gap)
+        pool, loss, elsewhere = self._pool(now, begin, end, gap, moving)
         whole = self._blocks.finishing(now.order)
         lost = 0.0
         if self._in_pieces:
@@ -208,11 +222,12 @@ class Search:
         found: Singles = np.where((blocks.pieces[targets] > 0) & among, earned, 0.0)
         return found.astype(np.float32)
 
-    def _pool(self, begin: int, end: int, gap: _Gap) -> tuple[Places, Singles, set[int]]:
+    def _pool(
+        self, now: Sequence, begin: int, end: int, gap: _Gap, moving: bool
+    ) -> tuple[Places, Singles, set[int]]:
         """Return the blocks that may fill a stretch, what taking each from its place costs, and
         those that stand elsewhere now.
         """
-        now = self._now
         free = np.ones(len(self._targets), dtype=bool)
         free[now.order] = False
         waiting = np.flatnonzero(free)
@@ -226,7 +241,7 @@ class Search:
         own = np.array(now.order[begin:end], dtype=np.int64)
         others: list[int] = []
         losses: list[float] = []
-        if self._random.random() < 0.5:
+        if moving:
             near = [
                 place
                 for place in range(max(begin - REACH, now.held), min(end + REACH, len(now.order)))

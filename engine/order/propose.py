@@ -20,7 +20,7 @@ from engine.order.prices import price_of_time
 from engine.order.problem import Problem
 from engine.order.reasons import left_out, reason_for
 from engine.order.sequence import Timed
-from engine.order.timeline import Stay, Timeline
+from engine.order.timeline import GAP_MIN, Stay, Timeline
 from engine.times import MINUTES_PER_DAY
 
 # What keeping the order in force is worth against one made afresh: common practice, no source.
@@ -221,12 +221,41 @@ def _afresh(problem: Problem, blocks: Blocks, effort: Effort, seed: int) -> Time
     found = search.run(effort.with_reserve(RESERVE))
     timeline = _exact(problem, blocks, found)
     for temper in PLAIN:
-        # Always: once gaps are filled, a plain rule may come out ahead from well behind.
-        turn = turns[TEMPERS.index(temper)]
-        plain = _exact(problem, blocks, _as_timed(problem, blocks, start, turn))
+        # Once gaps are filled, a plain rule may come out ahead from well behind.
+        timed = _as_timed(problem, blocks, start, turns[TEMPERS.index(temper)])
+        if not _may_reach(problem, blocks, timed, timeline.value()):
+            continue
+        plain = _exact(problem, blocks, timed)
         if _is_better(plain, timeline, 0.0):
             timeline = plain
     return timeline
+
+
+def _may_reach(problem: Problem, blocks: Blocks, turn: Timed, value: float) -> bool:
+    """Say whether a turn could be worth so much if all its idle time were filled at the best rate.
+
+    Times are rounded and filling may finish plans: a tenth of what it fills is allowed for that.
+    """
+    if problem.pins or problem.repeats or not turn.blocks:
+        return True
+    begins = np.append(np.array(turn.ticks), blocks.ticks)
+    ends = np.array(turn.ticks) + blocks.minutes[list(turn.blocks)] * TICKS_PER_MIN
+    there = blocks.target[list(turn.blocks)]
+    minutes = np.minimum(ends, blocks.ticks - 1).astype(np.int64) // TICKS_PER_MIN
+    ways = np.append(problem.travel.between(there[:-1], there[1:], minutes[:-1]), 0.0)
+    idle = np.append(
+        begins[0] - problem.start_min * TICKS_PER_MIN, begins[1:] - ends - ways * TICKS_PER_MIN
+    )
+    rates = np.array([line.seconds / line.each_min for line in problem.lines]) / TICKS_PER_MIN
+    best = np.repeat((problem.worth * rates.astype(np.float32)[:, None]).max(axis=0), TICKS_PER_MIN)
+    filled = sum(
+        ticks * float(best[round(end) : begin].max(initial=0.0))
+        for ticks, end, begin in zip(
+            idle, [problem.start_min * TICKS_PER_MIN, *ends], begins, strict=True
+        )
+        if ticks >= GAP_MIN * TICKS_PER_MIN
+    )
+    return bool(turn.value + 1.1 * filled > value)
 
 
 def _worth(blocks: Blocks, turn: Turn) -> float:
