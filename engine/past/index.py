@@ -11,7 +11,7 @@ import os
 import sqlite3
 import time
 from collections.abc import Iterable, Iterator, Sequence
-from contextlib import contextmanager
+from contextlib import closing, contextmanager
 from datetime import date
 from pathlib import Path
 from types import TracebackType
@@ -31,6 +31,11 @@ BATCH = 64
 # A file that was changed so shortly before it was read could change again within the same tick of
 # its disk's clock: the coarsest in use, FAT's, ticks every 2 s (from memory).
 YOUNG_NS = 2_500_000_000
+
+# What SQLite keeps beside a file in its write-ahead mode.
+FILES = ("", "-wal", "-shm")
+# A disk that is not there today may be there next month.
+FORGOTTEN_S = 100 * 86400.0
 
 Params = Sequence[object]
 
@@ -141,6 +146,7 @@ class PastIndex:
                 version = db.execute("PRAGMA user_version").fetchone()[0]
                 empty = db.execute("SELECT count(*) FROM sqlite_schema").fetchone()[0] == 0
                 if empty:
+                    _sweep(self._path)
                     make_tables(db, str(self.folder.resolve()))
                 elif version != SCHEMA or not self._is_ours(db):
                     raise sqlite3.DatabaseError("it is of another version or another logbook")
@@ -164,7 +170,7 @@ class PastIndex:
 
     def _throw_away(self) -> None:
         if self._path is not None:
-            for ending in ("", "-wal", "-shm"):
+            for ending in FILES:
                 self._path.with_name(self._path.name + ending).unlink(missing_ok=True)
 
     def _heal(self) -> None:
@@ -256,6 +262,22 @@ class PastIndex:
             sum_up(self._db, None)
             self._db.execute("DELETE FROM meta WHERE name = 'unsummed'")
         return True
+
+
+def _sweep(path: Path) -> None:
+    """Remove the indexes beside one whose logbook is gone and that none has changed for long."""
+    for other in path.parent.glob("*.sqlite"):
+        try:
+            if other == path or time.time() - other.stat().st_mtime < FORGOTTEN_S:
+                continue
+            with closing(sqlite3.connect(f"{other.as_uri()}?mode=ro", uri=True)) as db:
+                found = db.execute("SELECT value FROM meta WHERE name = 'folder'").fetchone()
+            if found is not None and not Path(found[0]).exists():
+                for ending in FILES:
+                    other.with_name(other.name + ending).unlink(missing_ok=True)
+        except (sqlite3.Error, OSError):
+            # Not ours to judge: it stays.
+            continue
 
 
 def _log_names(folder: Path) -> list[str]:

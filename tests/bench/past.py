@@ -91,7 +91,7 @@ def questions(index: PastIndex, folder: Path) -> None:
         "history of the busiest target": lambda: history(index, many),
         "seeing of all nights": lambda: site_seeing(measurements(index)),
         "refused and why": lambda: refused(index),
-        "the newest refused": lambda: frames_refused(index),
+        "the newest refused": lambda: frames_refused(index, most=200),
         "a word in all notes": lambda: find_words(index, "satellite"),
         "a text that is no word": lambda: find_words(index, "°"),
         "airmass < 1.1": lambda: find_exposures(index, limits("airmass<1.1")),

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import os
+import shutil
 import sqlite3
 import subprocess
 import sys
@@ -19,6 +20,7 @@ from engine.past import PastIndex, index_path
 from engine.past.carry import carried, done_before_by_folding
 from engine.past.exposures import totals
 from engine.past.nights import nights
+from engine.past.search import find_words
 from engine.past.seeing import measurements
 from tests.engine.log_nights import TEXTS, blocks_of
 from tests.engine.past_logs import (
@@ -219,6 +221,39 @@ def test_few_nights_leave_no_file_behind(tmp_path: Path) -> None:
         agrees(index, folder)
         assert index.note is None
     assert not (tmp_path / "cache").exists()
+
+
+def test_forgotten_indexes_of_logbooks_that_are_gone_are_swept_up(tmp_path: Path) -> None:
+    """Gone and long unchanged: removed. Still there, or only just gone: kept."""
+    old, new, kept = (tmp_path / name for name in ("old", "new", "kept"))
+    for folder in (old, new, kept):
+        small_archive(folder)
+        PastIndex(folder, cache=tmp_path).close()
+    long_ago = 1_600_000_000
+    for folder in (old, kept):
+        os.utime(index_path(folder, tmp_path), (long_ago, long_ago))
+    shutil.rmtree(old)
+    shutil.rmtree(new)
+    last = tmp_path / "last"
+    small_archive(last)
+    PastIndex(last, cache=tmp_path).close()
+    there = [index_path(folder, tmp_path).exists() for folder in (old, new, kept, last)]
+    assert there == [False, True, True, True]
+
+
+def test_without_full_text_search_the_index_is_made_all_the_same(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """An SQLite that lacks it: words are found by their letters."""
+    monkeypatch.setattr("engine.past.schema.FULL_TEXT", "CREATE VIRTUAL TABLE x USING nothing ()")
+    monkeypatch.setattr("engine.past.schema.FULL_TEXT_OLDER", "CREATE VIRTUAL TABLE x USING no ()")
+    folder = tmp_path / "nights"
+    path = small_archive(folder)[2]
+    change(path, "append", 0.0, "a halo round the Moon")
+    with PastIndex(folder, cache=tmp_path) as index:
+        assert not index.has_full_text
+        agrees(index, folder)
+        assert [each.night for each in find_words(index, "halo round")] == [path.stem]
 
 
 SECOND = """
