@@ -12,6 +12,8 @@ from typing import Any
 
 import numpy as np
 import pytest
+from hypothesis import given
+from hypothesis import strategies as st
 
 from engine.log import Amendment, Event, Exposure, LostTime, Note, Pointing, RunStart, RunStop
 from engine.logbook import load_logbook, sample_logbook
@@ -291,3 +293,54 @@ def test_what_remains_follows_every_change_of_verdict(
     assert remains() == 0
     log.unlink()
     assert remains() == before
+
+
+SPANS = st.lists(
+    st.tuples(st.integers(0, 600), st.integers(1, 120), st.sampled_from("eplra")), max_size=14
+)
+
+
+@given(SPANS, st.integers(0, 300), st.integers(0, 300))
+def test_any_night_adds_up(spans: list[tuple[int, int, str]], begin: int, length: int) -> None:
+    """Whatever overlaps whatever: headings add up to the dark, causes to what was lost."""
+
+    def at(minutes: float) -> float:
+        return 61000.0 + minutes / MINUTES_PER_DAY
+
+    events: list[Event] = []
+    for start, minutes, what in sorted(spans):
+        n = len(events) + 1
+        if what == "e":
+            events.append(
+                Exposure(
+                    n=n, t_mjd=at(start + minutes), of=0, target="KR 12", filter="B", seconds=60.0,
+                    exposed_s=60.0, start_mjd=at(start), mid_mjd=at(start), outcome="good",
+                    end_mjd=at(start + minutes),
+                )
+            )  # fmt: skip
+        elif what == "p":
+            events.append(
+                Pointing(n=n, t_mjd=at(start), target="KR 12", on_target=minutes % 2 == 0)
+            )
+        elif what == "l":
+            causes = ("cloud", "wind")
+            phase = "begin" if minutes % 3 else "end"
+            events.append(LostTime(n=n, t_mjd=at(start), phase=phase, cause=causes[minutes % 2]))
+        elif what == "r":
+            steps = {"filters": ("B",), "seconds": (60.0,), "counts": (1,)}
+            events.append(RunStart(n=n, t_mjd=at(start), target="KR 12", **steps))  # type: ignore[arg-type]
+        else:
+            events.append(RunStop(n=n, t_mjd=at(start), of=1, why="finished"))
+    dark = [(at(begin), at(begin + length))] if length else []
+    told = account(events, dark)
+    assert told.dark_s == pytest.approx(length * 60.0, abs=0.01)
+    assert sum(told.spent_s.values()) == pytest.approx(told.dark_s, abs=0.01)
+    assert sum(told.lost_s.values()) == pytest.approx(told.spent_s["lost"], abs=0.01)
+    assert all(seconds >= 0.0 for seconds in told.spent_s.values())
+    # Minute by minute, by hand: is the middle of it within any exposure?
+    exposed = [(each.start_mjd, each.end_mjd) for each in events if isinstance(each, Exposure)]
+    minutes_open = sum(
+        any(first <= at(minute + 0.5) < last for first, last in exposed)
+        for minute in range(begin, begin + length)
+    )
+    assert told.spent_s["open"] == pytest.approx(minutes_open * 60.0, abs=0.01)

@@ -14,6 +14,7 @@ from engine.logbook import sample_logbook
 from tests.engine.log_nights import blocks_of
 from tests.engine.past_logs import folded
 from tui.command import main
+from tui.commands.past import show_progress
 
 
 @pytest.fixture
@@ -134,3 +135,15 @@ def test_what_was_refused_is_of_the_period_asked_for(
     counted = [sum(each["count"] for each in page["refused"]) for page in (told, whole)]
     assert counted == [len(page["newest"]) for page in (told, whole)]
     assert 0 < counted[0] < counted[1]
+
+
+def test_long_work_shows_a_bar(capsys: pytest.CaptureFixture[str]) -> None:
+    """Short work shows none; long work one that grows, on the error stream, and ends its line."""
+    show_progress(3, 5)
+    assert capsys.readouterr().err == ""
+    for done in (0, 150, 300):
+        show_progress(done, 300)
+    told = capsys.readouterr()
+    assert told.out == ""
+    assert [part.count("█") for part in told.err.split("\r")[1:]] == [0, 15, 30]
+    assert told.err.endswith("300 of 300\n")

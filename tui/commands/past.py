@@ -32,7 +32,7 @@ def run(arguments: argparse.Namespace) -> int:
     folder = arguments.logbook
     if not folder.is_dir():
         raise WarmroomError(f"{folder}: there is no such folder")
-    progress = _show_progress if sys.stderr.isatty() else None
+    progress = show_progress if sys.stderr.isatty() else None
     with PastIndex(folder, progress=progress, afresh=arguments.afresh) as index:
         if index.note:
             print(index.note, file=sys.stderr)
@@ -136,7 +136,7 @@ def _moment(name: str, value: Any) -> Any:
     return None if value is None or value != value else iso_from_mjd(value)
 
 
-def _show_progress(done: int, of: int) -> None:
+def show_progress(done: int, of: int) -> None:
     """Draw a bar on the terminal while many logs are read."""
     if of < WORTH_A_BAR:
         return
