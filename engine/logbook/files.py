@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import re
 import tomllib
-from collections.abc import Iterator
+from collections.abc import Iterable, Iterator
 from pathlib import Path
 from typing import Any
 
@@ -43,13 +43,16 @@ class Unreadable(ValueError):
         super().__init__(what)
 
 
-def target_files(folder: Path, faults: list[Fault]) -> list[Path]:
-    """Return the files that hold targets; the fault is noted where there are none."""
+def target_files(folder: Path, faults: list[Fault], also: Iterable[Path] = ()) -> list[Path]:
+    """Return the files that hold targets; the fault is noted where there are none.
+
+    ``also`` holds files in ``targets/`` that are not there yet.
+    """
     found = list(_named_targets(folder))
     inside = folder / "targets"
     try:
-        if inside.is_dir():
-            found += sorted(each for each in inside.iterdir() if _holds_targets(each))
+        held = inside.iterdir() if inside.is_dir() else ()
+        found += sorted({*also, *(each for each in held if _holds_targets(each))} - {*found})
     except OSError as error:
         faults.append(Fault(inside, 1, "", f"{_reason(error)}, expected a folder to read"))
         return found
@@ -69,6 +72,11 @@ def read_text(path: Path) -> str:
         raise Unreadable("is missing, expected a file") from None
     except OSError as error:
         raise Unreadable(f"{_reason(error)}, expected a file that can be read") from None
+    return as_text(raw)
+
+
+def as_text(raw: bytes) -> str:
+    """Return what a file holds as text, without a byte order mark; Unreadable when it is none."""
     if len(raw) > LARGEST_BYTES:
         raise Unreadable(f"is too large, expected at most {LARGEST_BYTES} bytes")
     try:

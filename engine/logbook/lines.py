@@ -10,11 +10,13 @@ from __future__ import annotations
 import re
 import tomllib
 from bisect import bisect_right
+from dataclasses import dataclass
 
 Path = tuple[str | int, ...]
 
 # Blanks, line ends and comments between statements and inside lists.
 _GAP = re.compile(r"(?:[ \t\n]|#[^\n]*)*")
+_COMMENT = re.compile(r"#[^\n]*")
 _KEY = re.compile(r"""[ \t]*(?:([A-Za-z0-9_-]+)|("(?:[^"\\\n]|\\.)*")|'([^'\n]*)')[ \t]*""")
 _STRING = re.compile(
     r'''"""(?:[^\\]|\\.)*?""""{0,2}|\'\'\'.*?\'\'\'\'{0,2}|"(?:[^"\\\n]|\\.)*"|'[^'\n]*\'''',
@@ -54,11 +56,32 @@ def lines_of_keys(text: str) -> dict[Path, int]:
     return walk.lines
 
 
+@dataclass(frozen=True, slots=True)
+class Spans:
+    """Where what stands in a sound TOML text, as offsets into it with all line ends ``\\n``.
+
+    ``pairs`` are the keys that stand before an equals sign, each with its value; ``heads`` are the
+    ends of the headers of tables, ``comments`` the comments.
+    """
+
+    pairs: dict[Path, tuple[int, int]]
+    heads: dict[Path, int]
+    comments: list[tuple[int, int]]
+
+
+def spans_of_keys(text: str) -> Spans:
+    """Return where the keys of a sound TOML text begin and their values end."""
+    walk = _Walk(text.replace("\r\n", "\n"))
+    walk.document()
+    return walk.spans
+
+
 class _Walk:
     """One walk through a text that is known to be TOML: it checks nothing."""
 
     def __init__(self, text: str) -> None:
         self.lines: dict[Path, int] = {}
+        self.spans = Spans({}, {}, [])
         self._text = text
         self._at = 0
         self._ends = [found.start() for found in re.finditer("\n", text)]
@@ -89,6 +112,7 @@ class _Walk:
             if path in self._lengths:
                 path = (*path, self._lengths[path] - 1)
                 self._note(path, begin)
+        self.spans.heads[path] = self._at
         return path
 
     def _pair(self, table: Path) -> None:
@@ -99,6 +123,8 @@ class _Walk:
         self._at += 1  # the equals sign
         self._skip(_GAP)
         self._value(path)
+        value = self._text[begin : self._at].rstrip(" \t")
+        self.spans.pairs.setdefault(path, (begin, begin + len(value)))
 
     def _value(self, path: Path) -> None:
         opening = self._text[self._at]
@@ -140,8 +166,12 @@ class _Walk:
 
     def _skip(self, pattern: re.Pattern[str]) -> None:
         found = pattern.match(self._text, self._at)
-        if found is not None:
-            self._at = found.end()
+        if found is None:
+            return
+        if pattern is _GAP and "#" in found[0]:
+            comments = _COMMENT.finditer(self._text, self._at, found.end())
+            self.spans.comments.extend(each.span() for each in comments)
+        self._at = found.end()
 
     def _note(self, path: Path, position: int) -> None:
         self.lines.setdefault(path, bisect_right(self._ends, position - 1) + 1)

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import unicodedata
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Protocol, TypeVar
@@ -11,13 +12,21 @@ from pydantic import ValidationError
 
 from engine.errors import Fault, LogbookFaults
 from engine.logbook.faults import KeyPath, key_text, problems, unknown
-from engine.logbook.files import TABLE_ENDINGS, Unreadable, parse_toml, read_text, target_files
+from engine.logbook.files import (
+    TABLE_ENDINGS,
+    Unreadable,
+    as_text,
+    parse_toml,
+    read_text,
+    target_files,
+)
 from engine.logbook.lines import LineIndex
 from engine.logbook.observatory import FileModel, Observatory, Site
 from engine.logbook.targets import Programme, Target
 from engine.logbook.text import nearest, shown
 
 Model = TypeVar("Model", bound=FileModel)
+Reader = Callable[[Path], str]
 
 # A file with more faults than this is no logbook.
 MOST_FAULTS = 200
@@ -107,14 +116,22 @@ class _Entry:
         self.file.note((*self.key, *where), what)
 
 
-def load_logbook(folder: Path) -> Logbook:
-    """Return the logbook in a folder; LogbookFaults with all that is wrong in any of its files."""
-    head, observatory, wheel = _read_observatory(folder / "observatory.toml")
+def load_logbook(folder: Path, instead: Mapping[Path, bytes] | None = None) -> Logbook:
+    """Return the logbook in a folder; LogbookFaults with all that is wrong in any of its files.
+
+    ``instead`` holds what files of targets would hold after a change that is not made yet.
+    """
+    changed = instead or {}
+
+    def read(path: Path) -> str:
+        return as_text(changed[path]) if path in changed else read_text(path)
+
+    head, observatory, wheel = _read_observatory(folder / "observatory.toml", read)
     faults: list[Fault] = []
     files: list[_File] = [head]
     entries: list[_Entry] = []
-    for path in target_files(folder, faults):
-        file, found = _read_table(path) if _is_table(path) else _read_toml(path)
+    for path in target_files(folder, faults, changed):
+        file, found = _read_table(path, read) if _is_table(path) else _read_toml(path, read)
         files.append(file)
         entries += found
     programmes = [each for each in entries if each.key[0] == "programme"]
@@ -137,10 +154,10 @@ def _is_table(path: Path) -> bool:
     return path.suffix.lower() in TABLE_ENDINGS
 
 
-def _open_toml(path: Path) -> _File:
+def _open_toml(path: Path, read: Reader) -> _File:
     """Return a TOML file with its values, or with the fault that kept it from being read."""
     try:
-        text = read_text(path)
+        text = read(path)
         return _File(path, parse_toml(text), LineIndex(text))
     except Unreadable as why:
         file = _File(path)
@@ -161,9 +178,11 @@ def _validated(model: type[Model], values: object, file: _File, key: KeyPath = (
         return None
 
 
-def _read_observatory(path: Path) -> tuple[_File, Observatory | None, tuple[str, ...]]:
+def _read_observatory(
+    path: Path, read: Reader
+) -> tuple[_File, Observatory | None, tuple[str, ...]]:
     """Return the observatory, and the names in its wheel even if something else is wrong."""
-    file = _open_toml(path)
+    file = _open_toml(path, read)
     if not isinstance(file.values, dict):
         return file, None, ()
     observatory = _validated(Observatory, file.values, file)
@@ -188,9 +207,9 @@ def _check_zone(file: _File, site: Site) -> None:
     file.note(("site", "timezone"), what)
 
 
-def _read_toml(path: Path) -> tuple[_File, list[_Entry]]:
+def _read_toml(path: Path, read: Reader) -> tuple[_File, list[_Entry]]:
     """Return the entries of one TOML file of targets."""
-    file = _open_toml(path)
+    file = _open_toml(path, read)
     known = ["programme", "target"]
     entries: list[_Entry] = []
     for name, items in (file.values if isinstance(file.values, dict) else {}).items():
@@ -203,12 +222,12 @@ def _read_toml(path: Path) -> tuple[_File, list[_Entry]]:
     return file, entries
 
 
-def _read_table(path: Path) -> tuple[_File, list[_Entry]]:
+def _read_table(path: Path, read: Reader) -> tuple[_File, list[_Entry]]:
     """Return the entries of one table of targets, one a row."""
     from engine.logbook.tables import read_table
 
     try:
-        table = read_table(read_text(path), path.suffix.lower())
+        table = read_table(read(path), path.suffix.lower())
     except Unreadable as why:
         file = _File(path)
         file.refuse(why)

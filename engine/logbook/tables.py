@@ -176,7 +176,7 @@ def _value(key: str, cell: Any, factor: float) -> Any:
     if key in _TEXT_KEYS:
         return str(cell).strip() or None if cell is not None else None
     if isinstance(cell, str):
-        return _as_wanted(key, _from_text(key, cell.strip()))
+        return _as_wanted(key, value_from_text(key, cell.strip()))
     if isinstance(cell, float | int) and not isinstance(cell, bool) and factor != 1.0:
         cell = cell * factor
     return _as_wanted(key, cell)
@@ -191,7 +191,8 @@ def _as_wanted(key: str, value: Any) -> Any:
     return value
 
 
-def _from_text(key: str, cell: str) -> Any:
+def value_from_text(key: str, cell: str) -> Any:
+    """Return what the text of a cell stands for, as TOML would give it; None for nothing."""
     if not cell:
         return None
     if key in _YES_OR_NO and cell.casefold() in ("true", "false"):
