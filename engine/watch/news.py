@@ -5,7 +5,7 @@ from __future__ import annotations
 from zoneinfo import ZoneInfo
 
 from engine.night import Night, Plans
-from engine.order import Order
+from engine.order import Order, Visit
 from engine.times import MINUTES_PER_DAY, SECONDS_PER_DAY, datetime_from_mjd
 from engine.watch.plan import Plan
 
@@ -19,10 +19,13 @@ SAID_AT_MOST = 6
 COSTS_NOTHING = 0.01
 
 
-def news(before: Plan, after: Plan, plans: Plans) -> tuple[str, ...]:
-    """Return what an observer would want to know about a new plan, the most important first."""
+def news(before: Plan, after: Plan, plans: Plans, under_way: str | None = None) -> tuple[str, ...]:
+    """Return what an observer would want to know about a new plan, the most important first.
+
+    ``under_way`` is the target that is being observed: what is next comes after it.
+    """
     said = [
-        *_next_visit(before.order, after.order),
+        *_next_visit(before.order, after.order, under_way),
         *_seeing(before, after),
         *_softness(before, after, plans),
         *_left_and_entered(before.order, after.order),
@@ -41,14 +44,19 @@ def cost_of(order: Order, free: Order) -> tuple[str, ...]:
     return (f"your choice costs {share:.0%} of what the rest of the night would bring",)
 
 
-def _next_visit(before: Order, after: Order) -> list[str]:
-    ahead = [visit.target for visit in before.visits if visit.end_mjd > after.from_mjd]
-    new = after.next
-    if new is None:
+def _next_visit(before: Order, after: Order, under_way: str | None) -> list[str]:
+    ahead = _to_come(before, after.from_mjd, under_way)
+    to_come = _to_come(after, after.from_mjd, under_way)
+    if not to_come:
         return ["nothing more can be observed tonight"] if ahead else []
-    if ahead and new.target != ahead[0]:
-        return [f"next {new.target} instead of {ahead[0]}: {new.reason}"]
+    if ahead and to_come[0].target != ahead[0].target:
+        return [f"next {to_come[0].target} instead of {ahead[0].target}: {to_come[0].reason}"]
     return []
+
+
+def _to_come(order: Order, from_mjd: float, under_way: str | None) -> list[Visit]:
+    """Return the visits of an order after the one that is under way."""
+    return [v for v in order.visits if v.end_mjd > from_mjd and v.target != under_way]
 
 
 def _seeing(before: Plan, after: Plan) -> list[str]:

@@ -118,7 +118,7 @@ class Planner:
             return Plan(now_mjd, wish.because, self.night, forecast, outlook, order)
         order = ordered(problem, before.order, wish.work)
         plan = Plan(now_mjd, wish.because, self.night, forecast, outlook, order)
-        said = news(before, plan, problem.plans)
+        said = news(before, plan, problem.plans, _under_way(state))
         if wish.decision is not None:
             free = self.problem(state, outlook, now_mjd, without(rules, wish.decision))
             said = (*cost_of(order, ordered(free, before.order, wish.work)), *said)
@@ -133,7 +133,7 @@ class Planner:
         better = replace(
             plan, made_mjd=now_mjd, because="a better order was found", order=order, news=()
         )
-        return replace(better, news=news(plan, better, problem.plans))
+        return replace(better, news=news(plan, better, problem.plans, _under_way(state)))
 
     def _outlook_for(
         self, forecast: SeeingForecast, now_mjd: float, before: Plan | None
@@ -168,6 +168,11 @@ class Planner:
             travel=self._travel,
             tonight=state.kept,
         )
+
+
+def _under_way(state: NightState) -> str | None:
+    """Return the target of the run that goes on; None when none does."""
+    return state.run.target if state.run else None
 
 
 def ordered(problem: Problem, in_force: Order, work: Work) -> Order:

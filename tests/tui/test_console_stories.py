@@ -2,12 +2,14 @@
 
 from __future__ import annotations
 
+import shutil
 from pathlib import Path
 
 import pytest
 
 from engine.clock import HandClock
 from engine.log import Amendment, Conditions, Note, read_log
+from engine.logbook import sample_logbook
 from engine.rehearsal import NIGHT
 from engine.watch import Stage
 from tests.tui.trial import Trial, a_logbook, after_dusk_mjd, play
@@ -346,5 +348,40 @@ def test_a_plan_that_fails_is_told_and_survived(
         assert trial.watch.plan is order
         await trial.press("space")
         assert trial.watch.stage is Stage.MOVING
+
+    play(folder, story)
+
+
+@pytest.mark.parametrize("size", [(80, 24), (120, 40), (160, 50)])
+def test_nothing_is_cut_short(tmp_path: Path, size: tuple[int, int]) -> None:
+    """With the sample's long names and plans no panel, row or foot ends in an ellipsis."""
+    folder = tmp_path / "sample"
+    shutil.copytree(sample_logbook(), folder)
+
+    async def story(trial: Trial) -> None:
+        for _ in range(5):
+            await trial.press("tab")
+            for _ in range(3):
+                await trial.press("j")
+                cut = [each for each in trial.screen().splitlines() if "…" in each]
+                assert not cut
+
+    play(folder, story, size=size)
+
+
+def test_what_is_next_comes_after_the_run_that_goes_on(folder: Path) -> None:
+    """While a target is exposed, another place of it in the order is no news."""
+
+    async def story(trial: Trial) -> None:
+        await start(trial)
+        assert trial.watch.state.exposing is not None
+        here = trial.watch.state.exposing.target
+        for value in ("1.1", "4.5", "1.1"):
+            await trial.press("z")
+            await trial.type(value)
+            assert trial.watch.stage is Stage.EXPOSING
+            said = [each.text for each in trial.console.notices]
+            assert not any(f"next {here}" in each for each in said)
+            assert not any(f"instead of {here}" in each for each in said)
 
     play(folder, story)

@@ -9,6 +9,7 @@ import numpy as np
 import pytest
 
 from tests.tui.trial import Trial, a_logbook, play
+from tui.console.foot import foot_keys, foot_line
 from tui.console.panels.local import hhmm, whole_hours
 from tui.console.views import NIGHT, VIEWS
 from tui.console.views.classes import CLASSES
@@ -26,6 +27,21 @@ def test_every_view_of_the_table_is_there() -> None:
     """The light table and the classes name the same views, each with a key of its own."""
     assert [each.name for each in VIEWS if each.name != NIGHT] == list(CLASSES)
     assert len({each.key for each in VIEWS}) == len(VIEWS)
+
+
+@pytest.mark.parametrize("width", range(10, 200, 7))
+def test_the_foot_holds_whole_keys(width: int) -> None:
+    """What does not fit whole is left out, and the view's own meaning of a key replaces another."""
+    keys = foot_keys({"go_on": "accept"}, [("tab", "turn")])
+    assert [word for key, word in keys if key == "tab"] == ["turn"]
+    spans = foot_line(keys, width)
+    assert sum(len(span.text) for span in spans) <= width
+    shown = [
+        (key.text.strip(), word.text.strip())
+        for key, word in zip(spans[::2], spans[1::2], strict=True)
+    ]
+    assert [each for each in keys if each in shown] == shown
+    assert width < 40 or shown[0] == ("space", "accept")
 
 
 @pytest.mark.parametrize("size", SIZES)

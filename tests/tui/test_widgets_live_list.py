@@ -214,14 +214,18 @@ def test_the_cursor_shows_without_colour() -> None:
     play(story)
 
 
-def test_a_row_that_goes_leaves_the_cursor_on_another() -> None:
-    """With its key gone the cursor is on the first row; with no rows, on none."""
+def test_a_row_that_goes_leaves_the_cursor_in_its_place() -> None:
+    """The next row below takes the cursor, else the last above; with no rows there is none."""
 
     async def story(app: Listing, pilot: Pilot[None]) -> None:
-        app.list.set_rows(many())
-        app.list.move_to("k7")
-        app.list.set_rows([heading("left"), row("k1"), row("k2")])
-        assert app.list.key == "k1"
+        app.list.set_rows([heading("all"), row("a"), row("b"), row("c"), row("d")])
+        app.list.move_to("b")
+        app.list.set_rows([heading("all"), row("a"), row("d"), row("c")])
+        assert app.list.key == "c"
+        app.list.set_rows([heading("all"), row("a"), row("d")])
+        assert app.list.key == "d"
+        app.list.set_rows([heading("all"), row("a")])
+        assert app.list.key == "a"
         app.list.set_rows([])
         app.list.move(1)
         assert app.list.key is None

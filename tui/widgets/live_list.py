@@ -61,12 +61,22 @@ class LiveList(Sheet):
         self._columns = tuple(columns)
 
     def set_rows(self, rows: Sequence[Row]) -> None:
-        """Show other rows; the cursor stays on its key if that is still there."""
+        """Show other rows; the cursor stays on its key, or in its place where that is gone."""
+        before = [row.key for row in self._rows if not row.heading]
         self._rows = list(rows)
         if self._place() is None:
-            first = next((row.key for row in self._rows if not row.heading), None)
-            self._key = first
+            self._key = self._nearest_left(before)
         self._paint()
+
+    def _nearest_left(self, before: Sequence[str]) -> str | None:
+        """Return the next row below the cursor's that is still there, else the last above it."""
+        keys = [row.key for row in self._rows if not row.heading]
+        at = before.index(self._key) if self._key in before else 0
+        left = set(keys)
+        for key in (*before[at:], *reversed(before[:at])):
+            if key in left:
+                return key
+        return keys[0] if keys else None
 
     def move_to(self, key: str) -> None:
         """Put the cursor on a row by its key, if it is there."""

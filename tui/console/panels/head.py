@@ -6,7 +6,7 @@ from engine.positions import sidereal_time_h
 from engine.times import datetime_from_mjd
 from engine.watch import Watch
 from tui.console.panels.local import ago, local
-from tui.paint.spans import Line, Span, line, spread
+from tui.paint.spans import Line, Span, line, phrases, spread, width_of
 
 SUN_LIGHT = ((-50.0 / 60.0, "day"), (-6.0, "civil"), (-12.0, "nautical"), (-18.0, "astronomical"))
 
@@ -30,16 +30,23 @@ def paint_head(watch: Watch, width: int) -> list[Line]:
         Span(site.name, "title"),
         Span(f"  night of {watch.planner.night.almanac.night.isoformat()}", "dim"),
     )
-    return [spread(place, clock, width), spread(_sky(watch, now_mjd), _disk(watch), width)]
+    disk = _disk(watch)
+    sky = _sky(watch, now_mjd, width - width_of(disk) - 1)
+    return [spread(place, clock, width), spread(sky, disk, width)]
 
 
-def _sky(watch: Watch, now_mjd: float) -> Line:
+def _sky(watch: Watch, now_mjd: float, width: int) -> Line:
     night = watch.planner.night
     at = night.index_at(now_mjd)
     moon_deg = float(night.moon.altitude_deg[at])
     lit = f"{night.moon.illumination[at]:.0%}"
     moon = f"Moon {moon_deg:+.0f}° {lit}" if moon_deg > 0 else f"Moon down {lit}"
-    return (*_seeing(watch), Span("   "), Span(moon, "moon"), Span("   "), _sun(watch, at))
+    return phrases(
+        width,
+        _seeing(watch),
+        line(Span(f"   {moon}", "moon")),
+        line(Span("   "), _sun(watch, at)),
+    )
 
 
 def _seeing(watch: Watch) -> Line:

@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 from engine.log import Event, title
+from engine.order import Visit
 from engine.seeing import SeeingMeasurement, summary
 from engine.watch import Watch
 from tui.console.panels.local import ahead, arcsec, hhmm, local
-from tui.paint.spans import Line, Span, cut, line, wrapped
+from tui.paint.spans import Line, Span, cut, line, width_of, wrapped
 
 # What the console writes by itself and what every exposure says twice: not worth a line here.
 NOT_SHOWN = ("exposure_start", "order")
@@ -19,19 +20,25 @@ def paint_order(watch: Watch, width: int, height: int) -> list[Line]:
         return []
     lines = [line(Span(" the order ahead", "title"), Span(f"  {watch.plan.because}", "dim"))]
     for number, visit in enumerate(ahead(watch), start=1):
-        what = " ".join(f"{e.filter}×{e.count}" for e in visit.exposures)
-        lines.append(
-            line(
-                Span(f"{number:>3} ", "accent"),
-                Span(hhmm(watch, visit.start_mjd), "text"),
-                Span(f"  {visit.target:<12}", "strong"),
-                Span(f" {arcsec(visit.image_size_arcsec)} ", "text"),
-                Span(f"{what:<15} ", "dim"),
-                Span(visit.reason, "dim"),
-            )
-        )
+        lines += _visit_lines(watch, number, visit, width)
     lines += left_out_lines(watch, width)
     return [cut(each, width) for each in lines[:height]]
+
+
+def _visit_lines(watch: Watch, number: int, visit: Visit, width: int) -> list[Line]:
+    """Return a visit in one line, without its filters if need be; its reason is never cut."""
+    what = " ".join(f"{e.filter}×{e.count}" for e in visit.exposures)
+    head = line(
+        Span(f"{number:>3} ", "accent"),
+        Span(hhmm(watch, visit.start_mjd), "text"),
+        Span(f"  {visit.target:<12}", "strong"),
+        Span(f" {arcsec(visit.image_size_arcsec)} ", "text"),
+    )
+    filters, why = line(Span(f"{what:<15} ", "dim")), line(Span(visit.reason, "dim"))
+    for shown in ((*head, *filters, *why), (*head, *why)):
+        if width_of(shown) <= width:
+            return [shown]
+    return [(*head, *filters), *wrapped(visit.reason, width, "dim", REASON_LINES, indent=11)]
 
 
 def left_out_lines(watch: Watch, width: int) -> list[Line]:

@@ -13,7 +13,7 @@ from tui.console.panels.local import arcsec, hhmm
 from tui.paint.canvas import Stroke
 from tui.paint.chart import Chart, Curve, paint_chart
 from tui.paint.figures import bar, pips
-from tui.paint.spans import Line, Span, cut, line
+from tui.paint.spans import Line, Span, line, phrases
 
 LEAST_CHART_ROWS, MOST_CHART_ROWS = 4, 14
 TERM_BAR = 11
@@ -24,36 +24,44 @@ def paint_target(watch: Watch, name: str | None, width: int, height: int) -> lis
     now = next((each for each in watch.targets_now() if each.target.name == name), None)
     if now is None:
         return [line(Span(" no target is chosen", "dim"))]
-    head = _head(watch, now)
-    tail = [*_plan(now), *_terms(watch, now), *_reach(watch, now)]
+    head = _head(watch, now, width)
+    tail = [*_plan(now, width), *_terms(watch, now, width), *_reach(watch, now, width)]
     rows = min(height - len(head) - len(tail), MOST_CHART_ROWS)
     chart = _chart(watch, now, width, rows) if rows >= LEAST_CHART_ROWS else []
-    return [cut(each, width) for each in [*head, *chart, *tail]][:height]
+    return [*head, *chart, *tail][:height]
 
 
-def _head(watch: Watch, now: TargetNow) -> list[Line]:
+def _head(watch: Watch, now: TargetNow, width: int) -> list[Line]:
     target = now.target
-    where = (
-        f" alt {now.apparent_altitude_deg:.1f}°  az {now.azimuth_deg:.0f}°  "
-        f"HA {now.hour_angle_h:+.2f}h  airmass {_number(now.airmass)}  "
-        f"parallactic {now.parallactic_angle_deg:+.0f}°"
-    )
-    says = (
-        Span(" may be observed", "good")
-        if now.observable
-        else Span(" " + "; ".join(reason.sentence for reason in now.reasons[:2]), "bad")
-    )
-    moon = f"Moon {now.moon_separation_deg:.0f}° away"
+    magnitude = f"  mag {target.magnitude:g}" if target.magnitude is not None else ""
     return [
-        line(
-            Span(f" {target.name}", "strong"),
-            Span(f"  {target.programme}", "text"),
-            Span(f"  priority {target.priority}", "dim"),
-            Span(f"  mag {target.magnitude:g}" if target.magnitude is not None else "", "dim"),
+        phrases(
+            width,
+            line(Span(f" {target.name}", "strong")),
+            line(Span(f"  {target.programme}", "text")),
+            line(Span(f"  priority {target.priority}", "dim")),
+            line(Span(magnitude, "dim")),
         ),
-        line(Span(where, "text")),
-        line(says, Span(f"   {moon}", "moon"), Span(_best(watch, now), "dim")),
+        phrases(
+            width,
+            line(Span(f" alt {now.apparent_altitude_deg:.1f}°")),
+            line(Span(f"  az {now.azimuth_deg:.0f}°")),
+            line(Span(f"  HA {now.hour_angle_h:+.2f}h")),
+            line(Span(f"  airmass {_number(now.airmass)}")),
+            line(Span(f"  parallactic {now.parallactic_angle_deg:+.0f}°")),
+        ),
+        _may_be_observed(watch, now, width),
     ]
+
+
+def _may_be_observed(watch: Watch, now: TargetNow, width: int) -> Line:
+    moon = line(Span(f"   Moon {now.moon_separation_deg:.0f}° away", "moon"))
+    best = line(Span(_best(watch, now), "dim"))
+    if now.observable:
+        return phrases(width, line(Span(" may be observed", "good")), moon, best)
+    first, *more = (reason.sentence for reason in now.reasons)
+    also = [line(Span(f"; {each}", "bad")) for each in more]
+    return phrases(width, line(Span(f" {first}", "bad")), *also[:1], moon, best)
 
 
 def _best(watch: Watch, now: TargetNow) -> str:
@@ -66,26 +74,29 @@ def _best(watch: Watch, now: TargetNow) -> str:
     return f"   best airmass {usable[at]:.2f} at {hhmm(watch, float(night.mjd[at]))}"
 
 
-def _plan(now: TargetNow) -> list[Line]:
-    return [_plan_line(now, each) for each in now.filters]
+def _plan(now: TargetNow, width: int) -> list[Line]:
+    return [_plan_line(now, each, width) for each in now.filters]
 
 
-def _plan_line(now: TargetNow, one: FilterNow) -> Line:
+def _plan_line(now: TargetNow, one: FilterNow, width: int) -> Line:
     limit = now.target.maximum_image_size_arcsec
     plan = one.progress
-    return line(
-        Span(f" {plan.filter:<3}", "title"),
-        Span(f"{plan.seconds:>4g} s  ", "text"),
-        Span(f"{pips(plan.done, plan.planned):<12}", "good"),
-        Span(f" {plan.done}/{plan.planned}", "text"),
-        Span(f"  depth {plan.credit:.1f}", "dim"),
-        Span(f"   {arcsec(one.image_size_arcsec)}", "bad" if one.soft else "strong"),
-        Span(f" limit {limit:g}" if limit else "", "dim"),
-        Span(f"   sky {_number(one.sky_mag_arcsec2, 1)}", "dim"),
+    return phrases(
+        width,
+        line(
+            Span(f" {plan.filter:<3}", "title"),
+            Span(f"{plan.seconds:>4g} s  ", "text"),
+            Span(f"{pips(plan.done, plan.planned):<12}", "good"),
+            Span(f" {plan.done}/{plan.planned}", "text"),
+        ),
+        line(Span(f"  depth {plan.credit:.1f}", "dim")),
+        line(Span(f"   {arcsec(one.image_size_arcsec)}", "bad" if one.soft else "strong")),
+        line(Span(f" limit {limit:g}" if limit else "", "dim")),
+        line(Span(f"   sky {_number(one.sky_mag_arcsec2, 1)}", "dim")),
     )
 
 
-def _terms(watch: Watch, now: TargetNow) -> list[Line]:
+def _terms(watch: Watch, now: TargetNow, width: int) -> list[Line]:
     """Return the blurs of the first filter still needed, as bars on one scale."""
     if not math.isfinite(now.airmass) or watch.plan is None:
         return []
@@ -104,12 +115,13 @@ def _terms(watch: Watch, now: TargetNow) -> list[Line]:
     blame = image.blame
     without = getattr(image.without, blame)
     rows = [
-        line(
-            Span(f" what makes {first.progress.filter} {arcsec(image.size_arcsec)}", "dim"),
-            Span(f", {image.size_px:.1f} px", "warn" if image.undersampled else "dim"),
-            Span(" (undersampled)" if image.undersampled else "", "warn"),
-            Span(f"; without {blame} {arcsec(without)}", "dim"),
-            Span(f", elongated {image.elongation:.2f}" if image.elongation > 1.02 else "", "dim"),
+        phrases(
+            width,
+            line(Span(f" what makes {first.progress.filter} {arcsec(image.size_arcsec)}", "dim")),
+            line(Span(f", {image.size_px:.1f} px", "warn" if image.undersampled else "dim")),
+            line(Span(" (undersampled)" if image.undersampled else "", "warn")),
+            line(Span(f"; without {blame} {arcsec(without)}", "dim")),
+            line(Span(f", {image.elongation:.2f} long" if image.elongation > 1.02 else "", "dim")),
         )
     ]
     for left, right in zip(pairs[::2], pairs[1::2], strict=True):
@@ -124,7 +136,7 @@ def _terms(watch: Watch, now: TargetNow) -> list[Line]:
     return rows
 
 
-def _reach(watch: Watch, now: TargetNow) -> list[Line]:
+def _reach(watch: Watch, now: TargetNow, width: int) -> list[Line]:
     """Return what an exposure in the first filter still needed will reach."""
     if not math.isfinite(now.airmass) or watch.plan is None:
         return []
@@ -133,25 +145,27 @@ def _reach(watch: Watch, now: TargetNow) -> list[Line]:
     plan, observatory = one.progress, watch.planner.logbook.observatory
     found = reach(observatory, watch.planner.model, scene, plan.seconds, now.target.magnitude)
     star = (
-        f", S/N {found.signal_to_noise:.0f} at mag {found.magnitude:g}"
+        f"  S/N {found.signal_to_noise:.0f} at mag {found.magnitude:g}"
         if math.isfinite(found.magnitude)
         else ""
     )
     parts = found.parts
+    saturates = f"  saturates in {found.saturation_s:.0f} s" if found.saturates else ""
     return [
-        line(
-            Span(f" {plan.filter} {plan.seconds:g} s reaches", "dim"),
-            Span(f" mag {found.limiting_magnitude:.1f}", "strong"),
-            Span(f"{star}", "text"),
-            Span(f"  saturates in {found.saturation_s:.0f} s" if found.saturates else "", "bad"),
-        ),
-        line(
-            Span(f" sky-limited from {found.sky_limited_s:.0f} s", "dim"),
-            Span(
-                f"; as {parts.count} × {parts.seconds:.0f} s, read noise "
-                f"+{parts.read_noise_share:.0%}",
-                "dim",
+        phrases(
+            width,
+            line(
+                Span(f" {plan.filter} {plan.seconds:g} s reaches", "dim"),
+                Span(f" mag {found.limiting_magnitude:.1f}", "strong"),
             ),
+            line(Span(saturates, "bad")),
+            line(Span(star)),
+        ),
+        phrases(
+            width,
+            line(Span(f" sky-limited from {found.sky_limited_s:.0f} s", "dim")),
+            line(Span(f"; as {parts.count} × {parts.seconds:.0f} s", "dim")),
+            line(Span(f", read noise +{parts.read_noise_share:.0%}", "dim")),
         ),
     ]
 

@@ -11,6 +11,7 @@ from tui.paint.figures import pips
 from tui.paint.spans import Span
 from tui.widgets import Column, Row
 
+DONE_WIDTH, WHY_WIDTH = 17, 22
 COLUMNS = (
     Column("", 2),
     Column("target", 14),
@@ -20,8 +21,8 @@ COLUMNS = (
     Column("HA", 6, right=True, rank=4),
     Column("FWHM", 6, right=True),
     Column("limit", 5, right=True, rank=5),
-    Column("done", 17, rank=2),
-    Column("", 22, rank=6),
+    Column("done", DONE_WIDTH, rank=2),
+    Column("", WHY_WIDTH, rank=6),
 )
 # A predicted size this near its limit is shown as a warning.
 NEAR_LIMIT = 0.9
@@ -78,13 +79,7 @@ def _row(watch: Watch, now: TargetNow, begins: tuple[int, float] | None) -> Row:
             Span(f"{now.hour_angle_h:+.1f}h", role),
             _size(now, limit, role),
             Span(f"{limit:.1f}" if limit else "", "dim"),
-            Span(
-                " ".join(
-                    f"{e.progress.filter}{pips(e.progress.done, e.progress.planned, 5)}"
-                    for e in now.filters
-                ),
-                role,
-            ),
+            Span(_done(now), role),
             Span(_why(now), "good" if now.observable else "dim"),
         ),
     )
@@ -110,7 +105,21 @@ def _size(now: TargetNow, limit: float | None, role: str) -> Span:
     return Span(f"{size:.2f}", role)
 
 
+def _done(now: TargetNow) -> str:
+    """Return what is done of each filter's plan; of all together where that is too long."""
+    plans = [each.progress for each in now.filters]
+    each_one = " ".join(f"{plan.filter}{pips(plan.done, plan.planned, 5)}" for plan in plans)
+    if len(each_one) <= DONE_WIDTH:
+        return each_one
+    done, planned = sum(plan.done for plan in plans), sum(plan.planned for plan in plans)
+    return f"{done}/{planned} in {len(plans)} filters"
+
+
 def _why(now: TargetNow) -> str:
     if now.observable:
         return f"priority {now.target.priority}"
-    return ", ".join(reason.label for reason in now.reasons[:3])
+    said = now.reasons[0].label
+    for reason in now.reasons[1:]:
+        if len(said) + len(reason.label) + 2 <= WHY_WIDTH:
+            said += f", {reason.label}"
+    return said
