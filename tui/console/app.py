@@ -175,6 +175,9 @@ class Console(App[None]):
 
     def paint(self) -> None:
         """Show everything as it is now; only what changed is sent."""
+        # When the console is being left its sheets may be gone before its timer.
+        if not (self.screen_stack and self.screen_stack[0].children):
+            return
         if self._painting is not None:
             self._clockwork.guarded(self._painting.paint)
         self._paint_notices()
@@ -185,7 +188,7 @@ class Console(App[None]):
         self._paint_notices()
 
     def _paint_notices(self) -> None:
-        if not self.screen_stack:
+        if not (self.screen_stack and self.screen_stack[0].children):
             return
         sheet = self.sheet("notices")
         rows = max(sheet.size.height, 1)
