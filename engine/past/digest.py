@@ -254,18 +254,21 @@ def _texts(
 def _seeing_table(
     stands: Sequence[Event], state: NightState, filters: list[str], zone: ZoneInfo | None
 ) -> bytes:
-    seen_mjd = {each.n: each.mjd for each in state.seeing}
+    entered = [
+        event
+        for event in stands
+        if isinstance(event, Conditions) and event.seeing_arcsec is not None
+    ]
     rows = [
         (
-            seen_mjd[event.n],
-            event.seeing_arcsec,
-            _local_h(seen_mjd[event.n], zone),
+            seen.mjd,
+            seen.zenith_arcsec,
+            _local_h(seen.mjd, zone),
             filters.index(event.filter),
             math.nan if event.airmass is None else event.airmass,
             math.nan if event.measured_fwhm_arcsec is None else event.measured_fwhm_arcsec,
         )
-        for event in stands
-        if isinstance(event, Conditions) and event.seeing_arcsec is not None
+        for event, seen in zip(entered, state.seeing, strict=True)
     ]
     return np.array(rows, dtype=np.float64).tobytes()
 
