@@ -141,6 +141,19 @@ COMMANDS: tuple[Command, ...] = (
         ),
     ),
     Command(
+        "report",
+        "print one past night: what was done, how good it was, where the time went",
+        takes_night=True,
+        options=(
+            Option(
+                "--save",
+                "write it into a new file instead; the ending says how: .md .html .json for the "
+                "report, .csv .ecsv .vot for its exposures; may be repeated",
+                {"type": Path, "metavar": "FILE", "action": "append", "default": []},
+            ),
+        ),
+    ),
+    Command(
         "past",
         "print past nights: what was done, how good it was, what remains",
         options=(
