@@ -122,8 +122,24 @@ def _timeline(report: NightReport, edges: tuple[float, float]) -> Chart:
         chart.block(
             each.start_mjd, each.end_mjd, names.index(each.target), kind, _said(report, each)
         )
+    for begin, end, row, name in _same_filter(report.exposures, names):
+        chart.write_on(begin, end, row, name)
     chart.legend(filters, marks=False)
     return chart
+
+
+def _same_filter(
+    exposures: Sequence[Exposure], names: list[str]
+) -> list[tuple[float, float, int, str]]:
+    """Return the stretches of one target in one filter: from, to (UTC MJD), row, filter."""
+    found: list[tuple[float, float, int, str]] = []
+    for each in exposures:
+        row = names.index(each.target)
+        if found and found[-1][2:] == (row, each.filter):
+            found[-1] = (found[-1][0], each.end_mjd, row, each.filter)
+        else:
+            found.append((each.start_mjd, each.end_mjd, row, each.filter))
+    return found
 
 
 def _said(report: NightReport, each: Exposure) -> str:
@@ -143,7 +159,7 @@ def _altitude(report: NightReport, edges: tuple[float, float]) -> Chart:
     chart.scale("altitude, deg", [0, 30, 60, 90])
     air = Air.standard(report.site.elevation_m) if report.site else None
     model = report.site.airmass_model if report.site else "pickering"
-    heights = np.array([15.0, 20.0, 30.0, 45.0, 90.0])
+    heights = np.array([20.0, 30.0, 45.0, 90.0])
     masses = (
         airmass(apparent_altitude_deg(heights, air), model, air)
         if air
@@ -223,8 +239,7 @@ def _images(report: NightReport, edges: tuple[float, float]) -> Chart:
     chart = Chart(
         "images",
         "Image size predicted and measured",
-        "Size of star images, FWHM: marks by filter as predicted, a ring around a point where it "
-        "was measured.",
+        "Size of star images, FWHM: marks by filter as predicted, rings as measured.",
         edges,
         (0.0, min(max(sizes) * 1.08, 2.5 * float(np.median(sizes)))),
     )

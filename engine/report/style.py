@@ -22,7 +22,10 @@ th:last-child, td:last-child { padding-right: 0; }
 .short table { width: auto; }
 .short td.n, .short th.n { padding-left: 26px; }
 .time tbody tr:last-child td { border-top: 1px solid #8b909c; border-bottom: 0; font-weight: 600; }
-.time td:last-child { color: #50545e; padding-left: 14px; }
+.time td:last-child { color: #50545e; }
+td.n + td:not(.n), th.n + th:not(.n) { padding-left: 16px; }
+.conditions table, .lost table, .refused table { width: auto; min-width: 55%; }
+.conditions td.n, .conditions th.n { padding-left: 26px; }
 .time td:first-child { white-space: pre; }
 details { margin-top: 8px; } summary { cursor: pointer; color: #50545e; }
 svg text { font: 10.5px "DejaVu Sans", Verdana, sans-serif; fill: #3a3e47; }
@@ -37,6 +40,7 @@ svg .label { fill: #50545e; }
 .f2 { fill: #c0392b; stroke: #c0392b; } .f3 { fill: #6b4a3a; stroke: #6b4a3a; }
 .f4 { fill: #8e44ad; stroke: #8e44ad; } .f5 { fill: #16181d; stroke: #16181d; }
 rect.f0, rect.f1, rect.f2, rect.f3, rect.f4, rect.f5 { stroke-width: .5; }
+svg .on { font-size: 8.5px; fill: #fff; }
 .mark { stroke-width: 1.1; fill-opacity: .55; }
 .mark.hollow, rect.hollow { fill: #fff; }
 .mark.ring { fill: none; stroke: #16181d; stroke-width: .9; }
@@ -46,7 +50,7 @@ rect.f0, rect.f1, rect.f2, rect.f3, rect.f4, rect.f5 { stroke-width: .5; }
 @page { size: A4; margin: 15mm 14mm; }
 @media print {
   body { font-size: 10.5pt; } main { max-width: none; padding: 0; }
-  h2 { margin-top: 16pt; break-after: avoid; }
+  h2 { margin-top: 16pt; break-after: avoid; } section > p { break-after: avoid; }
   figure, tr { break-inside: avoid; }
   table { font-size: 8pt; } thead { display: table-header-group; }
   details:not([open]) > table { display: none; } summary { display: none; }

@@ -84,6 +84,16 @@ class Chart:
             f'width="{width:.2f}" height="{height - 4:.1f}">{_titled(about)}</rect>'
         )
 
+    def write_on(self, begin: float, end: float, row: int, text: str) -> None:
+        """Write a short word on the bars of a row, if there is room between two moments."""
+        if self.at_x(end) - self.at_x(begin) > 6.5 * len(text) + 3:
+            x = 0.5 * (self.at_x(begin) + self.at_x(end))
+            y = TOP + (row + 0.5) * self._row_height + 3.2
+            self._add(
+                f'<text class="on" x="{x:.1f}" y="{y:.1f}" text-anchor="middle">'
+                f"{escaped(text)}</text>"
+            )
+
     def rows(self, labels: Sequence[str]) -> None:
         """Write the rows' names on the left, and rule between them."""
         for row, label in enumerate(labels):

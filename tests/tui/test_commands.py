@@ -143,6 +143,7 @@ def test_exposure_json(folder: Path, capsys: pytest.CaptureFixture[str]) -> None
         (("exposure", "--target", "M 67", "--filter", "U", "--at", AT), 2, "B, V, I"),
         (("order", "--night", NIGHT, "--at", "2027-03-20T12:00:00Z"), 1, "not in the night of"),
         (("follow", "--json", "--night", NIGHT), 1, "nobody has opened this night"),
+        (("report",), 1, "has no night yet"),
     ],
 )
 def test_no_is_an_answer(
@@ -247,3 +248,24 @@ def test_a_rehearsal_replaces_no_file(capsys: pytest.CaptureFixture[str], tmp_pa
     assert (tmp_path / "targets.toml").read_text() == "# mine\n"
     assert main(["demo", "--unwatched", "--into", str(tmp_path / "targets.toml")]) == 2
     assert "expected a folder to write to" in capsys.readouterr().err
+
+
+def test_a_report_is_printed_and_written(
+    folder: Path, capsys: pytest.CaptureFixture[str], tmp_path: Path
+) -> None:
+    """The last night unless another is asked for; a file for every ending; status 1 for none."""
+    for name in ("2027-03-10.toml", "2027-03-12.toml"):
+        shutil.copy(sample_logbook() / name, folder)
+    words = ["report", "--logbook", str(folder)]
+    assert main(words) == 0
+    assert "night of 2027-03-12" in capsys.readouterr().out
+    status, told = run_json(capsys, *words, "--night", "2027-03-10")
+    assert (status, told["night"]) == (0, "2027-03-10")
+    assert sum(each["good"] for each in told["totals"]) > 100
+    pages = [tmp_path / f"night.{ending}" for ending in ("html", "vot")]
+    assert main([*words, *(f"--save={path}" for path in pages)]) == 0
+    assert all(path.stat().st_size > 10_000 for path in pages)
+    assert main([*words, f"--save={pages[0]}"]) == 2
+    assert "is there already" in capsys.readouterr().err
+    assert main([*words, "--night", "2027-03-11"]) == 1
+    assert "the last one is 2027-03-12" in capsys.readouterr().err
