@@ -10,5 +10,8 @@ light      sky brightness, signal to noise, saturation, what an exposure is wort
 night      the night's tables: all of the above for every target and minute, and the limits
 order      what to point at next, and after that
 log        the night on disk: blocks, recovery, and the state as a fold over its events
+past       many nights: an index over their logs, and the questions it answers
+report     one night, reported
 watch      the observer's acts turned into events; the live night
+rehearsal  an invented night and somebody who observes it
 """
