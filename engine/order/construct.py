@@ -41,12 +41,11 @@ URGENT = Temper(0.0, 0.0, 1.0, urgency=1.5)
 TEMPERS = (
     VALUE_FIRST,
     URGENT,
-    Temper(0.0, 0.0, 1.0, urgency=3.0, felt_min=120.0),
-    Temper(0.6, 0.0, 1.0, urgency=1.0),
-    Temper(0.8, 0.5, 1.0),
+    Temper(1.2, 0.8, 0.5, urgency=1.0),
+    Temper(1.0, 0.5, 1.0),
+    Temper(1.0, 1.0, 0.0, urgency=1.0),
     Temper(1.0, 0.8, 1.0),
-    Temper(1.0, 1.0, 0.5),
-    Temper(0.9, 0.9, 0.0),
+    Temper(1.2, 0.5, 0.5),
 )
 
 

@@ -26,7 +26,7 @@ STRETCHES = (0, 1, 1, 1, 2, 2, 2, 3, 3, 4, 5, 7)
 # Powers of a block's time by which its gain is divided when a stretch is filled.
 LEANINGS = (0.0, 0.5, 1.0)
 # Moments tried for each block, how many blocks at most, and how many of those from elsewhere.
-MOMENTS, POOL, ELSEWHERE = 8, 64, 6
+MOMENTS, POOL, ELSEWHERE = 8, 48, 6
 # How far away in the order a block may stand that is moved.
 REACH = 30
 # At first an order may get worse by this share of its value; at the end not at all.
