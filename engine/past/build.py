@@ -7,6 +7,7 @@ import os
 import time
 from collections.abc import Callable, Iterator, Sequence
 from concurrent.futures import ProcessPoolExecutor
+from concurrent.futures.process import BrokenProcessPool
 from pathlib import Path
 
 from engine.past.digest import Digest, digest, fingerprint
@@ -41,25 +42,32 @@ def read_one(path: Path) -> Read:
 def read_all(paths: Sequence[Path], progress: Progress | None = None) -> Iterator[Read]:
     """Return the digests of logs one by one, in the order given.
 
-    ``progress`` is told how many of how many are done.
+    ``progress`` is told how many of how many are done. Where processes can't be had, or one of them
+    dies, the rest is read here.
     """
     told = progress or (lambda done, of: None)
-    cores = os.cpu_count() or 1
-    told(0, len(paths))
-    if len(paths) < MANY or cores < 2:
-        for done, path in enumerate(paths, 1):
-            yield read_one(path)
-            told(done, len(paths))
-        return
-    # Started afresh, not forked: a child must not hold the log that this process may have locked.
-    context = multiprocessing.get_context("spawn")
-    with ProcessPoolExecutor(max_workers=cores, mp_context=context) as pool:
-        done = 0
+    done = 0
+    told(done, len(paths))
+    if len(paths) >= MANY and (os.cpu_count() or 1) > 1:
         try:
-            for read in pool.map(read_one, paths, chunksize=HANDED_OVER):
+            for read in _read_by_all_cores(paths):
                 yield read
                 done += 1
                 told(done, len(paths))
-        except BaseException:
-            pool.shutdown(wait=False, cancel_futures=True)
-            raise
+        except (BrokenProcessPool, OSError):
+            # Nothing is lost: what came back was whole.
+            pass
+    for path in paths[done:]:
+        yield read_one(path)
+        done += 1
+        told(done, len(paths))
+
+
+def _read_by_all_cores(paths: Sequence[Path]) -> Iterator[Read]:
+    # Started afresh, not forked: a child must not hold the log that this process may have locked.
+    context = multiprocessing.get_context("spawn")
+    pool = ProcessPoolExecutor(max_workers=os.cpu_count(), mp_context=context)
+    try:
+        yield from pool.map(read_one, paths, chunksize=HANDED_OVER)
+    finally:
+        pool.shutdown(wait=False, cancel_futures=True)

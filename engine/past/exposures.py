@@ -132,11 +132,16 @@ class Refused:
 
 def refused(index: PastIndex, period: Period = ALWAYS) -> tuple[Refused, ...]:
     """Return how many exposures do not count, and why, the most frequent first."""
+    within = ""
+    params: tuple[str, ...] = ()
+    if period != ALWAYS:
+        within = "AND night IN (SELECT id FROM night WHERE name >= ? AND name <= ?) "
+        params = period.limits
     rows = index.ask(
         "SELECT outcome, CASE WHEN judged <> '' THEN judged ELSE why END AS reason, count(*) "
-        f"FROM {_OF_ITS_NIGHT} WHERE outcome <> 'good' AND night.name >= ? AND night.name <= ? "
+        f"FROM exposure WHERE outcome <> 'good' {within}"
         "GROUP BY outcome, reason ORDER BY 3 DESC, 1, 2",
-        period.limits,
+        params,
     )
     return tuple(Refused(*row) for row in rows)
 

@@ -8,6 +8,8 @@ import sqlite3
 import subprocess
 import sys
 import tempfile
+from collections.abc import Iterator, Sequence
+from concurrent.futures.process import BrokenProcessPool
 from datetime import date
 from pathlib import Path
 
@@ -17,6 +19,7 @@ from hypothesis import strategies as st
 
 from engine.log import Exposure, Note
 from engine.past import PastIndex, index_path
+from engine.past.build import Read, read_one
 from engine.past.carry import carried, done_before_by_folding
 from engine.past.exposures import totals
 from engine.past.nights import nights
@@ -254,6 +257,23 @@ def test_without_full_text_search_the_index_is_made_all_the_same(
         assert not index.has_full_text
         agrees(index, folder)
         assert [each.night for each in find_words(index, "halo round")] == [path.stem]
+
+
+def test_when_helping_processes_die_the_rest_is_read_all_the_same(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """Killed after three logs, by the system or by anyone: no log is missing, none is twice."""
+
+    def three_then_dead(paths: Sequence[Path]) -> Iterator[Read]:
+        yield from map(read_one, paths[:3])
+        raise BrokenProcessPool
+
+    folder = tmp_path / "nights"
+    small_archive(folder)
+    monkeypatch.setattr("engine.past.build.MANY", 5)
+    monkeypatch.setattr("engine.past.build._read_by_all_cores", three_then_dead)
+    with PastIndex(folder, cache=tmp_path) as index:
+        agrees(index, folder)
 
 
 SECOND = """
