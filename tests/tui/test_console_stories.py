@@ -249,8 +249,9 @@ def test_a_note_and_conditions_reach_the_log_cleaned(folder: Path) -> None:
         await trial.press("enter")
         await trial.press("c", "w")
         await trial.type("13")
-        assert "CAUTION wind 13 m/s" in trial.text("notices")
-        assert "the observatory's own rules decide" in trial.text("notices")
+        assert "C A U T I O N" in trial.text("alarm")
+        assert "wind 13 m/s" in trial.text("alarm")
+        assert "the observatory's own rules decide" in trial.text("alarm")
         note = trial.watch.state.notes[-1].text
         assert "\x1b" not in note
         assert "\u202e" not in note
@@ -317,7 +318,7 @@ def test_a_log_that_can_not_be_written_is_saved_elsewhere(
             await trial.press("n")
             await trial.type("the disk is full")
             await trial.wait(1.0)
-            assert "can't be written" in trial.text("notices")
+            assert "can't be written" in trial.text("alarm")
             assert "LOG NOT WRITTEN: 1 waiting" in trial.text("head")
             told.append(trial.close())
 

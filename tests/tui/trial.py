@@ -122,7 +122,18 @@ class Trial:
 
     def screen(self) -> str:
         """Return everything the screen shows, as text."""
-        names = ("head", "night", "under-way", "list", "card", "panel", "notices", "entry", "foot")
+        names = (
+            "head",
+            "alarm",
+            "night",
+            "under-way",
+            "list",
+            "card",
+            "panel",
+            "notices",
+            "entry",
+            "foot",
+        )
         return "\n".join(self.text(name) for name in names)
 
 

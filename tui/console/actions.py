@@ -147,6 +147,13 @@ ACTIONS: tuple[Action, ...] = (
         "Put a filter of the wheel aside for tonight, or use it again.",
         GROUPS[3],
     ),
+    Action(
+        "acknowledge",
+        ("a",),
+        "seen",
+        "Say that the alarm on the screen was seen; the next one that waits takes its place.",
+        GROUPS[3],
+    ),
     Action("note", ("n",), "note", "Write a note into the log.", GROUPS[3], footer=9),
     Action(
         "undo",

@@ -88,6 +88,7 @@ class Console(App[None]):
     def compose(self) -> ComposeResult:
         """Make the frame; every panel is a sheet or the list."""
         yield Sheet(id="head")
+        yield Sheet(id="alarm")
         yield Sheet(id="night")
         yield Sheet(id="under-way")
         with Horizontal(id="body"):
@@ -309,6 +310,13 @@ class Console(App[None]):
     def _do_next_look(self) -> None:
         names = list(LOOKS)
         self.set_look(names[(names.index(self.look) + 1) % len(names)])
+
+    def _do_acknowledge(self) -> None:
+        seen = self._painting.alarms.acknowledge() if self._painting is not None else None
+        if seen is None:
+            self.tell("no alarm waits to be seen", "dim")
+        else:
+            self.tell(f"seen: {seen.cause.label.lower()}, {seen.cause.sentence}", "dim")
 
     def _do_help(self) -> None:
         self.push_screen(HelpScreen(LOOKS[self.look]))

@@ -4,8 +4,11 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
-from engine.watch import Watch, cautions
+from engine.watch import Watch
+from engine.watch.alarms import Alarms, causes_now
+from tui.console.actions import action_named, cap
 from tui.console.foot import foot_keys, foot_line, views_line
+from tui.console.panels.alarms import TALL, paint_alarm
 from tui.console.panels.head import paint_head
 from tui.console.panels.night import paint_night
 from tui.console.panels.record import paint_log, paint_order
@@ -28,7 +31,7 @@ class Painting:
     def __init__(self, console: Console, watch: Watch) -> None:
         self._console = console
         self._watch = watch
-        self._told: set[str] = set()
+        self.alarms = Alarms()
         self._followed_n = 0
         self._trouble: str | None = None
         self._views: dict[str, View] = {}
@@ -62,7 +65,7 @@ class Painting:
             self._paint_panels()
         else:
             self._paint_view(self.view)
-        self._tell_cautions()
+        self.paint_alarms()
         self._tell_trouble()
         self.paint_foot()
 
@@ -126,19 +129,21 @@ class Painting:
             case _:
                 return paint_log(self._watch, width, height)
 
-    def _tell_trouble(self) -> None:
-        """Tell once what is wrong with the disk and what to do; and that it is well again."""
-        trouble = self._watch.trouble
-        if trouble != self._trouble:
-            self._trouble = trouble
-            self._console.tell(trouble or "the log is on disk again", "bad" if trouble else "good")
-            self._console.bell()
+    def paint_alarms(self) -> None:
+        """Show the alarm that waits longest, and ring once for each new one."""
+        console, watch = self._console, self._watch
+        if self.alarms.update(causes_now(watch), watch.clock.now_mjd()):
+            console.bell()
+        sheet = console.sheet("alarm")
+        waiting = self.alarms.waiting
+        sheet.display = bool(waiting)
+        rows = TALL if console.is_wide else 1
+        key = cap(action_named("acknowledge").keys[0])
+        sheet.show(paint_alarm(waiting, key, sheet.size.width, rows))
 
-    def _tell_cautions(self) -> None:
-        """Tell each caution once while it lasts; the observatory's own rules decide."""
-        standing = cautions(self._watch.state, self._watch.planner.logbook.observatory.caution)
-        for each in standing:
-            if each.code not in self._told:
-                self._console.tell(f"CAUTION {each.sentence}", "bad")
-                self._console.bell()
-        self._told = {each.code for each in standing}
+    def _tell_trouble(self) -> None:
+        """Tell that the log is on disk again when it was not."""
+        trouble = self._watch.trouble
+        if self._trouble and trouble is None:
+            self._console.tell("the log is on disk again", "good")
+        self._trouble = trouble

@@ -28,6 +28,7 @@ ROLES = (
     "planned2", # the next one, so that neighbours can be told apart
     "lost",     # lost time
     "cursor",   # the line under the cursor
+    "alarm",    # what must be seen at once, from edge to edge
 )  # fmt: skip
 
 
@@ -88,6 +89,7 @@ _NIGHT = {
     "planned2": "#d9cbb4 on #4d3f30",
     "lost": "#df7f63",
     "cursor": "bold #fff4e0 on #44361f",
+    "alarm": "bold reverse #f0a080",
 }
 
 _DAY = {
@@ -106,6 +108,7 @@ _DAY = {
     "planned2": "#2b2620 on #c9b898",
     "lost": "#a3290c",
     "cursor": "bold #000000 on #e6c98f",
+    "alarm": "bold reverse #8f1f05",
 }
 
 LOOKS: dict[str, Look] = {
