@@ -24,6 +24,7 @@ from engine.past.nights import Period, efficiency, nights
 from engine.past.search import Wanted, condition, find_exposures, find_words
 from engine.past.seeing import measurements, site_seeing
 from engine.rehearsal import play_unwatched, prepare
+from engine.report import night_report
 from engine.times import MINUTES_PER_DAY
 from tests.engine.by_tomllib import by_tomllib
 from tests.engine.log_nights import blocks_of
@@ -253,6 +254,21 @@ def test_what_remains_follows_every_change_of_verdict(
     assert remains() == 0
     log.unlink()
     assert remains() == before
+
+
+def test_past_and_report_tell_the_same_of_a_night(index: PastIndex, archive: Path) -> None:
+    """Counts, hours, causes and seeing of each night are those of its report."""
+    for line in nights(index):
+        report = night_report(archive / line.name)
+        assert line.exposures == len(report.exposures)
+        assert line.kept == len(report.exposures) - len(report.refused)
+        assert line.open_h * 3600.0 == pytest.approx(report.exposed_s)
+        assert line.seeing == report.seeing
+        for told_h, told_s in (
+            (line.spent_h, report.account.spent_s),
+            (line.lost_h, report.account.lost_s),
+        ):
+            assert told_h == pytest.approx({name: s / 3600.0 for name, s in told_s.items()})
 
 
 SPANS = st.lists(

@@ -133,14 +133,16 @@ def test_seeing_and_search(folder: Path, size: tuple[int, int]) -> None:
 def test_what_is_shown_can_be_exported(
     folder: Path, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
 ) -> None:
-    """As CSV where the observer says; never over a file that is there."""
+    """A list as CSV where the observer says; never over a file that is there."""
     monkeypatch.chdir(tmp_path)
 
     async def story(trial: Trial) -> None:
         await opened(trial)
-        await trial.press("enter", "e")
+        await trial.press("tab")
+        trial.console.choose("NGC 3621")
+        await trial.press("e")
         await trial.type("out.csv")
-        assert "282 rows in out.csv" in trial.text("notices")
+        assert "15 rows in out.csv" in trial.text("notices")
         await trial.press("e")
         await trial.type("out.csv")
         assert "is there already" in trial.text("notices") + trial.text("entry")
@@ -148,11 +150,42 @@ def test_what_is_shown_can_be_exported(
     tell(folder, story)
     with (tmp_path / "out.csv").open(encoding="utf-8") as file:
         rows = list(csv.DictReader(file))
-    exposures = fold(read_log(folder / "2027-03-12.toml").events).exposures
+    exposures = fold(read_log(folder / "2027-03-10.toml").events).exposures
+    taken = [each for each in exposures if each.target == "NGC 3621"]
     assert [float(row["image_size_arcsec"]) for row in rows] == [
-        each.image_size_arcsec for each in exposures
+        each.image_size_arcsec for each in reversed(taken)
     ]
     assert rows[0]["start"].endswith("Z")
+
+
+def test_a_nights_report_is_written_from_where_it_is_looked_at(
+    folder: Path, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """In the form that the file's ending asks for; another ending is refused beside the field."""
+    monkeypatch.chdir(tmp_path)
+
+    async def told(trial: Trial, text: str) -> None:
+        for _ in range(300):
+            await trial.pilot.pause()
+            if text in trial.text("notices"):
+                return
+            await asyncio.sleep(0.02)
+        raise AssertionError(trial.text("notices"))
+
+    async def story(trial: Trial) -> None:
+        await opened(trial)
+        await trial.press("enter", "e")
+        await trial.type("night.doc")
+        assert "expected a name that ends in .md" in trial.text("entry")
+        await trial.press("escape", "e")
+        await trial.type("night.md")
+        await told(trial, "the night of 2027-03-12 is in night.md")
+        await trial.press("e")
+        await trial.type("night.md")
+        await told(trial, "is there already; nothing was written")
+
+    tell(folder, story)
+    assert "2027-03-12" in (tmp_path / "night.md").read_text(encoding="utf-8")
 
 
 def test_the_nights_work_goes_on_under_it(folder: Path) -> None:

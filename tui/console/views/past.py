@@ -12,6 +12,7 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
+from engine.errors import WarmroomError
 from engine.past import PastIndex
 from engine.past.export import write_csv
 from engine.past.exposures import PastExposure, history
@@ -19,6 +20,7 @@ from engine.past.nights import NightLine, nights
 from engine.past.replay import Replay, open_replay
 from engine.past.search import FoundWords, find_words
 from engine.past.seeing import SiteSeeing, measurements, site_seeing
+from engine.report import FORMS, night_report, save
 from engine.watch import Watch
 from tui.console.views.base import View
 from tui.console.views.past_pages import (
@@ -99,7 +101,7 @@ class Past(View):
     def hints(self) -> tuple[tuple[str, str], ...]:
         """The view's own keys: what they do here."""
         if self._page == "night":
-            return (("esc", "back"), ("e", "export"))
+            return (("esc", "back"), ("e", "report"))
         if self._page == "target":
             return (("← →", "target"), ("enter", "open"), ("tab", "seeing"), ("e", "export"))
         return (("enter", "open"), ("tab", "target, seeing"), ("/", "find"), ("e", "export"))
@@ -233,11 +235,13 @@ class Past(View):
         self._cursors["found"] = 0
 
     def _export(self) -> None:
-        """Write what is shown as CSV into a file that the observer names."""
-        read = self._read
-        if isinstance(read, str):
+        """Write what is shown into a file that the observer names: a night as its report."""
+        if self._page == "night" and self._replay is not None:
+            log = self._replay.path
+            label = f"write the night's report to ({' '.join(FORMS)})"
+            self.console.ask(Question(label, _report_file, lambda path: self._report(log, path)))
             return
-        rows = self._exported(read)
+        rows = self._rows
         if not rows:
             self.console.tell("there is nothing to export here", "dim")
             return
@@ -248,12 +252,18 @@ class Past(View):
 
         self.console.ask(Question(f"write {len(rows)} rows as CSV to", _file, write))
 
-    def _exported(self, read: _Read) -> Sequence[object]:
-        match self._page:
-            case "night" if self._replay is not None:
-                return self._replay.at(len(self._replay.events) - 1).exposures
-            case _:
-                return self._rows
+    def _report(self, log: Path, path: Path) -> None:
+        """Write a night's report off the loop: its charts and tables take a second."""
+
+        def work() -> None:
+            try:
+                save(night_report(log), path)
+                told = (f"the night of {log.stem} is in {path}", "good")
+            except WarmroomError as error:
+                told = (str(error), "warn")
+            self.console.call_from_thread(self.console.tell, *told)
+
+        self.console.run_worker(work, name="report", thread=True, exit_on_error=False)
 
 
 def _some_text(text: str) -> str:
@@ -267,3 +277,11 @@ def _file(text: str) -> Path:
     if not text.strip():
         raise ValueError("expected a file name such as past.csv")
     return Path(text.strip()).expanduser()
+
+
+def _report_file(text: str) -> Path:
+    """Return where to write a report, from what was typed."""
+    path = _file(text)
+    if path.suffix.lower() not in FORMS:
+        raise ValueError(f"expected a name that ends in {', '.join(FORMS)}")
+    return path
