@@ -24,13 +24,14 @@ class Question:
     """What is asked: a label, how to read the answer, and what to do with it.
 
     ``read`` returns the value or raises ValueError with what was expected. With ``choices`` (letter
-    and word) one key answers.
+    and word) one key answers. ``text`` stands there at first, to be changed.
     """
 
     label: str
     read: Callable[[str], Any]
     then: Callable[[Any], None]
     choices: tuple[tuple[str, str], ...] = ()
+    text: str = ""
 
 
 class Entry(Sheet):
@@ -60,7 +61,7 @@ class Entry(Sheet):
     def ask(self, question: Question) -> None:
         """Ask a question; what is typed from now on answers it."""
         self._question = question
-        self._text, self._at, self._fault = "", 0, ""
+        self._text, self._at, self._fault = question.text, len(question.text), ""
         self.display = True
         self._paint()
 

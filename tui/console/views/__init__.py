@@ -37,6 +37,7 @@ VIEWS: tuple[ViewEntry, ...] = (
         "Show seeing, weather and sky: measured, foretold, how old.",
     ),
     ViewEntry("image", "4", "image", "Show image sizes: which blur, what will be soft, and when."),
+    ViewEntry("log", "5", "log", "Show the log as it grows: search it, put entries right."),
     ViewEntry(
         "past", "7", "past", "Show past nights: each again, a target's history, the site's seeing."
     ),

@@ -6,11 +6,13 @@ from tui.console.views.base import View
 from tui.console.views.conditions import Conditions
 from tui.console.views.image import Image
 from tui.console.views.past import Past
+from tui.console.views.records import Records
 from tui.console.views.sky import Sky
 
 CLASSES: dict[str, type[View]] = {
     "sky": Sky,
     "conditions": Conditions,
     "image": Image,
+    "log": Records,
     "past": Past,
 }
