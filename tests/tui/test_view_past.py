@@ -201,6 +201,26 @@ def test_the_nights_work_goes_on_under_it(folder: Path) -> None:
     tell(folder, story)
 
 
+def test_an_index_that_fails_is_told_and_the_night_goes_on(
+    folder: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """Whatever the worker raises stands in the view; keys of the view do nothing then."""
+
+    def broken(*_: object, **__: object) -> None:
+        raise RuntimeError("the disk is on fire")
+
+    monkeypatch.setattr("tui.console.views.past.PastIndex", broken)
+
+    async def story(trial: Trial) -> None:
+        await opened(trial)
+        assert "past nights can't be read: the disk is on fire" in trial.text("view")
+        await trial.press("enter", "tab", "e", "j", "escape")
+        await trial.press("space")
+        assert trial.watch.state.pointing is not None
+
+    tell(folder, story)
+
+
 def test_pictures_have_the_width_they_are_given() -> None:
     """Whatever the numbers: no cell too many, the shares in their order."""
     spent = {"open": 6.0, "lost": 2.0, "between": 1.0, "moving": 0.5, "ready": 0.5, "idle": 0.0}

@@ -13,6 +13,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 from engine.errors import WarmroomError
+from engine.log import NightState
 from engine.past import PastIndex
 from engine.past.export import write_csv
 from engine.past.exposures import PastExposure, history
@@ -26,6 +27,7 @@ from tui.console.views.base import View
 from tui.console.views.past_pages import (
     found_page,
     night_page,
+    nights_head,
     nights_page,
     seeing_groups,
     seeing_page,
@@ -48,10 +50,11 @@ SCREEN_ROWS = 15
 
 @dataclass(frozen=True, slots=True)
 class _Read:
-    """What was read once: the open index, and the pages that are the same for all targets."""
+    """What was read once: the open index, its nights (the newest first), the site's seeing."""
 
     index: PastIndex
     nights: tuple[NightLine, ...]
+    head: tuple[Line, ...]
     seeing: SiteSeeing
 
 
@@ -66,6 +69,7 @@ class Past(View):
         self._page = "nights"
         self._cursors: dict[str, int] = {}
         self._replay: Replay | None = None
+        self._stood: tuple[tuple[Path, int], NightState] | None = None
         self._from = "nights"
         self._taken: tuple[str | None, tuple[PastExposure, ...]] = (None, ())
         self._text = ""
@@ -87,7 +91,7 @@ class Past(View):
         cursor = self._cursor
         match self._page:
             case "night" if self._replay is not None:
-                return night_page(self._replay, cursor, width, height)
+                return night_page(self._replay, cursor, self._state(cursor), width, height)
             case "target":
                 return target_page(self.console.chosen, self._history(read), cursor, width, height)
             case "seeing":
@@ -95,7 +99,16 @@ class Past(View):
             case "found":
                 return found_page(self._text, self._found, cursor, width, height)
             case _:
-                return nights_page(read.nights, cursor, width, height)
+                return nights_page(read.nights, read.head, cursor, width, height)
+
+    def _state(self, place: int) -> NightState:
+        """Return the state of the night that is looked at, kept while its cursor stands still."""
+        if self._replay is None:
+            return NightState()
+        key = (self._replay.path, place)
+        if self._stood is None or self._stood[0] != key:
+            self._stood = (key, self._replay.at(place))
+        return self._stood[1]
 
     @property
     def hints(self) -> tuple[tuple[str, str], ...]:
@@ -132,7 +145,7 @@ class Past(View):
         index = PastIndex(self._folder, progress=note)
         tonight = f"{self.watch.planner.night.almanac.night.isoformat()}.toml"
         past = tuple(each for each in nights(index) if each.name != tonight)
-        return _Read(index, past, site_seeing(measurements(index)))
+        return _Read(index, past[::-1], nights_head(past), site_seeing(measurements(index)))
 
     def _history(self, read: _Read) -> tuple[PastExposure, ...]:
         name = self.console.chosen
@@ -158,7 +171,7 @@ class Past(View):
             return ()
         match self._page:
             case "nights":
-                return read.nights[::-1]
+                return read.nights
             case "night":
                 return self._replay.events if self._replay else ()
             case "target":

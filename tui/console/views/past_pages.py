@@ -60,31 +60,35 @@ def quartiles(summary: SeeingSummary | None) -> Quartiles | None:
 # Nights
 
 
-def nights_page(lines: Sequence[NightLine], cursor: int, width: int, rows: int) -> list[Line]:
-    """Return the nights, the newest first, each with a picture of its time and its seeing."""
-    place = int(width >= WIDE)
-    time_cells, seeing_cells = TIME_CELLS[place], SEEING_CELLS[place]
-    newest = list(reversed(lines))
-    scale = seeing_scale(seeing_cells)
-    head = f"  {'night':<10}  dark {'time':<{time_cells}} {scale}  median  kept"
-    shown: list[Line] = [_nights_head(lines, width), line(Span(head, "dim"))]
-    return shown + [
-        _night_row(newest[at], at == cursor, time_cells, seeing_cells, width)
-        for at in window(len(newest), cursor, rows - len(shown))
-    ]
-
-
-def _nights_head(lines: Sequence[NightLine], width: int) -> Line:
+def nights_head(lines: Sequence[NightLine]) -> tuple[Line, ...]:
+    """Return what all nights together come to, in phrases, what matters most first."""
     spent = efficiency(lines)
-    bad = [word for word in STATES[:-1] if any(each.state == word.value for each in lines)]
-    told = ", ".join(f"{sum(e.state == w.value for e in lines)} {w.label}" for w in bad)
+    counts = [(word.label, sum(each.state == word.value for each in lines)) for word in STATES[:-1]]
+    told = ", ".join(f"{count} {label}" for label, count in counts if count)
     share = f", shutter open {spent.open_share:.0%} of the dark" if spent.open_share else ""
-    return phrases(
-        width,
+    return (
         line(Span(f" {len(lines)} nights", "strong"), Span(share, "text")),
         line(Span(f"  {told} ", "warn")) if told else BLANK,
         line(Span(" "), *time_legend()),
     )
+
+
+def nights_page(
+    newest: Sequence[NightLine], head: Sequence[Line], cursor: int, width: int, rows: int
+) -> list[Line]:
+    """Return the nights, the newest first, each with a picture of its time and its seeing.
+
+    ``head`` is what `nights_head` said of them.
+    """
+    place = int(width >= WIDE)
+    time_cells, seeing_cells = TIME_CELLS[place], SEEING_CELLS[place]
+    scale = seeing_scale(seeing_cells)
+    columns = f"  {'night':<10}  dark {'time':<{time_cells}} {scale}  median  kept"
+    shown: list[Line] = [phrases(width, *head), line(Span(columns, "dim"))]
+    return shown + [
+        _night_row(newest[at], at == cursor, time_cells, seeing_cells, width)
+        for at in window(len(newest), cursor, rows - len(shown))
+    ]
 
 
 def _night_row(
@@ -118,11 +122,10 @@ def _night_row(
 # One night, again
 
 
-def night_page(replay: Replay, place: int, width: int, rows: int) -> list[Line]:
-    """Return a night as its log had it after one entry: the strip, the state, what led to it."""
+def night_page(replay: Replay, place: int, state: NightState, width: int, rows: int) -> list[Line]:
+    """Return a night as its log had it after one entry: the strip, its state, what led to it."""
     if not replay.events:
         return [line(Span(f" {replay.path.name}: no entry in it can be used", "warn"))]
-    state = replay.at(place)
     zone = ZoneInfo(replay.timezone) if replay.timezone else UTC
     event = replay.events[place]
     moment = datetime_from_mjd(event.t_mjd).astimezone(zone)
