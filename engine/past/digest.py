@@ -11,7 +11,6 @@ import math
 import zlib
 from collections.abc import Sequence
 from dataclasses import astuple, dataclass, field
-from datetime import date
 from operator import attrgetter
 from pathlib import Path
 from zoneinfo import ZoneInfo
@@ -66,7 +65,6 @@ QUANTITIES = (
 SEEING_COLUMNS = ("mjd", "zenith_arcsec", "local_h", "filter", "airmass", "measured_arcsec")
 IMAGE_COLUMNS = ("mjd", "filter", "airmass", "seeing_arcsec", "predicted_arcsec", "measured_arcsec")
 FINDINGS_KEPT = 20
-BYTES_PER_FLOAT = 8
 
 Row = tuple[object, ...]
 
@@ -137,7 +135,7 @@ def digest(path: Path, data: bytes) -> Digest:
         name=path.name,
         night=reading.header.night.isoformat(),
         state=_state(reading),
-        findings=tuple(str(each).removeprefix(f"{path}:") for each in reading.findings),
+        findings=_findings(reading),
         observers=reading.header.observers,
         site=_site(reading),
         entries=len(reading.events),
@@ -156,6 +154,13 @@ def digest(path: Path, data: bytes) -> Digest:
 
 
 _fields = attrgetter(*FIELDS)
+
+
+def _findings(reading: LogReading) -> tuple[str, ...]:
+    """Return what is wrong with a log, a line each: the first of it, and how much more there is."""
+    said = [str(each).removeprefix(f"{reading.path}:") for each in reading.findings]
+    more = len(said) - FINDINGS_KEPT
+    return (*said[:FINDINGS_KEPT], *([f"and {more} more"] if more > 0 else []))
 
 
 def _state(reading: LogReading) -> str:
@@ -302,11 +307,6 @@ def _image_table(exposures: Sequence[Exposure], filters: list[str]) -> bytes:
 def table(data: bytes, columns: Sequence[str]) -> np.ndarray[tuple[int, int], np.dtype[np.float64]]:
     """Return the bytes of one or more nights' tables as an array, a column for each name."""
     return np.frombuffer(data, dtype=np.float64).reshape(-1, len(columns))
-
-
-def night_of_name(name: str) -> date:
-    """Return the night that a log's file name says."""
-    return date.fromisoformat(name.removesuffix(".toml"))
 
 
 def as_json(value: object) -> str:

@@ -4,12 +4,13 @@ from __future__ import annotations
 
 import sqlite3
 from collections.abc import Collection
+from contextlib import suppress
 from dataclasses import dataclass
 
 from engine.past.digest import FIELDS, Digest, as_json
 
 # Raised whenever the tables, or what a digest holds, change: an index of another one is made anew.
-SCHEMA = 2
+SCHEMA = 3
 
 _TEXT = {"target", "programme", "filter", "frame", "outcome", "why"}
 _COLUMNS = ", ".join(
@@ -46,11 +47,7 @@ CREATE TABLE words (
     text TEXT);
 CREATE INDEX words_of_night ON words (night);
 """
-FULL_TEXT = """
-CREATE VIRTUAL TABLE words_found USING fts5 (text, target, content='', contentless_delete=1);
-"""
-# Where the library is older than deletion from a table without content of its own.
-FULL_TEXT_OLDER = "CREATE VIRTUAL TABLE words_found USING fts5 (text, target);"
+FULL_TEXT = "CREATE VIRTUAL TABLE words_found USING fts5 (text, target)"
 
 # With more targets than this all totals are made at once.
 MANY_TARGETS = 300
@@ -73,12 +70,9 @@ def make_tables(db: sqlite3.Connection, folder: str) -> None:
     for statement in TABLES.split(";\n"):
         if statement.strip():
             db.execute(statement)
-    for statement in (FULL_TEXT, FULL_TEXT_OLDER):
-        try:
-            db.execute(statement)
-        except sqlite3.OperationalError:
-            continue
-        break
+    # Some SQLite libraries are built without full-text search: words are then found by letters.
+    with suppress(sqlite3.OperationalError):
+        db.execute(FULL_TEXT)
     db.execute("INSERT INTO meta VALUES ('folder', ?)", (folder,))
     db.execute(f"PRAGMA user_version = {SCHEMA}")
 

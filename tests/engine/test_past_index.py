@@ -249,7 +249,6 @@ def test_without_full_text_search_the_index_is_made_all_the_same(
 ) -> None:
     """An SQLite that lacks it: words are found by their letters."""
     monkeypatch.setattr("engine.past.schema.FULL_TEXT", "CREATE VIRTUAL TABLE x USING nothing ()")
-    monkeypatch.setattr("engine.past.schema.FULL_TEXT_OLDER", "CREATE VIRTUAL TABLE x USING no ()")
     folder = tmp_path / "nights"
     path = small_archive(folder)[2]
     change(path, "append", 0.0, "a halo round the Moon")
