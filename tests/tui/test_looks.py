@@ -13,6 +13,7 @@ from rich.style import Style
 from textual.color import Color
 
 from tests.tui.trial import Trial, a_logbook, play
+from tui.console.views import VIEWS
 from tui.look import LOOKS, ROLES, CleanFilter, MonoFilter, RedFilter
 from tui.look.filters import DIMMEST_TEXT
 
@@ -92,12 +93,19 @@ def test_every_look_has_every_role() -> None:
 
 
 @pytest.mark.parametrize("size", [(80, 24), (160, 50)])
-def test_every_panel_is_red_in_red(tmp_path: Path, size: tuple[int, int]) -> None:
-    """The list, each panel, the entry, the help and the palette: no green, no blue."""
+def test_every_view_and_panel_is_red_in_red(tmp_path: Path, size: tuple[int, int]) -> None:
+    """Each view and panel, a caution, the entry, the help and the palette: no green, no blue."""
 
     async def story(trial: Trial) -> None:
+        await trial.press("z")
+        await trial.type("4.5")
+        await trial.press("c", "w")
+        await trial.type("40")
+        await trial.press("space", "space", "space")
+        await trial.wait(10.0)
+        views = tuple((each.key,) for each in VIEWS)
         for keys in (
-            (), ("tab",), ("tab",), ("tab",), ("tab",), ("z", "9", "9", "9", "enter"),
+            *views, ("1",), ("tab",), ("tab",), ("tab",), ("tab",), ("z", "9", "9", "9", "enter"),
             ("escape", "question_mark"), ("escape", "ctrl+p"), ("escape",),
         ):  # fmt: skip
             await trial.pilot.press(*keys)
@@ -107,6 +115,39 @@ def test_every_panel_is_red_in_red(tmp_path: Path, size: tuple[int, int]) -> Non
             assert all(red_only(segment.style) for segment in drawn), keys
 
     play(a_logbook(tmp_path / "nights"), story, size=size, look="red")
+
+
+@pytest.mark.parametrize("size", [(80, 24), (160, 50)])
+@pytest.mark.parametrize("look", LOOKS)
+def test_everything_stands_out_from_its_ground(
+    tmp_path: Path, look: str, size: tuple[int, int]
+) -> None:
+    """In every view and look each character that is drawn differs from the ground it is on."""
+
+    async def story(trial: Trial) -> None:
+        for entry in VIEWS:
+            await trial.press(entry.key)
+            for text, style, _ in cells(trial):
+                if text.strip(" \n") and style is not None and style.color is not None:
+                    ground = style.bgcolor
+                    assert ground is None or contrast(style.color, ground) >= 2.2, (entry, text)
+
+    play(a_logbook(tmp_path / "nights"), story, size=size, look=look)
+
+
+def contrast(one: RichColor, other: RichColor) -> float:
+    """Return the contrast of two colours, by the formula of WCAG 2.1."""
+    lights = sorted(luminance(each) for each in (one, other))
+    return (lights[1] + 0.05) / (lights[0] + 0.05)
+
+
+def luminance(colour: RichColor) -> float:
+    """Return the relative luminance of a colour (WCAG 2.1)."""
+    parts = (
+        value / 12.92 if value <= 0.03928 else ((value + 0.055) / 1.055) ** 2.4
+        for value in (channel / 255.0 for channel in colour.get_truecolor())
+    )
+    return sum(weight * part for weight, part in zip((0.2126, 0.7152, 0.0722), parts, strict=True))
 
 
 def test_looks_take_turns(tmp_path: Path) -> None:
