@@ -14,11 +14,12 @@ import numpy as np
 from engine.order.blocks import TICKS_PER_MIN, Blocks, cut
 from engine.order.construct import TEMPERS, URGENT, VALUE_FIRST, Start, Temper, Turn, greedies
 from engine.order.improve import Effort, Search
+from engine.order.left_out import left_out
 from engine.order.order import Order, PlacedExposures, Visit
 from engine.order.pins import PIN_WORTH
 from engine.order.prices import price_of_time
 from engine.order.problem import Problem
-from engine.order.reasons import left_out, reason_for
+from engine.order.reasons import reason_for
 from engine.order.sequence import Timed
 from engine.order.timeline import GAP_MIN, Stay, Timeline
 from engine.times import MINUTES_PER_DAY
@@ -131,13 +132,16 @@ def _lacks_pinned(timeline: Timeline) -> bool:
 
 def _as_order(problem: Problem, timeline: Timeline, begun_s: float) -> Order:
     visits = [_visit(problem, stay) for stay in timeline.stays]
-    visits = [replace(visit, reason=reason_for(problem, visit)) for visit in visits]
+    visits = [
+        replace(visit, reason=reason_for(problem, stay.target, visit))
+        for visit, stay in zip(visits, timeline.stays, strict=True)
+    ]
     return Order(
         from_mjd=problem.from_mjd,
         until_mjd=problem.mjd_at(problem.minutes - 1),
         value=timeline.value(),
         visits=tuple(visits),
-        left_out=left_out(problem, {visit.target for visit in visits}),
+        left_out=left_out(problem, visits),
         compute_ms=(time.perf_counter() - begun_s) * 1e3,
     )
 

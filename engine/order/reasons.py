@@ -1,15 +1,14 @@
-"""Why a target is visited now, and why another is left out: sentences made from the tables."""
+"""Why a target is visited now: sentences made from the tables."""
 
 from __future__ import annotations
 
-from zoneinfo import ZoneInfo
-
 import numpy as np
 
-from engine.night import REASONS, reasons_in
-from engine.order.order import LeftOut, Visit
+from engine.night import reasons_in
+from engine.order.local import local_time
+from engine.order.order import Visit
 from engine.order.problem import Problem
-from engine.times import MINUTES_PER_DAY, datetime_from_mjd
+from engine.times import MINUTES_PER_DAY
 
 # An end nearer than this is a reason to go now.
 SOON_MIN = 100.0
@@ -17,16 +16,9 @@ SOON_MIN = 100.0
 NEAR_BEST = 0.03
 
 
-def local_time(problem: Problem, mjd: float) -> str:
-    """Return a moment (UTC MJD) as local time, ``02:10``."""
-    zone = ZoneInfo(problem.night.observatory.site.timezone)
-    return datetime_from_mjd(mjd + 0.5 / MINUTES_PER_DAY).astimezone(zone).strftime("%H:%M")
-
-
-def reason_for(problem: Problem, visit: Visit) -> str:
-    """Return why a visit is now: what ends soon, or what is best about it."""
+def reason_for(problem: Problem, index: int, visit: Visit) -> str:
+    """Return why a visit of a target (its place) is now: what ends soon, what is best about it."""
     night = problem.night
-    index = night.target_index(visit.target)
     last = night.index_at(visit.end_mjd)
     ahead = night.limits[index, last:] != 0
     parts = _decided(problem, index)
@@ -35,8 +27,10 @@ def reason_for(problem: Problem, visit: Visit) -> str:
         minutes = (night.mjd[place] - visit.start_mjd) * MINUTES_PER_DAY
         if minutes < SOON_MIN:
             parts.append(f"{_ending(problem, index, place)} in {minutes:.0f} min")
-    parts += _moon_coming(problem, visit)
-    if not parts:
+    moonrise_mjd = _moonrise_mjd(problem, visit)
+    if moonrise_mjd is not None:
+        parts.append(_before_the_moon(problem, index, visit, moonrise_mjd))
+    elif not parts:
         parts.append(_height(problem, index, visit))
     target = problem.targets[index]
     if target.role == "standard":
@@ -71,64 +65,35 @@ def _ending(problem: Problem, index: int, place: int) -> str:
     }.get(first.code, first.label)
 
 
-def _moon_coming(problem: Problem, visit: Visit) -> list[str]:
-    """Return that the Moon rises within two hours of a visit that still has a dark sky."""
+def _moonrise_mjd(problem: Problem, visit: Visit) -> float | None:
+    """Return when the Moon rises, if within two hours of a visit that still has a dark sky."""
     night = problem.night
     begin, end = night.index_at(visit.start_mjd), night.index_at(visit.end_mjd + 2.0 / 24.0)
     up = night.moon.altitude_deg[begin:end] > 0.0
     if up.size == 0 or up[0] or not up.any():
-        return []
-    return [
-        f"before the Moon rises at {local_time(problem, night.mjd[begin + int(np.argmax(up))])}"
-    ]
+        return None
+    return float(night.mjd[begin + int(np.argmax(up))])
+
+
+def _before_the_moon(problem: Problem, index: int, visit: Visit, moonrise_mjd: float) -> str:
+    rises = f"the Moon rises at {local_time(problem, moonrise_mjd)}"
+    best, best_mjd = _best_airmass(problem, index)
+    if best_mjd > moonrise_mjd and visit.airmass_start > best + NEAR_BEST:
+        return f"best airmass {best:.2f} at {local_time(problem, best_mjd)}, but {rises}"
+    return f"before {rises}"
+
+
+def _best_airmass(problem: Problem, index: int) -> tuple[float, float]:
+    """Return the least airmass ahead at which a target may be observed, and when (UTC MJD)."""
+    night = problem.night
+    allowed = night.limits[index, problem.first :] == 0
+    usable = np.where(allowed, night.airmass[index, problem.first :], np.inf)
+    place = int(np.argmin(usable))
+    return float(usable[place]), float(night.mjd[problem.first + place])
 
 
 def _height(problem: Problem, index: int, visit: Visit) -> str:
-    night = problem.night
-    masses = night.airmass[index, problem.first :]
-    allowed = night.limits[index, problem.first :] == 0
-    usable = np.where(allowed, masses, np.inf)
-    best = int(np.argmin(usable))
-    if visit.airmass_start <= usable[best] + NEAR_BEST:
-        return f"near its best airmass, {usable[best]:.2f}"
-    when = local_time(problem, night.mjd[problem.first + best])
-    return f"airmass {visit.airmass_start:.2f}, best {usable[best]:.2f} at {when}"
-
-
-def left_out(problem: Problem, visited: set[str]) -> tuple[LeftOut, ...]:
-    """Return every target with something left to do that is not visited, and why."""
-    return tuple(
-        LeftOut(target.name, _why_left_out(problem, index))
-        for index, target in enumerate(problem.targets)
-        if target.name not in visited and any(line.remaining for line in problem.plans[target.name])
-    )
-
-
-def _why_left_out(problem: Problem, index: int) -> str:
-    name = problem.targets[index].name
-    pin_mjd = problem.rules.pinned.get(name)
-    if pin_mjd is not None:
-        return f"pinned to {local_time(problem, pin_mjd)}, but {_why_not_in(problem, index)}"
-    return _why_not_in(problem, index)
-
-
-def _why_not_in(problem: Problem, index: int) -> str:
-    name = problem.targets[index].name
-    if name in problem.rules.dropped:
-        return "dropped for tonight by the observer"
-    own = [place for place in problem.of_target[index] if place >= 0]
-    if not own:
-        return "each filter it still needs was put aside for tonight"
-    if (problem.run_end[own] >= 0).any():
-        return "its hours go to targets worth more; a higher priority would bring it in"
-    night, at = problem.night, slice(problem.first, None)
-    dark = night.dark[[problem.lines[place].filter for place in own]][:, at].any(axis=0)
-    if not dark.any():
-        return "no darkness is left for its filters"
-    bits = night.limits[index, at]
-    if ((bits == 0) & dark).any():
-        return "its images would be larger than its own limit; better seeing would bring it in"
-    # The limit that most of the dark minutes break is the one to name.
-    broken = [(int(((bits & reason.bit) != 0)[dark].sum()), reason) for reason in REASONS]
-    _, reason = max(broken, key=lambda pair: pair[0])
-    return f"all night {reason.sentence}"
+    best, best_mjd = _best_airmass(problem, index)
+    if visit.airmass_start <= best + NEAR_BEST:
+        return f"near its best airmass, {best:.2f}"
+    return f"airmass {visit.airmass_start:.2f}, best {best:.2f} at {local_time(problem, best_mjd)}"

@@ -225,6 +225,12 @@ class Timeline:
         )
         return bool(stay.end_min - stay.runs[0].begin_min >= least - 1e-6)
 
+    def _long_enough_before(self, place: int, stay: Stay) -> bool:
+        """Say whether a stay put in a place is long enough: only the last may be what is left."""
+        if any(each.target == stay.target for each in self.stays[place:]):
+            return self._is_still_long_enough(stay)
+        return self._long_enough(stay)
+
     def _is_still_long_enough(self, stay: Stay) -> bool:
         least_min = self.problem.contiguous_min[stay.target]
         return bool(stay.end_min - stay.runs[0].begin_min >= least_min - 1e-6)
@@ -356,7 +362,8 @@ class Timeline:
             end_min = run.begin_min + run.count * each.each_min
             stay = Stay(each.target, leave_min, end_min, [run])
             if after is None or self._reaches(end_min, each.target, after):
-                return stay if self._is_one_with(place, stay) or self._long_enough(stay) else None
+                lawful = self._is_one_with(place, stay) or self._long_enough_before(place, stay)
+                return stay if lawful else None
             run = Run(run.line, run.count - 1, run.begin_min)
         return None
 
