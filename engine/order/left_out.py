@@ -58,7 +58,7 @@ def _why_closed(problem: Problem, index: int) -> str:
     """Return why a target can't be exposed at all from now on, and what would open it."""
     target, rules = problem.targets[index], problem.rules
     if target.name in rules.dropped:
-        return "dropped for tonight; release it to have it back"
+        return "dropped for tonight by the observer; release it to have it back"
     missing = [line.filter for line in problem.plans[target.name] if line.remaining]
     own = problem.lines_of(index)
     if not own:
