@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass, fields
 from datetime import date
 
@@ -62,6 +63,43 @@ def asked(index: PastIndex, logbook: Logbook) -> tuple[Asked, ...]:
         Asked(target.programme, target.name, line)
         for target in logbook.targets
         for line in done[target.name]
+    )
+
+
+@dataclass(frozen=True, slots=True)
+class ProgrammeTotal:
+    """A programme's plans together, in exposures; ``done`` counts no more than was asked for.
+
+    ``credit`` is the depth that was reached, in planned exposures, ``remaining_h`` the open shutter
+    that the rest takes.
+    """
+
+    programme: str
+    targets: int
+    finished: int
+    asked: int
+    done: int
+    credit: float
+    remaining_h: float
+
+
+def programme_totals(lines: Sequence[Asked]) -> tuple[ProgrammeTotal, ...]:
+    """Return the sums of plans by programme, in order of names."""
+    names = sorted({each.programme for each in lines})
+    return tuple(_programme(name, [e for e in lines if e.programme == name]) for name in names)
+
+
+def _programme(name: str, lines: Sequence[Asked]) -> ProgrammeTotal:
+    targets = {each.target for each in lines}
+    unfinished = {each.target for each in lines if each.line.remaining}
+    return ProgrammeTotal(
+        programme=name,
+        targets=len(targets),
+        finished=len(targets - unfinished),
+        asked=sum(each.line.planned for each in lines),
+        done=sum(each.line.planned - each.line.remaining for each in lines),
+        credit=sum(each.line.credit for each in lines),
+        remaining_h=sum(each.line.remaining * each.line.seconds for each in lines) / 3600.0,
     )
 
 

@@ -191,6 +191,19 @@ def test_an_index_of_another_version_or_logbook_is_made_anew(tmp_path: Path) -> 
             agrees(index, folder)
 
 
+def test_it_can_be_made_afresh(tmp_path: Path) -> None:
+    """What was changed in it without a trace is wrong until somebody asks for a new one."""
+    folder = tmp_path / "nights"
+    small_archive(folder)
+    PastIndex(folder, cache=tmp_path).close()
+    db = sqlite3.connect(index_path(folder, tmp_path))
+    db.execute("UPDATE exposure SET outcome = 'rejected'")
+    db.commit()
+    db.close()
+    with PastIndex(folder, cache=tmp_path, afresh=True) as index:
+        agrees(index, folder)
+
+
 def test_a_build_that_was_cut_short_is_finished_by_the_next(tmp_path: Path) -> None:
     """Logs that went in without their totals get them."""
     folder = tmp_path / "nights"

@@ -16,10 +16,11 @@ from hypothesis import strategies as st
 
 from engine.log import Amendment, Event, Exposure, LostTime, Note, Pointing, RunStart, RunStop
 from engine.logbook import load_logbook, sample_logbook
+from engine.night import plans
 from engine.past import PastIndex, done_before
 from engine.past.account import account
 from engine.past.carry import done_before_by_folding
-from engine.past.exposures import asked, history, refused, totals
+from engine.past.exposures import asked, history, programme_totals, refused, totals
 from engine.past.nights import Period, efficiency, nights
 from engine.past.search import Wanted, condition, find_exposures, find_words
 from engine.past.seeing import measurements, site_seeing
@@ -143,6 +144,25 @@ def test_history_totals_and_reasons_are_those_of_the_fold(index: PastIndex, arch
     assert bad
     assert [(each.outcome, each.reason) for each in told] == [("rejected", "trailed")]
     assert sum(each.count for each in told) == len(bad)
+
+
+def test_programmes_add_up_to_their_targets(index: PastIndex, archive: Path) -> None:
+    """Every line of every plan is in one programme; no more is done than was asked."""
+    logbook = load_logbook(archive)
+    lines = asked(index, logbook)
+    sums = programme_totals(lines)
+    assert {each.programme for each in sums} == {each.programme for each in logbook.targets}
+    assert sum(each.targets for each in sums) == len(logbook.targets)
+    planned = plans(logbook.targets, ())
+    assert sum(each.asked for each in sums) == sum(
+        line.planned for target in logbook.targets for line in planned[target.name]
+    )
+    assert all(0 <= each.done <= each.asked for each in sums)
+    assert 0 < sum(each.done for each in sums) < sum(each.line.done for each in lines)
+    left_s = sum(each.line.remaining * each.line.seconds for each in lines)
+    assert sum(each.remaining_h for each in sums) == pytest.approx(left_s / 3600.0)
+    finished = {each.target for each in lines} - {e.target for e in lines if e.line.remaining}
+    assert sum(each.finished for each in sums) == len(finished)
 
 
 def test_searching_by_condition_is_a_filter_over_the_fold(index: PastIndex, archive: Path) -> None:

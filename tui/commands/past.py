@@ -13,7 +13,7 @@ from engine.errors import NoAnswer, WarmroomError
 from engine.logbook import load_logbook
 from engine.logbook.text import shown
 from engine.past import PastIndex
-from engine.past.exposures import asked, frames_refused, history, refused, totals
+from engine.past.exposures import asked, frames_refused, history, programme_totals, refused, totals
 from engine.past.fit import fit_images
 from engine.past.nights import Period, efficiency, nights
 from engine.past.search import Condition, Wanted, condition, find_exposures, find_words
@@ -85,10 +85,12 @@ def _whole(index: PastIndex, arguments: argparse.Namespace, period: Period) -> i
     # The night under way still has most of its time before it.
     timezone = logbook.observatory.site.timezone
     tonight = night_of(SystemClock().now_mjd(), timezone).isoformat()
+    plans = asked(index, logbook)
     value = {
         "nights": lines,
         "time": efficiency([line for line in lines if line.night != tonight]),
-        "asked": asked(index, logbook),
+        "programmes": programme_totals(plans),
+        "asked": plans,
         "totals": totals(index),
         "seeing": site_seeing(measurements(index, period)),
     }

@@ -9,7 +9,7 @@ from engine.log import LOST_CAUSES, OUTCOMES
 from engine.logbook.text import one_line
 from engine.past.account import HEADINGS
 from engine.past.digest import STATES
-from engine.past.exposures import Asked, PastExposure, Refused, Total
+from engine.past.exposures import Asked, PastExposure, ProgrammeTotal, Refused, Total
 from engine.past.fit import ImageFit, Ratio
 from engine.past.nights import Efficiency, NightLine
 from engine.past.search import FoundWords
@@ -28,6 +28,7 @@ def whole(told: dict[str, Any], newest: int | None) -> None:
     """Print nights, time, totals and seeing; of the nights only the newest, if so many."""
     nights(told["nights"], newest)
     time(told["time"])
+    programmes(told["programmes"])
     done(told["asked"])
     others(told["totals"], {each.target for each in told["asked"]})
     if told["seeing"].all is not None:
@@ -99,6 +100,29 @@ def time(spent: Efficiency) -> None:
                 for c, h in sorted(spent.lost_h.items(), key=lambda item: -item[1])
             ]
     print_columns(("time", "", "", ""), rows)
+
+
+def programmes(sums: Sequence[ProgrammeTotal]) -> None:
+    """Print how far each programme has come."""
+    if not sums:
+        return
+    print("\nprogrammes, over all nights (depth in planned exposures):")
+    print_columns(
+        ("targets", "finished", "done", "asked", "depth", "remain", "programme"),
+        [
+            (
+                str(each.targets),
+                str(each.finished),
+                str(each.done),
+                str(each.asked),
+                f"{each.credit:.1f}",
+                f"{each.remaining_h:.1f} h",
+                one_line(each.programme, NAME) or "none",
+            )
+            for each in sums
+        ],
+        left=0,
+    )
 
 
 def done(asked: Sequence[Asked]) -> None:
