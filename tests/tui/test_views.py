@@ -10,6 +10,7 @@ import pytest
 
 from tests.tui.trial import Trial, a_logbook, play
 from tui.console.foot import foot_keys, foot_line
+from tui.console.keys import Keys
 from tui.console.panels.local import hhmm, whole_hours
 from tui.console.views import NIGHT, VIEWS
 from tui.console.views.classes import CLASSES
@@ -32,7 +33,7 @@ def test_every_view_of_the_table_is_there() -> None:
 @pytest.mark.parametrize("width", range(10, 200, 7))
 def test_the_foot_holds_whole_keys(width: int) -> None:
     """What does not fit whole is left out, and the view's own meaning of a key replaces another."""
-    keys = foot_keys({"go_on": "accept"}, [("tab", "turn")])
+    keys = foot_keys(Keys(), {"go_on": "accept"}, [("tab", "turn")])
     assert [word for key, word in keys if key == "tab"] == ["turn"]
     spans = foot_line(keys, width)
     assert sum(len(span.text) for span in spans) <= width

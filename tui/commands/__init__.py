@@ -94,6 +94,7 @@ COMMANDS: tuple[Command, ...] = (
             Option("--keys", "print every key that its files may have", {"action": "store_true"}),
         ),
     ),
+    Command("keys", "print every key of the console, and where to change it"),
     Command(
         "almanac",
         "print the night's Sun, twilight and Moon times",

@@ -66,6 +66,7 @@ def _told(state: NightState, rehearsal: Rehearsal) -> list[str]:
 def _console(arguments: argparse.Namespace, folder: Path) -> int:
     from tui.console.app import Console
     from tui.console.clockwork import Autopilot
+    from tui.console.keys import load_keys
     from tui.console.start import look_for, need_a_terminal, run_console
     from tui.look.terminal import SteadyDriver
 
@@ -74,7 +75,11 @@ def _console(arguments: argparse.Namespace, folder: Path) -> int:
     opener: Callable[[], Opened] = lambda: _open(arguments, folder, autopilot)  # noqa: E731
     pilot: Autopilot | None = autopilot
     console = Console(
-        opener, look=look_for(arguments.look), autopilot=pilot, driver_class=SteadyDriver
+        opener,
+        keys=load_keys(),
+        look=look_for(arguments.look),
+        autopilot=pilot,
+        driver_class=SteadyDriver,
     )
     return run_console(console)
 

@@ -17,12 +17,16 @@ def run(arguments: argparse.Namespace) -> int:
     if arguments.json:
         return _print_json(arguments)
     from tui.console.app import Console
+    from tui.console.keys import load_keys
     from tui.console.start import look_for, need_a_terminal, run_console
     from tui.look.terminal import SteadyDriver
 
     need_a_terminal()
     console = Console(
-        lambda: _open(arguments), look=look_for(arguments.look), driver_class=SteadyDriver
+        lambda: _open(arguments),
+        keys=load_keys(),
+        look=look_for(arguments.look),
+        driver_class=SteadyDriver,
     )
     return run_console(console)
 

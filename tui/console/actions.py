@@ -1,7 +1,7 @@
 """What the observer can do: one frozen table that feeds keys, footer, palette and help.
 
-An action's ``name`` is the stable id; the console runs ``action_<name>``. Nothing else in the
-console mentions a key, so that a key is changed in this one place.
+An action's ``name`` is the stable id. Nothing else in the console mentions a key, so that a key is
+changed in this one place, or by the observer (`tui.console.keys`).
 """
 
 from __future__ import annotations
@@ -186,9 +186,6 @@ ACTIONS: tuple[Action, ...] = (
     ),
 )
 
-_BY_NAME = {action.name: action for action in ACTIONS}
-ACTION_OF_KEY: dict[str, str] = {key: action.name for action in ACTIONS for key in action.keys}
-
 # What a key does to the list's cursor: how far, and in what.
 MOVES: dict[str, tuple[int, str]] = {
     "down": (1, "rows"),
@@ -205,16 +202,6 @@ MOVES: dict[str, tuple[int, str]] = {
 
 # Textual's names of keys, as a person reads them on the keyboard.
 _CAPS = {"question_mark": "?", "slash": "/", "space": "space", "enter": "enter", "f1": "F1"}
-
-
-def action_named(name: str) -> Action:
-    """Return the action with a name; KeyError for an unknown one."""
-    return _BY_NAME[name]
-
-
-def footer_actions() -> list[Action]:
-    """Return the actions of the footer in its order: what is needed first, what may be cut last."""
-    return sorted((a for a in ACTIONS if a.footer), key=lambda action: action.footer)
 
 
 def cap(key: str) -> str:

@@ -21,10 +21,11 @@ from textual.screen import Screen
 from textual.worker import Worker
 
 from engine.errors import WarmroomError
-from tui.console.actions import ACTION_OF_KEY, ACTIONS, MOVES
+from tui.console.actions import MOVES
 from tui.console.clockwork import TICK_S, Autopilot, Clockwork
 from tui.console.foot import foot_keys, foot_line
 from tui.console.help import HelpScreen
+from tui.console.keys import Keys
 from tui.console.views import NIGHT, VIEW_OF_ACTION
 from tui.look import LOOKS, CleanFilter, MonoFilter, RedFilter
 from tui.look.terminal import MustLeave
@@ -62,12 +63,14 @@ class Console(App[None]):
         tick_s: float = TICK_S,
         driver_class: type[Driver] | None = None,
         notices_steps: bool = False,
+        keys: Keys | None = None,
     ) -> None:
         super().__init__(driver_class=driver_class)
         self.failure: WarmroomError | None = None
         # What the observer must still be told once the terminal is her shell's again.
         self.parting: str | None = None
         self.look = look
+        self.keys = keys or Keys()
         self.find_text = ""
         self.panel = "list"
         self.notices: list[Span] = []
@@ -161,6 +164,8 @@ class Console(App[None]):
 
         self._painting = Painting(self, opened.watch)
         self._deeds = Deeds(self, opened.watch)
+        for fault in self.keys.faults:
+            self.tell(fault, "warn")
         for finding in opened.findings[:3]:
             self.tell(f"the log: line {finding.line}: {finding.what}", "warn")
 
@@ -219,8 +224,8 @@ class Console(App[None]):
         if self._entry.is_open:
             self._clockwork.guarded(lambda: self._entry.take_key(event.key, event.character))
             self.paint()
-        elif event.key in ACTION_OF_KEY:
-            self.action_do(ACTION_OF_KEY[event.key])
+        elif (action := self.keys.action_of(event.key, event.character)) is not None:
+            self.action_do(action)
         elif event.key in MOVES:
             self._clockwork.guarded(lambda: self._move(*MOVES[event.key]))
         elif (view := self._shown_view) is not None and view.take_key(event.key, event.character):
@@ -319,7 +324,7 @@ class Console(App[None]):
             self.tell(f"seen: {seen.cause.label.lower()}, {seen.cause.sentence}", "dim")
 
     def _do_help(self) -> None:
-        self.push_screen(HelpScreen(LOOKS[self.look]))
+        self.push_screen(HelpScreen(LOOKS[self.look], self.keys))
 
     def _do_leave(self) -> None:
         watch = self.live
@@ -370,9 +375,9 @@ class Console(App[None]):
         if self._painting is not None:
             self._painting.paint_foot()
             return
-        self.sheet("foot").show([foot_line(foot_keys(), self.size.width)])
+        self.sheet("foot").show([foot_line(foot_keys(self.keys), self.size.width)])
 
     def get_system_commands(self, screen: Screen[object]) -> Iterable[SystemCommand]:
         """Offer every action of the table in the command palette."""
-        for action in ACTIONS:
+        for action in self.keys.actions:
             yield SystemCommand(action.label, action.sentence, partial(self.action_do, action.name))

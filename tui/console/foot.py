@@ -4,23 +4,28 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Mapping, Sequence
 
-from tui.console.actions import action_named, cap, footer_actions
+from tui.console.actions import cap
+from tui.console.keys import Keys
 from tui.console.views import VIEWS
 from tui.paint.spans import Line, Span, cut, width_of
 
-Keys = list[tuple[str, str]]
+Caps = list[tuple[str, str]]
 # How many of the footer's actions stand before the keys of the views.
 BEFORE_VIEWS = 2
 
 
-def foot_keys(labels: Mapping[str, str] | None = None, own: Sequence[tuple[str, str]] = ()) -> Keys:
+def foot_keys(
+    in_force: Keys,
+    labels: Mapping[str, str] | None = None,
+    own: Sequence[tuple[str, str]] = (),
+) -> Caps:
     """Return the foot's keys and words, the most needed first.
 
     ``labels`` holds other words for actions by name, ``own`` the keys of the view that is shown.
     """
     said = labels or {}
-    keys = [(cap(a.keys[0]), said.get(a.name, a.label)) for a in footer_actions()]
-    of_views = [cap(action_named(each.action).keys[0]) for each in VIEWS]
+    keys = [(cap(a.keys[0]), said.get(a.name, a.label)) for a in in_force.footer()]
+    of_views = [in_force.cap_of(each.action) for each in VIEWS]
     views = [(f"{of_views[0]}-{of_views[-1]}", "views")] if len(of_views) > 1 else []
     # A view may have given a key of the table another meaning while it is shown.
     taken = {key for key, _ in own}
@@ -38,11 +43,11 @@ def foot_line(keys: Iterable[tuple[str, str]], width: int) -> Line:
     return tuple(spans)
 
 
-def views_line(shown: str, width: int) -> Line:
+def views_line(shown: str, width: int, in_force: Keys) -> Line:
     """Return the line that names every view with its key, the one shown in capitals."""
     spans: list[Span] = []
     for each in VIEWS:
-        key = cap(action_named(each.action).keys[0])
+        key = in_force.cap_of(each.action)
         title = each.title.upper() if each.name == shown else each.title
         spans += [Span(f" {key}", "accent"), Span(f" {title} ", _role(each.name == shown))]
     return cut(tuple(spans), width)

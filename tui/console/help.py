@@ -7,7 +7,8 @@ from textual.binding import Binding
 from textual.containers import VerticalScroll
 from textual.screen import ModalScreen
 
-from tui.console.actions import ACTIONS, GROUPS, cap
+from tui.console.actions import GROUPS, cap
+from tui.console.keys import Keys
 from tui.look import Look
 from tui.paint.spans import BLANK, Line, Span, line, wrapped
 from tui.widgets import Sheet
@@ -32,9 +33,10 @@ class HelpScreen(ModalScreen[None]):
         Binding("escape,q,question_mark,f1", "dismiss", show=False)
     ]
 
-    def __init__(self, look: Look) -> None:
+    def __init__(self, look: Look, keys: Keys) -> None:
         super().__init__()
         self._look = look
+        self._keys = keys
 
     def compose(self) -> ComposeResult:
         """Make one long sheet that scrolls."""
@@ -44,13 +46,13 @@ class HelpScreen(ModalScreen[None]):
     def on_mount(self) -> None:
         """Write the help for the width there is."""
         sheet = self.query_one("#help", Sheet)
-        lines = help_lines(self.app.size.width - 4)
+        lines = help_lines(self._keys, self.app.size.width - 4)
         sheet.styles.height = len(lines)
         sheet.set_look(self._look)
         sheet.show(lines)
 
 
-def help_lines(width: int) -> list[Line]:
+def help_lines(keys: Keys, width: int) -> list[Line]:
     """Return the help in lines of at most so many cells."""
     lines: list[Line] = [
         line(Span(" warmroom", "strong"), Span("  advises, and controls nothing", "dim")),
@@ -65,12 +67,12 @@ def help_lines(width: int) -> list[Line]:
     ]
     for group in GROUPS:
         lines += [BLANK, line(Span(f" {group}", "title"))]
-        for action in ACTIONS:
+        for action in keys.actions:
             if action.group == group:
                 lines += _entry(" ".join(cap(key) for key in action.keys), action.sentence, width)
     lines += [BLANK, line(Span(" moving about", "title"))]
-    for keys, sentence in MOVING:
-        lines += _entry(keys, sentence, width)
+    for moving, sentence in MOVING:
+        lines += _entry(moving, sentence, width)
     return lines
 
 

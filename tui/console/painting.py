@@ -6,7 +6,6 @@ from typing import TYPE_CHECKING
 
 from engine.watch import Watch
 from engine.watch.alarms import Alarms, causes_now
-from tui.console.actions import action_named, cap
 from tui.console.foot import foot_keys, foot_line, views_line
 from tui.console.panels.alarms import TALL, paint_alarm
 from tui.console.panels.head import paint_head
@@ -84,7 +83,7 @@ class Painting:
     def paint_foot(self) -> None:
         """Show the keys, the common one with what it does now, and those of the view."""
         own = self.view.hints if self.view is not None else ()
-        keys = foot_keys({"go_on": go_on_label(self._watch)}, own)
+        keys = foot_keys(self._console.keys, {"go_on": go_on_label(self._watch)}, own)
         foot = self._console.sheet("foot")
         foot.show([foot_line(keys, foot.size.width)])
 
@@ -94,7 +93,12 @@ class Painting:
         width, height = sheet.size
         # It has no size until it has been laid out; then it is painted again.
         if height > 1:
-            sheet.show([views_line(self._console.view, width), *view.paint(width, height - 1)])
+            sheet.show(
+                [
+                    views_line(self._console.view, width, self._console.keys),
+                    *view.paint(width, height - 1),
+                ]
+            )
 
     def _paint_panels(self) -> None:
         self._arrange()
@@ -138,7 +142,7 @@ class Painting:
         waiting = self.alarms.waiting
         sheet.display = bool(waiting)
         rows = TALL if console.is_wide else 1
-        key = cap(action_named("acknowledge").keys[0])
+        key = console.keys.cap_of("acknowledge")
         sheet.show(paint_alarm(waiting, key, sheet.size.width, rows))
 
     def _tell_trouble(self) -> None:

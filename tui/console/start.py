@@ -15,6 +15,7 @@ import platformdirs
 from engine.clock import Clock, SystemClock
 from engine.errors import NoAnswer
 from tui.console.app import Console
+from tui.console.keys import load_keys
 from tui.look.terminal import SteadyDriver
 
 if TYPE_CHECKING:
@@ -37,6 +38,7 @@ def open_console(arguments: argparse.Namespace) -> int:
         look=look_for(arguments.look),
         driver_class=SteadyDriver,
         notices_steps=True,
+        keys=load_keys(),
     )
     return run_console(console)
 
