@@ -58,7 +58,7 @@ def typed_place(text: str) -> tuple[object, object]:
     """
     found = _COORDINATES.match(" ".join(text.split()))
     if found is None:
-        raise ValueError("expected such as 08:51:18 +11:48:00, the second with its sign")
+        raise ValueError("expected 08:51:18 +11:48:00, with its sign")
     return _angle("ra", found["ra"]), _angle("dec", found["dec"])
 
 

@@ -69,7 +69,7 @@ def test_it_follows_until_it_is_scrolled(folder: Path, size: tuple[int, int]) ->
         assert "following" in trial.text("view")
         await trial.press("n")
         await trial.type("first")
-        assert view_of(trial)._at_n == trial.watch.state.events[-1].n
+        assert view_of(trial)._at_n == trial.watch.state.notes[-1].n
         assert "first" in trial.text("view")
         await trial.press("up", "up")
         at = view_of(trial)._at_n
@@ -78,7 +78,7 @@ def test_it_follows_until_it_is_scrolled(folder: Path, size: tuple[int, int]) ->
         assert view_of(trial)._at_n == at
         assert "end follows again" in trial.text("view")
         await trial.press("G")
-        assert view_of(trial)._at_n == trial.watch.state.events[-1].n
+        assert view_of(trial)._at_n == trial.watch.state.notes[-1].n
         assert "following" in trial.text("view")
 
     play(folder, story, size=size)
@@ -115,7 +115,7 @@ def test_kinds_are_shown_apart(folder: Path) -> None:
 
     async def story(trial: Trial) -> None:
         await a_run(trial)
-        await trial.press("tab")
+        await trial.press("tab", "tab")
         count = len(trial.watch.state.exposures)
         assert f"{count} of {len(trial.watch.state.events)} entries" in trial.text("view")
         for row in trial.text("view").splitlines()[2 : 2 + count]:
@@ -159,7 +159,7 @@ def test_an_exposure_is_put_right(folder: Path, size: tuple[int, int]) -> None:
         await a_run(trial)
         first = trial.watch.state.exposures[0]
         await put_cursor_on(trial, first.n)
-        await trial.press("a", "f", "backspace")
+        await trial.press("e", "f", "backspace")
         await trial.type("Q")
         assert "'Q' is none" in trial.text("entry")
         assert "Q▏" in trial.text("entry")
@@ -220,7 +220,7 @@ def test_a_note_is_corrected_from_what_it_said(folder: Path) -> None:
         await trial.type("cluod")
         note = trial.watch.state.notes[0]
         await put_cursor_on(trial, note.n)
-        await trial.press("a", "x")
+        await trial.press("e", "x")
         assert "cluod▏" in trial.text("entry")
         await trial.press("backspace", "backspace", "backspace")
         await trial.type("oud")

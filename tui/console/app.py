@@ -228,13 +228,24 @@ class Console(App[None]):
             self.action_do(action)
         elif event.key in MOVES:
             self._clockwork.guarded(lambda: self._move(*MOVES[event.key]))
-        elif (view := self._shown_view) is not None and view.take_key(event.key, event.character):
+        elif self._is_taken_by_view(event):
             self.paint()
         elif event.key == "escape":
             self._put_aside()
         else:
             return False
         return True
+
+    def _is_taken_by_view(self, event: Key) -> bool:
+        """Offer a key to the view that is shown; what it can't do now is told in one line."""
+        view, taken = self._shown_view, True
+
+        def offer() -> None:
+            nonlocal taken
+            taken = view is not None and view.take_key(event.key, event.character)
+
+        self._clockwork.guarded(offer)
+        return taken
 
     def _move(self, by: int, unit: str) -> None:
         """Move the cursor of the view that is shown, else that of the list."""

@@ -167,7 +167,11 @@ class Clockwork:
 
     def _planned(self, planned: Planned | None) -> None:
         self._planning = False
-        if self.watch is None or planned is None:
+        if self.watch is None:
+            return
+        if planned is None:
+            # An idle look found nothing; what was wanted meanwhile has waited for it.
+            self.plan_if_wanted()
             return
         self.watch.adopt(planned)
         for said in reversed(planned.plan.news):

@@ -12,11 +12,13 @@ from typing import Any
 
 from rich.cells import cell_len
 
-from tui.paint.spans import Line, Span, spread
+from tui.paint.spans import Line, Span, fitted, spread
 from tui.widgets.sheet import Sheet
 
 CURSOR = "▏"
 LONGEST = 10_000
+# So much of what was typed stays in sight beside a fault.
+LEAST_SEEN = 24
 
 
 @dataclass(frozen=True, slots=True)
@@ -143,9 +145,13 @@ class Entry(Sheet):
             for letter, word in question.choices
             for part, role in ((f"{letter} ", "accent"), (f"{word}  ", "text"))
         )
-        room = max(self.app.size.width - len(question.label) - len(self._fault) - 6, 10)
+        room = max(self.app.size.width - len(question.label) - len(self._fault) - 6, LEAST_SEEN)
         answer = choices or (Span(in_sight(self._text, self._at, room), "strong"),)
-        left: Line = (Span(f" {question.label}: ", "accent"), *answer)
+        # What was typed and what is wrong with it matter more than what was asked.
+        typed = min(cell_len(self._text) + len(CURSOR), LEAST_SEEN) if not choices else 0
+        most = max(self.app.size.width - cell_len(self._fault) - typed - 6, 8)
+        label = question.label if cell_len(question.label) <= most else fitted(question.label, most)
+        left: Line = (Span(f" {label}: ", "accent"), *answer)
         self.show([spread(left, (Span(f"{self._fault} ", "bad"),), self.app.size.width)])
 
 

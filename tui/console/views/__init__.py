@@ -38,6 +38,7 @@ VIEWS: tuple[ViewEntry, ...] = (
     ),
     ViewEntry("image", "4", "image", "Show image sizes: which blur, what will be soft, and when."),
     ViewEntry("log", "5", "log", "Show the log as it grows: search it, put entries right."),
+    ViewEntry("targets", "6", "targets", "Show the targets by programme: add, edit, import."),
     ViewEntry(
         "past", "7", "past", "Show past nights: each again, a target's history, the site's seeing."
     ),

@@ -8,11 +8,13 @@ from tui.console.views.image import Image
 from tui.console.views.past import Past
 from tui.console.views.records import Records
 from tui.console.views.sky import Sky
+from tui.console.views.targets import Targets
 
 CLASSES: dict[str, type[View]] = {
     "sky": Sky,
     "conditions": Conditions,
     "image": Image,
     "log": Records,
+    "targets": Targets,
     "past": Past,
 }

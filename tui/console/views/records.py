@@ -32,14 +32,21 @@ OF_A_TARGET = ("put_off", "take_next", "take_at")
 
 @dataclass(frozen=True, slots=True)
 class Filter:
-    """Which kinds of entries are shown, and what that is called."""
+    """Which kinds of entries are shown, and what that is called; without any, all but a few."""
 
     title: str
-    kinds: tuple[str, ...]
+    kinds: tuple[str, ...] = ()
+    without: tuple[str, ...] = ()
+
+    def takes(self, kind: str) -> bool:
+        """Whether an entry of a kind is shown."""
+        return (not self.kinds or kind in self.kinds) and kind not in self.without
 
 
 FILTERS = (
-    Filter("everything", ()),
+    # Without what the console writes by itself and what an exposure's own entry says again.
+    Filter("in short", without=("exposure_start", "run_stop", "order")),
+    Filter("everything"),
     Filter("exposures", ("exposure",)),
     Filter("sky and air", ("conditions", "focus")),
     Filter("notes", ("note",)),
@@ -73,7 +80,7 @@ class Records(View):
         found = (("← →", "matches"),) if self._text else ()
         return (
             *found,
-            ("a", "amend"),
+            ("e", "amend"),
             ("x", "reject, restore"),
             ("d", "withdraw, restore"),
             ("enter", "the list" if self._is_open else "in full"),
@@ -180,10 +187,8 @@ class Records(View):
 
     def _look(self) -> None:
         """Work out which entries are shown and which are found."""
-        kinds = FILTERS[self._filter].kinds
-        self._shown = tuple(
-            n for n, each in self._entries.items() if not kinds or each.written.kind in kinds
-        )
+        takes = FILTERS[self._filter].takes
+        self._shown = tuple(n for n, each in self._entries.items() if takes(each.written.kind))
         text = self._text.casefold()
         self._found = tuple(n for n in self._shown if text and text in self._said_by(n))
         if self._n is not None and self._n not in self._shown:
@@ -235,7 +240,7 @@ class Records(View):
         """Go to the next match or the one before, amend, or put the search aside."""
         if key in ("left", "right"):
             self._go_to_match(1 if key == "right" else -1)
-        elif character == "a":
+        elif character == "e":
             self._ask_which()
         elif key == "escape" and self._is_open:
             self._is_open = False

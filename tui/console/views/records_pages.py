@@ -149,6 +149,8 @@ def _said(value: Value | None) -> str:
             return f"{value:%Y-%m-%d %H:%M:%S}.{value.microsecond // 1000:03d} UTC"
         case float():
             return f"{value:.10g}"
+        case list() if value and all(isinstance(each, datetime) for each in value):
+            return ", ".join(f"{each:%H:%M:%S}" for each in value) + " UTC"
         case list():
             return ", ".join(_said(each) for each in value) or "none"
         case bool():
