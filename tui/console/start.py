@@ -27,10 +27,10 @@ def open_console(arguments: argparse.Namespace) -> int:
     need_a_terminal()
     folder: Path = arguments.logbook
     if not (folder / "observatory.toml").exists():
-        raise NoAnswer(
-            f"{folder}: no observatory.toml in it, so no logbook yet; "
-            "name one with --logbook, or see one at work with 'warmroom demo'"
-        )
+        from tui.first_use import offer_logbook
+
+        if not offer_logbook(folder):
+            return 1
     clock = SystemClock()
     observers = tuple(arguments.observer)
     console = Console(
