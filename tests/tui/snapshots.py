@@ -50,8 +50,9 @@ def _screens(folder: Path, look: str, size: tuple[int, int]) -> dict[str, str]:
         trial.watch.tick()
         for entry in VIEWS:
             await trial.press(entry.key, "escape")
-            trial.console.paint()
             await trial.settle()
+            trial.console.paint()
+            await trial.pilot.pause()
             found[f"{entry.name}-{look}-{size[0]}x{size[1]}.txt"] = written(trial)
 
     play(a_logbook(folder), story, size=size, look=look)

@@ -107,10 +107,11 @@ class Trial:
         await self.settle()
 
     async def settle(self) -> None:
-        """Wait until no plan is wanted or under way."""
+        """Wait until no plan is wanted or under way, and no worker is at work."""
         for _ in range(400):
             await self.pilot.pause()
-            if self.console.live is not None and self.console.is_settled:
+            at_work = any(not each.is_finished for each in self.console.workers)
+            if self.console.live is not None and self.console.is_settled and not at_work:
                 return
             await asyncio.sleep(0.01)
         raise AssertionError("the console never settled")

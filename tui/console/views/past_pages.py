@@ -85,6 +85,8 @@ def nights_page(
     scale = seeing_scale(seeing_cells)
     columns = f"  {'night':<10}  dark {'time':<{time_cells}} {scale}  median  kept"
     shown: list[Line] = [phrases(width, *head), line(Span(columns, "dim"))]
+    if not newest:
+        return [*shown, line(Span("  no earlier night is in this logbook yet", "dim"))]
     return shown + [
         _night_row(newest[at], at == cursor, time_cells, seeing_cells, width)
         for at in window(len(newest), cursor, rows - len(shown))
