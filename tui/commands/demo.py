@@ -67,16 +67,18 @@ def _console(arguments: argparse.Namespace, folder: Path) -> int:
     from tui.console.app import Console
     from tui.console.clockwork import Autopilot
     from tui.console.keys import load_keys
+    from tui.console.lesson import Lesson
     from tui.console.start import look_for, need_a_terminal, run_console
     from tui.look.terminal import SteadyDriver
 
     need_a_terminal()
+    keys = load_keys()
     autopilot = _Onlooker() if not arguments.drive else None
     opener: Callable[[], Opened] = lambda: _open(arguments, folder, autopilot)  # noqa: E731
-    pilot: Autopilot | None = autopilot
+    pilot: Autopilot = autopilot or Lesson(keys)
     console = Console(
         opener,
-        keys=load_keys(),
+        keys=keys,
         look=look_for(arguments.look),
         autopilot=pilot,
         driver_class=SteadyDriver,
