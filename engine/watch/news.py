@@ -128,12 +128,15 @@ def _soon(order: Order, from_mjd: float, until_mjd: float) -> set[str]:
 
 
 def _moved(night: Night, before: Order, after: Order) -> list[str]:
-    was = {visit.target: visit.start_mjd for visit in reversed(before.visits)}
+    was: dict[str, list[float]] = {}
+    for visit in before.visits:
+        was.setdefault(visit.target, []).append(visit.start_mjd)
     zone = ZoneInfo(night.observatory.site.timezone)
     moved = []
     for visit in after.visits:
-        old = was.get(visit.target)
-        if old is None or abs(visit.start_mjd - old) * MINUTES_PER_DAY < MOVED_MIN:
+        # Of a target with several visits, one has moved if none of those before was near it.
+        away = [abs(visit.start_mjd - old) * MINUTES_PER_DAY for old in was.get(visit.target, ())]
+        if not away or min(away) < MOVED_MIN:
             continue
         if (visit.start_mjd - after.from_mjd) * MINUTES_PER_DAY > SOON_MIN:
             continue

@@ -2,16 +2,29 @@
 
 from __future__ import annotations
 
+import math
+
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from tui.paint.canvas import Stroke
+from tui.paint.canvas import Canvas, Scale, Stroke
 from tui.paint.chart import Chart, Curve, paint_chart
 from tui.paint.figures import bar, large, minutes_seconds, pips
 from tui.paint.night_axis import NightAxis
 from tui.paint.night_strip import Block, NightStrip, paint_strip
-from tui.paint.spans import Span, cut, fitted, line, spread, width_of, wrapped
+from tui.paint.spans import (
+    Span,
+    cut,
+    fitted,
+    line,
+    phrases,
+    spread,
+    whole_phrases,
+    width_of,
+    wrapped,
+)
+from tui.paint.trend import Trend, paint_trend
 
 
 def text_of(spans: tuple[Span, ...]) -> str:
@@ -129,3 +142,51 @@ def test_a_chart_has_its_curve_limit_and_now() -> None:
     assert not any("╱" in row for row in told[:6])
     dots = [[i for i, c in enumerate(row) if 0x2800 < ord(c) <= 0x28FF] for row in told]
     assert dots[-1][0] < dots[5][0] < dots[5][-1] < dots[-1][-1]
+
+
+@given(
+    st.lists(st.text("abc ", min_size=1, max_size=9), min_size=1, max_size=5), st.integers(9, 50)
+)
+def test_phrases_are_whole_or_not_there(parts: list[str], width: int) -> None:
+    """Text parted by commas loses its last phrases, spans in groups those that do not fit."""
+    text = ", ".join(parts)
+    told = whole_phrases(text, width)
+    assert text.startswith(told)
+    assert len(told) <= width
+    assert told == text or text[len(told) :].startswith(", ")
+    shown = phrases(width, *(line(Span(part)) for part in parts))
+    assert width_of(shown) <= width
+    left = iter(parts)
+    assert all(span.text in left for span in shown)
+
+
+def test_a_canvas_keeps_labels_apart() -> None:
+    """Labels near the same place all find room, on different cells, and off the curve."""
+    canvas = Canvas(40, 10)
+    canvas.curve([45.0] * 40, Scale(0.0, 90.0), Stroke())
+    assert all(canvas.label(5, 20, (name,), "strong") for name in ("First", "Second", "Third"))
+    told = [text_of(row) for row in canvas.lines()]
+    for name in ("First", "Second", "Third"):
+        assert sum(name in row for row in told) == 1
+    curve = next(row for row in told if any(0x2800 < ord(c) <= 0x28FF for c in row))
+    assert not any(name in curve for name in ("First", "Second", "Third"))
+
+
+def test_a_trend_has_its_points_band_and_level() -> None:
+    """Points stand at their values, the band is only where something is foretold."""
+    half = [math.nan] * 50 + [1.2] * 50
+    trend = Trend(
+        axis=NightAxis(10.0, 19.0, 5.0),
+        points=((0.1, 0.8), (0.4, 1.6)),
+        middle=half,
+        low=[v - 0.3 for v in half],
+        high=[v + 0.3 for v in half],
+        level=(1.4, "usual 1.4"),
+    )
+    rows = [text_of(row) for row in paint_trend(trend, 65, 13)]
+    assert {len(row) for row in rows} == {65}
+    points = [(row, each.index("●")) for row, each in enumerate(rows) if "●" in each]
+    assert [column for _, column in points] == [5 + 24, 5 + 6]
+    assert any("usual 1.4" in each for each in rows)
+    dots = [at for each in rows for at, c in enumerate(each) if 0x2800 < ord(c) <= 0x28FF]
+    assert min(dots) >= 5 + 30

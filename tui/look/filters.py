@@ -103,8 +103,10 @@ def _red(style: Style) -> Style:
 def _red_of_sixteen(style: Style) -> Style:
     text, _ = _levels(style)
     # A terminal has one red, one bright red and black, and some make the first so dark that black
-    # on it can't be read: a ground is bright red or nothing.
-    if _brightness(style.bgcolor, 0.0) > 40.0:
+    # on it can't be read: a ground is bright red or nothing. It is kept for what stands out by its
+    # weight too (the cursor): a wide field of it would be too bright for eyes used to the dark.
+    ground = _brightness(style.bgcolor, 0.0)
+    if ground > (40.0 if style.bold else 100.0):
         return style + Style(color=_BLACK, bgcolor=_BRIGHT_RED, dim=False)
     return style + Style(color=_BRIGHT_RED if text >= 175 else _RED, bgcolor=_BLACK, dim=False)
 

@@ -53,6 +53,14 @@ def cut(spans: Line, width: int) -> Line:
     return tuple(kept)
 
 
+def whole_phrases(text: str, width: int) -> str:
+    """Return text, or as many of its phrases (parted by commas) as fit; the first at least."""
+    parts = text.split(", ")
+    while len(parts) > 1 and cell_len(", ".join(parts)) > width:
+        parts.pop()
+    return ", ".join(parts)
+
+
 def phrases(width: int, *parts: Line) -> Line:
     """Return parts one after the other, leaving out every one that does not fit whole."""
     kept: list[Span] = []

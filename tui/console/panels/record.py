@@ -7,11 +7,13 @@ from engine.order import Visit
 from engine.seeing import SeeingMeasurement, summary
 from engine.watch import Watch
 from tui.console.panels.local import ahead, arcsec, hhmm, local
-from tui.paint.spans import Line, Span, cut, line, width_of, wrapped
+from tui.paint.spans import Line, Span, cut, line, phrases, whole_phrases, width_of, wrapped
 
 # What the console writes by itself and what every exposure says twice: not worth a line here.
 NOT_SHOWN = ("exposure_start", "order")
 REASON_LINES, NAMES_LINES = 2, 6
+# The time of an entry and the mark that it is on disk.
+ENTRY_HEAD = 12
 
 
 def paint_order(watch: Watch, width: int, height: int) -> list[Line]:
@@ -62,12 +64,13 @@ def paint_log(watch: Watch, width: int, height: int) -> list[Line]:
     shown = [event for event in state.events if event.kind not in NOT_SHOWN]
     last_on_disk = len(state.events) - watch.unwritten
     written = {event.n for event in state.events[:last_on_disk]}
-    head = line(
-        Span(" the log", "title"),
-        Span(f"  {len(state.events)} entries", "dim"),
-        Span(_seeing_so_far(watch), "dim"),
+    head = phrases(
+        width,
+        line(Span(" the log", "title")),
+        line(Span(f"  {len(state.events)} entries", "dim")),
+        line(Span(_seeing_so_far(watch), "dim")),
     )
-    lines = [_entry(watch, event, written) for event in shown[-max(height - 1, 1) :]]
+    lines = [_entry(watch, event, written, width) for event in shown[-max(height - 1, 1) :]]
     return [cut(each, width) for each in [head, *lines]]
 
 
@@ -83,11 +86,12 @@ def _seeing_so_far(watch: Watch) -> str:
     )
 
 
-def _entry(watch: Watch, event: Event, written: set[int]) -> Line:
+def _entry(watch: Watch, event: Event, written: set[int], width: int) -> Line:
     gone = event.n in watch.state.withdrawn
+    said = f"{'withdrawn: ' if gone else ''}{title(event)}"
     mark = Span("✓", "good") if event.n in written else Span("…", "warn")
     return line(
         Span(f" {local(watch, event.t_mjd):%H:%M:%S} ", "dim"),
         mark,
-        Span(f" {'withdrawn: ' if gone else ''}{title(event)}", "dim" if gone else "text"),
+        Span(f" {whole_phrases(said, width - ENTRY_HEAD)}", "dim" if gone else "text"),
     )

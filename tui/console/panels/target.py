@@ -15,7 +15,8 @@ from tui.paint.chart import Chart, Curve, paint_chart
 from tui.paint.figures import bar, pips
 from tui.paint.spans import Line, Span, line, phrases
 
-LEAST_CHART_ROWS, MOST_CHART_ROWS = 4, 14
+LEAST_CHART_ROWS, MOST_CHART_ROWS = 6, 14
+MOST_PIPS = 12
 TERM_BAR = 11
 
 
@@ -25,7 +26,11 @@ def paint_target(watch: Watch, name: str | None, width: int, height: int) -> lis
     if now is None:
         return [line(Span(" no target is chosen", "dim"))]
     head = _head(watch, now, width)
-    tail = [*_plan(now, width), *_terms(watch, now, width), *_reach(watch, now, width)]
+    tail = [*_plan(now, width), *_terms(watch, now, width)]
+    reached = _reach(watch, now, width)
+    # On a small screen the curve is worth more than what an exposure reaches.
+    if height - len(head) - len(tail) - len(reached) >= LEAST_CHART_ROWS:
+        tail += reached
     rows = min(height - len(head) - len(tail), MOST_CHART_ROWS)
     chart = _chart(watch, now, width, rows) if rows >= LEAST_CHART_ROWS else []
     return [*head, *chart, *tail][:height]
@@ -78,6 +83,13 @@ def _plan(now: TargetNow, width: int) -> list[Line]:
     return [_plan_line(now, each, width) for each in now.filters]
 
 
+def _done(done: int, planned: int) -> str:
+    """Return what is done as pips, or as a bar where they are too many."""
+    if planned > MOST_PIPS:
+        return bar(done / planned, MOST_PIPS)
+    return pips(done, planned).ljust(MOST_PIPS)
+
+
 def _plan_line(now: TargetNow, one: FilterNow, width: int) -> Line:
     limit = now.target.maximum_image_size_arcsec
     plan = one.progress
@@ -86,7 +98,7 @@ def _plan_line(now: TargetNow, one: FilterNow, width: int) -> Line:
         line(
             Span(f" {plan.filter:<3}", "title"),
             Span(f"{plan.seconds:>4g} s  ", "text"),
-            Span(f"{pips(plan.done, plan.planned):<12}", "good"),
+            Span(_done(plan.done, plan.planned), "good"),
             Span(f" {plan.done}/{plan.planned}", "text"),
         ),
         line(Span(f"  depth {plan.credit:.1f}", "dim")),

@@ -112,7 +112,7 @@ def _done(now: TargetNow) -> str:
     if len(each_one) <= DONE_WIDTH:
         return each_one
     done, planned = sum(plan.done for plan in plans), sum(plan.planned for plan in plans)
-    return f"{done}/{planned} in {len(plans)} filters"
+    return f"{done}/{planned} in all"
 
 
 def _why(now: TargetNow) -> str:
