@@ -71,11 +71,15 @@ def _why_closed(problem: Problem, index: int) -> str:
         return "no darkness is left for its filters; tomorrow night again"
     bits = night.limits[index, at]
     free: NDArray[np.bool_] = (bits == 0) & dark
-    until_mjd = rules.put_off.get(target.name)
-    if until_mjd is not None and free.any() and night.mjd[at][free].max() < until_mjd:
-        last = local_time(problem, float(night.mjd[at][free].max()))
-        return f"put off until {local_time(problem, until_mjd)}, its limits end at {last}"
     if free.any():
+        last_mjd = float(night.mjd[at][free].max())
+        pin_mjd = rules.pinned.get(target.name, -math.inf)
+        until_mjd = rules.put_off.get(target.name, pin_mjd)
+        if last_mjd < max(until_mjd, pin_mjd):
+            ends = f"its limits end at {local_time(problem, last_mjd)}"
+            if target.name not in rules.put_off:
+                return ends
+            return f"put off until {local_time(problem, until_mjd)}, {ends}"
         return _too_soft(problem, index, free)
     # The limit that most of the dark minutes break is the one to name.
     broken = [(int(((bits & reason.bit) != 0)[dark].sum()), reason) for reason in REASONS]
@@ -88,7 +92,9 @@ def _too_soft(problem: Problem, index: int, free: NDArray[np.bool_]) -> str:
     Blur of optics and tracking doesn't shrink with the seeing and adds to it in squares.
     """
     telescope, outlook = problem.night.observatory.telescope, problem.outlook
-    limit_arcsec = problem.targets[index].maximum_image_size_arcsec or math.inf
+    limit_arcsec = problem.targets[index].maximum_image_size_arcsec
+    if limit_arcsec is None:
+        return "its limits leave no minute of darkness to it"
     fixed = telescope.optics_fwhm_arcsec**2 + telescope.tracking_fwhm_arcsec**2
     filters = [problem.lines[line].filter for line in problem.lines_of(index)]
     sizes = outlook.image_size_arcsec[filters, index, problem.first :][:, free]

@@ -79,10 +79,10 @@ class Timeline:
         Blocks are timed to half a minute before; this is for the last seconds.
         """
         problem = self.problem
-        change_min = problem.lines[parts[0][0]].change_min
-        while self.stays:
+        leave_min = problem.pins[target] - problem.lines[parts[0][0]].change_min
+        # An appointment that has passed binds nobody any more.
+        while self.stays and leave_min >= problem.start_min:
             last = self.stays[-1]
-            leave_min = problem.pins[target] - change_min
             way_min = problem.travel.exact_min(last.target, last.end_min, target, leave_min)
             late_min = last.end_min + way_min - leave_min
             if last.target == target or not 0.0 < late_min < SECONDS_LATE_MIN:

@@ -41,7 +41,7 @@ def faults(order: Order, night: Night, outlook: Outlook, plans: Plans, rules: Ru
     prepare_astropy()
     return [
         *_counts(order, plans, rules),
-        *_repeats(order, night),
+        *_repeats(order, night, rules),
         *_overlaps(order, night),
         *_breaks(order, night),
         *_limits(order, night, rules),
@@ -83,13 +83,15 @@ def _runs(order: Order, observatory: Observatory) -> list[tuple[Visit, str, floa
     ]
 
 
-def _repeats(order: Order, night: Night) -> list[str]:
+def _repeats(order: Order, night: Night, rules: Rules) -> list[str]:
     """Return visits of a series that are not whole, or too near or too far from the one before."""
     found = []
     for target in night.targets:
         if target.visits == 1:
             continue
-        whole = sum(each.count for each in target.exposures)
+        whole = sum(
+            each.count for each in target.exposures if each.filter not in rules.forbidden_filters
+        )
         own = [visit for visit in order.visits if visit.target == target.name]
         counts = [sum(run.count for run in visit.exposures) for visit in own]
         found += [f"{target.name}: {n} exposures of {whole}" for n in counts if n != whole]

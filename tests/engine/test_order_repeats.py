@@ -11,7 +11,7 @@ from engine.logbook import Target
 from engine.night import plans, series_of
 from engine.order import Order, Problem, Rules, build_problem, propose, retime
 from engine.times import MINUTES_PER_DAY
-from tests.bench.order.nights import RandomNight, random_night
+from tests.bench.order.nights import RandomNight, random_night, with_series
 from tests.engine.lawful import faults
 from tests.engine.test_night_tables import Took
 
@@ -22,36 +22,6 @@ class Taken(Took):
 
     start_mjd: float = 0.0
     airmass_start: float | None = None
-
-
-def with_series(seed: int, size: int, load: float, share: float = 0.3) -> RandomNight:
-    """Return a random night in which some targets want several visits."""
-    random = np.random.default_rng([seed, 99])
-
-    def change(target: Target) -> Target:
-        if random.random() > share:
-            return target
-        visits = int(random.integers(2, 6))
-        least = float(random.uniform(15, 60))
-        greatest = float(least + random.uniform(5, 60)) if random.random() < 0.7 else None
-        each = tuple(
-            e.model_copy(update={"count": min(e.count, 2), "seconds": min(e.seconds, 90.0)})
-            for e in target.exposures
-        )
-        update: dict[str, object] = {
-            "visits": visits,
-            "least_gap_min": least,
-            "greatest_gap_min": greatest,
-            "exposures": each,
-            "contiguous_min": None,
-        }
-        if random.random() < 0.4:
-            update["role"] = "standard"
-        return target.model_copy(update=update)
-
-    night = random_night(seed, size, load)
-    targets = tuple(change(target) for target in night.night.targets)
-    return replace(night, night=replace(night.night, targets=targets), plans=plans(targets, ()))
 
 
 def problem_of(night: RandomNight) -> Problem:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from datetime import UTC, date, datetime, timedelta
 from pathlib import Path
 
@@ -82,6 +82,36 @@ def random_night(seed: int, targets: int, load: float) -> RandomNight:
     night = _opened(observatory, wanted, day)
     outlooks = Outlooks(night, ImageModel(observatory, night.air))
     return RandomNight(seed, load, night, outlooks, plans(wanted, ()))
+
+
+def with_series(seed: int, size: int, load: float, share: float = 0.3) -> RandomNight:
+    """Return a random night in which some targets want several visits."""
+    random = np.random.default_rng([seed, 99])
+
+    def change(target: Target) -> Target:
+        if random.random() > share:
+            return target
+        visits = int(random.integers(2, 6))
+        least = float(random.uniform(15, 60))
+        greatest = float(least + random.uniform(5, 60)) if random.random() < 0.7 else None
+        each = tuple(
+            e.model_copy(update={"count": min(e.count, 2), "seconds": min(e.seconds, 90.0)})
+            for e in target.exposures
+        )
+        update: dict[str, object] = {
+            "visits": visits,
+            "least_gap_min": least,
+            "greatest_gap_min": greatest,
+            "exposures": each,
+            "contiguous_min": None,
+        }
+        if random.random() < 0.4:
+            update["role"] = "standard"
+        return target.model_copy(update=update)
+
+    night = random_night(seed, size, load)
+    targets = tuple(change(target) for target in night.night.targets)
+    return replace(night, night=replace(night.night, targets=targets), plans=plans(targets, ()))
 
 
 def _opened(observatory: Observatory, targets: tuple[Target, ...], day: date) -> Night:
