@@ -92,7 +92,8 @@ class Timeline:
             last.end_min -= problem.lines[run.line].each_min
             if run.count > 1:
                 last.runs.append(replace(run, count=run.count - 1))
-            if not last.runs or not self._is_still_long_enough(last):
+            broken = last.target in problem.repeats or not last.runs
+            if broken or not self._is_still_long_enough(last):
                 self._give_back(self.stays.pop())
 
     def repeat(self, order: Order) -> float:
