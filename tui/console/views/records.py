@@ -100,7 +100,8 @@ class Records(View):
             self._scroll = min(self._scroll, max(len(page) - self._height, 0))
             return [head, *page[self._scroll : self._scroll + self._height]]
         if width < WIDE:
-            return [head, *self._rows(width)]
+            # A young log leaves room for the entry under the cursor.
+            return [head, *self._rows(width), BLANK, *self._detail(width)][:height]
         left = int(width * LIST_SHARE)
         rows, page = self._rows(left), self._detail(width - left - 2)
         self._scroll = min(self._scroll, max(len(page) - self._height, 0))

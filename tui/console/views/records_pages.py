@@ -10,7 +10,7 @@ from engine.log import Amendment, Event, Foreign, title
 from engine.log.keys import to_values
 from engine.log.values import Value
 from engine.logbook.text import visible
-from tui.paint.spans import BLANK, Line, Span, cut, fitted, line, wrapped
+from tui.paint.spans import BLANK, Line, Span, cut, fitted, line, width_of, wrapped
 
 WORDS = {
     "exposure": "exposure",
@@ -28,7 +28,9 @@ WORDS = {
     "recovery": "recovery",
 }
 KIND_WIDTH = 8
-KEY_WIDTH = 24
+KEY_WIDTH = 23
+# From this width on short values stand in two columns.
+TWO_COLUMNS = 76
 
 
 @dataclass(frozen=True, slots=True)
@@ -94,7 +96,10 @@ def detail_page(entry: Entry, head: str, on_disk: str, width: int) -> list[Line]
     """Return everything that is known of an entry: the disk's word, every key, what amended it."""
     written, stands = entry.written, entry.stands
     lines = [
-        line(Span(f" entry {written.n}  {_kind(written)}", "title"), Span(f"  {head}", "dim")),
+        line(
+            Span(f" entry {written.n}  {_kind(written)}", "title"),
+            Span(f"  {head} local; below UTC", "dim"),
+        ),
         *wrapped(title(entry.shown), width - 2, "strong", 3, indent=1),
         *wrapped(on_disk, width - 2, "dim", 2, indent=1),
     ]
@@ -115,22 +120,31 @@ def _kind(event: Event) -> str:
 
 def _values(written: Event, shown: Event, width: int) -> list[Line]:
     (_, old), (_, new) = _safely(written), _safely(shown)
+    half = width // 2 if width >= TWO_COLUMNS else width
+    short: list[Line] = []
     lines: list[Line] = []
     for key in [*old, *(key for key in new if key not in old)]:
         if key == "n":
             continue
         before, now = _said(old.get(key)), _said(new.get(key))
         label = Span(f" {fitted(visible(key), KEY_WIDTH)} ", "dim")
-        if before == now:
-            more = wrapped(now, max(width - KEY_WIDTH - 3, 8), "text", 4)
-            lines.append((label, *more[0]))
-            pad = Span(" " * (KEY_WIDTH + 2))
-            lines += [(pad, *each) for each in more[1:]]
+        one: Line = (label, Span(now, "text"))
+        if before != now:
+            one = (label, Span("~ ", "warn"), Span(now, "strong"), Span(f"  was {before}", "dim"))
+        if width_of(one) < half:
+            short.append(one)
+        elif before != now:
+            lines.append(one)
         else:
-            lines.append(
-                (label, Span("~ ", "warn"), Span(now, "strong"), Span(f"  was {before}", "dim"))
-            )
-    return lines
+            more = wrapped(now, max(width - KEY_WIDTH - 3, 8), "text", 4)
+            pad = Span(" " * (KEY_WIDTH + 2))
+            lines += [(label, *more[0]), *((pad, *each) for each in more[1:])]
+    if half == width:
+        return [*short, *lines]
+    rows = (len(short) + 1) // 2
+    right = [*short[rows:], *[BLANK] * (2 * rows - len(short))]
+    pairs = zip(short[:rows], right, strict=True)
+    return [*((*a, Span(" " * (half - width_of(a))), *b) for a, b in pairs), *lines]
 
 
 def _safely(event: Event) -> tuple[str, dict[str, Value]]:
@@ -146,11 +160,11 @@ def _said(value: Value | None) -> str:
         case None:
             return "nothing"
         case datetime():
-            return f"{value:%Y-%m-%d %H:%M:%S}.{value.microsecond // 1000:03d} UTC"
+            return f"{value:%H:%M:%S}.{value.microsecond // 1000:03d}"
         case float():
             return f"{value:.10g}"
         case list() if value and all(isinstance(each, datetime) for each in value):
-            return ", ".join(f"{each:%H:%M:%S}" for each in value) + " UTC"
+            return ", ".join(f"{each:%H:%M:%S}" for each in value)
         case list():
             return ", ".join(_said(each) for each in value) or "none"
         case bool():

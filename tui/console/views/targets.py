@@ -83,7 +83,9 @@ class Targets(View):
         if self._is_open and width < WIDE:
             return self._in_full(width)
         if width < WIDE:
-            return self._rows(found, width)
+            rows = self._rows(found, width)
+            # A short list leaves room for the chosen target.
+            return [*rows, BLANK, *self._in_full(width)][:height]
         left = int(width * LIST_SHARE)
         return beside(self._rows(found, left), self._in_full(width - left - 2), left, height)
 
@@ -100,16 +102,17 @@ class Targets(View):
         at = next(
             (n for n, e in enumerate(places) if isinstance(e, Target) and e.name == chosen), 0
         )
-        # The heading just above the cursor stays in sight with it.
-        above = at - 1 if at and isinstance(places[at - 1], Group) else at
-        self._top = max(min(self._top, above), at - self._height + 1)
+        # The first row is always the heading of what is below it.
+        self._top = max(min(self._top, at - 1), at - self._height + 1)
         self._top = max(min(self._top, len(places) - self._height), 0)
+        begin = next(n for n in range(self._top, -1, -1) if isinstance(places[n], Group))
+        shown = [places[begin], *places[self._top + 1 : self._top + self._height]]
         plans = self.watch.plans()
         return [
             group_row(each, plans, width)
             if isinstance(each, Group)
             else target_row(each, plans.get(each.name, ()), each.name == chosen, width)
-            for each in places[self._top : self._top + self._height]
+            for each in shown
         ]
 
     def _in_full(self, width: int) -> list[Line]:

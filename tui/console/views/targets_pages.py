@@ -17,7 +17,7 @@ from tui.paint.spans import BLANK, Line, Span, cut, fitted, line, wrapped
 
 NO_PROGRAMME = "no programme"
 NAME_WIDTH, PLACE_WIDTH, WIDE_PLACE_WIDTH = 14, 14, 24
-BAR_WIDTH, KEY_WIDTH = 8, 26
+BAR_WIDTH, KEY_WIDTH = 8, 27
 # From this width on a row has seconds of arc, and a heading longer bars.
 WIDE = 90
 ROUNDING = 1e-6
@@ -79,7 +79,7 @@ def group_row(group: Group, plans: Plans, width: int) -> Line:
         Span(f" {done.done}/{done.planned} ".rjust(10), "text"),
         Span(bar(_share(done.done, done.planned), length), "good"),
         Span(f"  depth {done.credit:.1f} ".rjust(14), "text"),
-        Span(bar(_share(done.credit, done.planned), length), "planned"),
+        Span(bar(_share(done.credit, done.planned), length), "text"),
     ]
     room = max(width - sum(len(each.text) for each in figures) - 2, 8)
     who = f"  {group.investigator}" if group.investigator else ""
@@ -119,14 +119,14 @@ def detail_page(
         BLANK,
     ]
     for each in plan:
-        length = max(min(width - 46, 20), 6)
+        length = max(min((width - 38) // 2, 20), 4)
         lines.append(
             line(
                 Span(f" {fitted(each.filter, 4)} {each.seconds:6g} s ", "strong"),
                 Span(f"{each.done:>3}/{each.planned:<3} ", "text"),
                 Span(bar(_share(each.done, each.planned), length), "good"),
                 Span(f"  depth {each.credit:4.1f} ", "text"),
-                Span(bar(_share(each.credit, each.planned), length), "planned"),
+                Span(bar(_share(each.credit, each.planned), length), "text"),
             )
         )
     lines.append(BLANK)
