@@ -19,12 +19,21 @@ from tui.paint.spans import Line, Span
 # The bits of the eight dots of a braille cell, by column and row.
 _DOTS = ((0x01, 0x02, 0x04, 0x40), (0x08, 0x10, 0x20, 0x80))
 _BRAILLE = 0x2800
-# Where a label may stand from what it names, as (rows, cells), the nearest first; a row counts as
-# two cells, and above is a little better than below.
+# From how far a label still seems to belong to what it names.
+NEAR_CELLS = 9.0
+
+
+def _distance(up: int, along: int) -> float:
+    """Return how far a label is off: a row counts as two cells, below is a little worse."""
+    return 2.0 * abs(up) + abs(along) + 0.5 * (up > 0)
+
+
+# Where a label may stand from what it names, as (rows, cells), the nearest first.
 _AWAY = sorted(
     ((up, along) for up in (-1, 1, -2, 2, -3, 3, 0) for along in range(-14, 15)),
-    key=lambda away: 2.0 * abs(away[0]) + abs(away[1]) + 0.5 * (away[0] > 0),
+    key=lambda away: _distance(*away),
 )
+_NEAR = [away for away in _AWAY if _distance(*away) <= NEAR_CELLS]
 
 
 @dataclass(frozen=True, slots=True)
@@ -142,9 +151,12 @@ class Canvas:
 
         A place is free when no text stands in or next to it and no dots are in it.
         """
-        for text in texts:
+        tried = list(texts)
+        for text in tried:
             length = cell_len(text)
-            for up, along in _AWAY:
+            # A long label far off would be taken for another's: rather a short one near by.
+            places = _AWAY if text is tried[-1] else _NEAR
+            for up, along in places:
                 at = column - length // 2 + along
                 if self._is_free(row + up, at, length):
                     self.write(row + up, at, text, role)
