@@ -8,10 +8,14 @@ a solution of at least its own worth, so the best solution is a limit to all ord
 - An exposure takes its seconds, its readout, and a share of the filter's change and of the
   shortest way to its target that any order pays: one visit pays each once, for at most all that is
   left. Shares are spread evenly, so a visit's minutes stand at most that visit's overheads away
-  from where the exposures are. A minute's worth is therefore the greatest worth within that and
-  half an exposure of the stretch.
-- Limits hold within that reach; slews beyond the shortest, the meridian and unbroken runs are left
-  out, which can only raise the limit.
+  from where the exposures are. A minute's worth is therefore the greatest worth within that, half
+  the seconds exposed and the readout of the stretch.
+- An exposure ends by the last minute of any use, so nothing is read out later than one readout
+  after that: there the room ends.
+- A single exposure that fills a gap is a visit like any other; nothing here needs whole blocks.
+- Limits hold within that reach; slews beyond the shortest, the meridian, unbroken runs and the gaps
+  of a series are left out, which can only raise the limit. So does sharing a stretch between many
+  targets; that their worth is not taken at the exact middle costs little (`tests.bench.order`).
 
 HiGHS solves it, through scipy. What is returned is never its best solution but its own proven
 limit to all solutions, which holds also when the time given to it ran out.
@@ -32,7 +36,10 @@ from engine.order.problem import Problem
 
 Floats = NDArray[np.float64]
 
-STRETCH_MIN = 5
+# Finer stretches hold a plan closer to its own best minutes, and cost time: minutes by how many
+# lines of plans there are at most.
+STRETCHES_MIN = ((60, 1), (500, 2))
+LONGEST_STRETCH_MIN = 5
 # How long HiGHS may go on closing the gap, and the gap at which it stops.
 PATIENCE_S, CLOSE_ENOUGH = 20.0, 5e-4
 # HiGHS holds constraints and optimality to 1e-6 and 1e-7: so much is added to be safe.
@@ -43,10 +50,16 @@ class NoSolver(WarmroomError):
     """The proven limit was asked for without scipy."""
 
 
-def upper_limit(problem: Problem, stretch_min: int = STRETCH_MIN) -> float:
-    """Return a limit that the value of no order exceeds; NoSolver when scipy is absent."""
+def upper_limit(problem: Problem, stretch_min: int | None = None) -> float:
+    """Return a limit that the value of no order exceeds; NoSolver when scipy is absent.
+
+    Whatever ``stretch_min`` is, the limit holds; the longer, the looser and the sooner found.
+    """
     if not problem.lines:
         return 0.0
+    if stretch_min is None:
+        fitting = (each for most, each in STRETCHES_MIN if len(problem.lines) <= most)
+        stretch_min = next(fitting, LONGEST_STRETCH_MIN)
     overhead_min = _overheads_min(problem)
     need_min = np.array([line.count * line.each_min for line in problem.lines]) + overhead_min
     rate = _rates(problem, overhead_min, need_min, stretch_min)
@@ -73,7 +86,9 @@ def _overheads_min(problem: Problem) -> Floats:
 
 def _rooms_min(problem: Problem, stretch_min: int) -> Floats:
     begins = np.arange(0, problem.minutes, stretch_min, dtype=float)
-    ends = np.minimum(begins + stretch_min, problem.minutes)
+    # The last two columns are the last minute of any use and one beyond it.
+    ends = np.minimum(begins + stretch_min, problem.minutes - 2.0 + problem.readout_min)
+    ends[-1] = problem.minutes - 2.0 + problem.readout_min
     return np.asarray(np.maximum(ends - np.maximum(begins, problem.start_min), 0.0))
 
 
@@ -86,7 +101,8 @@ def _rates(problem: Problem, overhead_min: Floats, need_min: Floats, stretch_min
     padded[:, : problem.minutes] = problem.worth
     for place, line in enumerate(lines):
         shift_min = sum(overhead_min[other] for other in problem.lines_of(line.target))
-        reach = int(np.ceil(0.5 * line.each_min + shift_min)) + 1
+        to_middle_min = 0.5 * line.seconds / 60.0 + problem.readout_min
+        reach = int(np.ceil(to_middle_min + shift_min)) + 1
         around = np.lib.stride_tricks.sliding_window_view(
             np.pad(padded[place], reach), stretch_min + 2 * reach
         )[::stretch_min]

@@ -30,6 +30,9 @@ ANY = Target.model_validate(
         "exposures": [{"filter": "V", "seconds": 60.0, "count": 1}],
     }
 )
+# First seeds: nights to tune the search on, and nights that were never used for that.
+TUNING, KEPT_APART = 1_000, 50_000
+LOADS = (0.5, 1.0, 2.0, 4.0)
 MOUNTS = ("german", "fork", "altazimuth")
 
 
@@ -62,6 +65,11 @@ class RandomNight:
             from_mjd=float(start),
             pointing=None,
         )
+
+
+def load_of(number: int) -> float:
+    """Return the time that the list of one of a row of nights asks for, in dark times."""
+    return LOADS[number % len(LOADS)]
 
 
 def random_night(seed: int, targets: int, load: float) -> RandomNight:
