@@ -20,7 +20,7 @@ from textual.filter import LineFilter
 from textual.screen import Screen
 from textual.worker import Worker
 
-from engine.errors import WarmroomError
+from engine.errors import NotNow, WarmroomError
 from tui.console.actions import MOVES
 from tui.console.clockwork import TICK_S, Autopilot, Clockwork
 from tui.console.foot import foot_keys, foot_line
@@ -29,7 +29,7 @@ from tui.console.keys import Keys
 from tui.console.views import NIGHT, VIEW_OF_ACTION
 from tui.look import LOOKS, CleanFilter, MonoFilter, RedFilter
 from tui.look.terminal import MustLeave
-from tui.paint.spans import Line, Span, cut, line
+from tui.paint.spans import Line, Span, cut, line, whole_phrases
 from tui.widgets import Entry, LiveList, Question, Sheet
 
 if TYPE_CHECKING:
@@ -198,8 +198,12 @@ class Console(App[None]):
             return
         sheet = self.sheet("notices")
         rows = max(sheet.size.height, 1)
-        shown: list[Line] = [(Span(" "), each) for each in self.notices[-rows:]]
-        sheet.show([cut(each, sheet.size.width) for each in shown])
+        width = sheet.size.width
+        shown: list[Line] = [
+            (Span(" "), Span(whole_phrases(text, width - 1), role))
+            for text, role in self.notices[-rows:]
+        ]
+        sheet.show([cut(each, width) for each in shown])
 
     # What the observer does
 
@@ -320,6 +324,10 @@ class Console(App[None]):
         self.paint()
 
     def _do_next_panel(self) -> None:
+        if self.view != NIGHT:
+            raise NotNow(
+                f"the panels are the night's: {self.keys.cap_of(f'view_{NIGHT}')} shows it"
+            )
         panels = PANELS_WIDE if self.is_wide else PANELS_NARROW
         self.panel = panels[(panels.index(self.panel) + 1) % len(panels)]
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Collection, Iterable, Mapping, Sequence
 
 from tui.console.actions import cap
 from tui.console.keys import Keys
@@ -18,13 +18,19 @@ def foot_keys(
     in_force: Keys,
     labels: Mapping[str, str] | None = None,
     own: Sequence[tuple[str, str]] = (),
+    without: Collection[str] = (),
 ) -> Caps:
     """Return the foot's keys and words, the most needed first.
 
-    ``labels`` holds other words for actions by name, ``own`` the keys of the view that is shown.
+    ``labels`` holds other words for actions by name, ``own`` the keys of the view that is shown,
+    ``without`` names actions that do nothing now.
     """
     said = labels or {}
-    keys = [(cap(a.keys[0]), said.get(a.name, a.label)) for a in in_force.footer()]
+    keys = [
+        (cap(a.keys[0]), said.get(a.name, a.label))
+        for a in in_force.footer()
+        if a.name not in without
+    ]
     of_views = [in_force.cap_of(each.action) for each in VIEWS]
     views = [(f"{of_views[0]}-{of_views[-1]}", "views")] if len(of_views) > 1 else []
     # A view may have given a key of the table another meaning while it is shown.

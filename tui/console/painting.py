@@ -82,8 +82,12 @@ class Painting:
 
     def paint_foot(self) -> None:
         """Show the keys, the common one with what it does now, and those of the view."""
-        own = self.view.hints if self.view is not None else ()
-        keys = foot_keys(self._console.keys, {"go_on": go_on_label(self._watch)}, own)
+        view, labels = self.view, {"go_on": go_on_label(self._watch)}
+        if view is None:
+            keys = foot_keys(self._console.keys, labels)
+        else:
+            # The panels are the night's own.
+            keys = foot_keys(self._console.keys, labels, view.hints, without=("next_panel",))
         foot = self._console.sheet("foot")
         foot.show([foot_line(keys, foot.size.width)])
 

@@ -44,7 +44,8 @@ class Image(View):
     @property
     def hints(self) -> tuple[tuple[str, str], ...]:
         """The key that gives all the place to the targets, or takes it back."""
-        return (("tab", "one target" if self._shows_all else "all targets"),)
+        key = self.console.keys.cap_of("next_panel")
+        return ((key, "one target" if self._shows_all else "all targets"),)
 
     def take_action(self, name: str) -> bool:
         """Let the key for the next panel change between one target and all."""
