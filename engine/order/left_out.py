@@ -144,7 +144,7 @@ def _opening(tonight: date, opens: date | None) -> str:
 class _Crowd:
     """The visits of an order as columns (V,): minutes from leaving the one before to the end, and
     what each is worth: more than anything for what the observer wants there. ``total`` (V+1,) sums
-    that up.
+    that up; ``ways_min`` (N+1,) are the longest ways to each target.
     """
 
     problem: Problem
@@ -153,6 +153,7 @@ class _Crowd:
     end_min: Floats
     worth: Floats
     total: Floats
+    ways_min: NDArray[np.float32]
 
     @classmethod
     def of(cls, problem: Problem, visits: Sequence[Visit]) -> _Crowd:
@@ -171,6 +172,7 @@ class _Crowd:
             (end_mjd - problem.mjd_at(0.0)) * MINUTES_PER_DAY,
             worth,
             np.concatenate([[0.0], np.cumsum(worth)]),
+            problem.travel.tables.max(axis=(0, 1)),
         )
 
     def reasons(self, indices: list[int]) -> dict[int, str]:
@@ -205,7 +207,7 @@ class _Crowd:
         problem, visits = self.problem, len(self.names)
         if not visits:
             return None
-        way_min = float(problem.travel.tables[:, :, index].max()) + SPARE_MIN
+        way_min = float(self.ways_min[index]) + SPARE_MIN
         begin_min = self.begin_min + way_min
         last = np.searchsorted(self.end_min, begin_min + need_min + way_min)
         minutes = np.minimum(begin_min.astype(np.int64), problem.minutes - 1)

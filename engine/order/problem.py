@@ -91,7 +91,9 @@ class Problem:
 
     def lines_of(self, target: int) -> list[int]:
         """Return the lines of one target, in the order of its plan."""
-        return [int(line) for line in self.of_target[target] if line >= 0]
+        own = self.of_target[target]
+        found: list[int] = own[own >= 0].tolist()
+        return found
 
     def asked_min(self, target: int) -> float:
         """Return the minutes all that is left of a target takes, without the way there."""

@@ -1,7 +1,7 @@
 """Thousands of orders before the checker that shares no code with the search.
 
 Run as ``python -m tests.bench.order.lawful 1000``: so many random nights. On each, an order is made
-from nothing under random decisions of an observer, carried on at a random later moment under
+from nothing under random decisions of an observer, carried on from the begin of a random later visit under
 another seeing, and timed anew; half the nights hold series of visits and standards. Every fault is
 printed with the seed of its night.
 """
@@ -65,7 +65,8 @@ def orders(seed: int, night: RandomNight) -> list[tuple[str, Order, float, Rules
     if not fresh.visits:
         return made
     factor = float(random.choice(SEEING_FACTORS))
-    from_mjd = float(random.uniform(fresh.visits[0].start_mjd, fresh.visits[-1].end_mjd))
+    # Between visits: what was exposed of one under way would be counted in the plans.
+    from_mjd = fresh.visits[int(random.integers(len(fresh.visits)))].start_mjd
     pointing = str(random.choice([target.name for target in night.night.targets]))
     later = problem_of(night, rules, factor, from_mjd, pointing)
     carried = propose(later, fresh, steps=15, afresh=bool(random.random() < 0.3))
