@@ -160,7 +160,10 @@ class _Crowd:
         rules = problem.rules
         wanted = {*rules.pinned, *([] if rules.first is None else [rules.first])}
         left_mjd = [problem.from_mjd, *(visit.end_mjd for visit in visits[:-1])]
-        worth = np.array([WANTED if v.target in wanted else _worth(problem, v) for v in visits])
+        places = {target.name: place for place, target in enumerate(problem.targets)}
+        worth = np.array(
+            [WANTED if v.target in wanted else _worth(problem, places[v.target], v) for v in visits]
+        )
         begin_mjd, end_mjd = (
             np.array(left_mjd[: len(visits)]),
             np.array([v.end_mjd for v in visits]),
@@ -245,9 +248,8 @@ def _longest_min(problem: Problem, lines: list[int]) -> float:
     return float((ends - np.arange(problem.minutes))[ends >= 0].max(initial=0))
 
 
-def _worth(problem: Problem, visit: Visit) -> float:
-    """Return what a visit's exposures are worth."""
-    index = problem.night.target_index(visit.target)
+def _worth(problem: Problem, index: int, visit: Visit) -> float:
+    """Return what the exposures of a visit to a target (its place) are worth."""
     wheel, total = problem.night.observatory, 0.0
     for run in visit.exposures:
         place = wheel.filter_index(run.filter)

@@ -1,9 +1,9 @@
 """Thousands of orders before the checker that shares no code with the search.
 
 Run as ``python -m tests.bench.order.lawful 1000``: so many random nights. On each, an order is made
-from nothing under random decisions of an observer, carried on from the begin of a random later visit under
-another seeing, and timed anew; half the nights hold series of visits and standards. Every fault is
-printed with the seed of its night.
+from nothing under random decisions of an observer, carried on from the begin of a random later
+visit under another seeing, and timed anew; half the nights hold series of visits and standards.
+Every fault is printed with the seed of its night.
 """
 
 from __future__ import annotations
