@@ -14,6 +14,7 @@ from tui.console.keys import Keys
 from tui.console.panels.local import hhmm, whole_hours
 from tui.console.views import NIGHT, VIEWS
 from tui.console.views.classes import CLASSES
+from tui.paint.spans import width_of
 
 SIZES = [(80, 24), (120, 40), (160, 50)]
 
@@ -249,3 +250,22 @@ def band_of(text: str, name: str) -> str:
     lines = text.splitlines()
     first = next(place for place, each in enumerate(lines) if "soft, and when" in each)
     return next(each for each in lines[first:] if name in each)
+
+
+def test_every_view_fits_any_place(folder: Path) -> None:
+    """No place is a fault; from 79x13 on a view paints no wider and no higher than its place."""
+
+    async def story(trial: Trial) -> None:
+        await trial.press("z")
+        await trial.type("4.5")
+        for name in ("sky", "conditions", "image"):
+            view = CLASSES[name](trial.console, trial.watch)
+            for width in (12, 40, 60, 79, 80, 99, 119, 120, 161, 240):
+                for height in (1, 2, 5, 9, 13, 22, 33, 60):
+                    lines = view.paint(width, height)
+                    assert lines
+                    if width >= 79 and height >= 13:
+                        assert len(lines) <= height, (name, width, height)
+                        assert max(map(width_of, lines)) <= width, (name, width, height)
+
+    play(folder, story)

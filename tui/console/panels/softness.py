@@ -43,7 +43,9 @@ def paint_softness(
 ) -> list[Line]:
     """Return a band for every target of the order, and the chosen one, in (width, height)."""
     width, height = size
-    said_width = WIDE_SAID_WIDTH if width >= WIDE_FROM else SAID_WIDTH
+    # Which blur is to blame is told where there is room for it.
+    told = blame if width >= WIDE_FROM else None
+    said_width = WIDE_SAID_WIDTH if told else SAID_WIDTH
     columns = max(width - NAME_WIDTH - LIMIT_WIDTH - said_width - 2, 1)
     by_name = {each.target.name: each for each in watch.targets_now()}
     visits: dict[str, tuple[int, Visit]] = {}
@@ -51,7 +53,7 @@ def paint_softness(
         visits.setdefault(visit.target, (number, visit))
     names = list(visits) if chosen is None or chosen in visits else [chosen, *visits]
     bands = [
-        _band(watch, _ahead(watch, by_name[name], visits.get(name)), name == chosen, columns, blame)
+        _band(watch, _ahead(watch, by_name[name], visits.get(name)), name == chosen, columns, told)
         for name in names[: height - 2]
         if name in by_name
     ]
@@ -96,7 +98,7 @@ def _ahead(watch: Watch, now: TargetNow, visit: tuple[int, Visit] | None) -> _Ah
     )
 
 
-def _band(watch: Watch, one: _Ahead, is_chosen: bool, columns: int, blame: Blame) -> Line:
+def _band(watch: Watch, one: _Ahead, is_chosen: bool, columns: int, blame: Blame | None) -> Line:
     picks = np.linspace(0, len(one.places) - 1, columns).round().astype(int)
     limit = one.now.target.maximum_image_size_arcsec
     cells = [
@@ -115,7 +117,7 @@ def _band(watch: Watch, one: _Ahead, is_chosen: bool, columns: int, blame: Blame
         Span((f'{limit:.1f}"' if limit else "").ljust(LIMIT_WIDTH), "dim"),
         *joined(cells),
         Span("  "),
-        _said(watch, one, columns, blame),
+        _said(watch, one, blame),
     )
 
 
@@ -129,7 +131,7 @@ def _state(allowed: bool, soft: bool, doubt: bool, limited: bool) -> Span:
     return Span("▒", "warn") if doubt else Span("━", "good")
 
 
-def _said(watch: Watch, one: _Ahead, columns: int, blame: Blame) -> Span:
+def _said(watch: Watch, one: _Ahead, blame: Blame | None) -> Span:
     """Return when a target is soft first and which blur is to blame, else its size when visited."""
     assert watch.plan is not None
     night, outlook = watch.planner.night, watch.plan.outlook
@@ -141,7 +143,7 @@ def _said(watch: Watch, one: _Ahead, columns: int, blame: Blame) -> Span:
     first = int(np.argmax(one.soft))
     place = int(one.places[first])
     when = "soft now" if first == 0 else f"soft {hhmm(watch, float(night.mjd[place]))}"
-    if columns + WIDE_SAID_WIDTH < WIDE_FROM - NAME_WIDTH - LIMIT_WIDTH - 2:
+    if blame is None:
         return Span(when, "bad")
     filters = [e for e in one.now.filters if outlook.soft[e.filter_index, one.now.index, place]]
     seeing, mass = float(outlook.seeing_arcsec[place]), float(night.airmass[one.now.index, place])

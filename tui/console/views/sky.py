@@ -32,6 +32,7 @@ from tui.paint.spans import BLANK, Line, Span, fitted, line, phrases
 TABLE_WIDTH, WITH_TABLE = 50, 120
 NAMES_FROM = 100
 NAME_WIDTH = 14
+LEAST_ROWS = 3
 
 
 class Sky(View):
@@ -42,7 +43,7 @@ class Sky(View):
         targets = self.watch.targets_now()
         chosen = next((each for each in targets if each.target.name == self.console.chosen), None)
         head = [_about(self.watch, chosen, width), _meaning(width)]
-        rows = height - len(head)
+        rows = max(height - len(head), LEAST_ROWS)
         if width < WITH_TABLE:
             return [*head, *_chart(self.watch, chosen, width, rows)]
         chart = _chart(self.watch, chosen, width - TABLE_WIDTH, rows)
