@@ -14,8 +14,7 @@ from engine.order.construct import TEMPERS
 from engine.order.propose import plain_order
 from engine.order.sequence import Timed
 from engine.order.timeline import Timeline
-from tests.bench.order.nights import random_night
-from tests.engine.test_order_repeats import with_series
+from tests.bench.order.nights import random_night, with_series
 
 LOADS = (0.5, 1.0, 2.0, 4.0)
 
