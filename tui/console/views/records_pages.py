@@ -28,7 +28,7 @@ WORDS = {
     "recovery": "recovery",
 }
 KIND_WIDTH = 8
-KEY_WIDTH = 23
+KEY_WIDTH = 24
 # From this width on short values stand in two columns.
 TWO_COLUMNS = 76
 

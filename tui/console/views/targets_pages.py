@@ -9,6 +9,8 @@ from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from datetime import datetime
 
+from pydantic.fields import FieldInfo
+
 from engine.logbook import PlannedExposures, Programme, Target
 from engine.logbook.faults import field_key
 from engine.night import Progress
@@ -130,16 +132,22 @@ def detail_page(
             )
         )
     lines.append(BLANK)
-    for name, known in Target.model_fields.items():
+    # What is given stands before what is left at its default.
+    fields = sorted(Target.model_fields.items(), key=lambda each: _is_default(target, *each))
+    for name, known in fields:
         key = field_key(name, known)
         value = getattr(target, name)
-        is_default = not known.is_required() and value == known.default
+        is_default = _is_default(target, name, known)
         said = "-" if value in (None, "", ()) else value_as_typed(key, value, target)
         label = Span(f" {letters.get(key, ' ')} ", "accent")
         more = wrapped(said, max(width - KEY_WIDTH - 5, 8), "dim" if is_default else "text", 3)
         lines.append((label, Span(fitted(key, KEY_WIDTH) + " ", "dim"), *more[0]))
         lines += [(Span(" " * (KEY_WIDTH + 4)), *each) for each in more[1:]]
     return [cut(each, width) for each in lines]
+
+
+def _is_default(target: Target, name: str, known: FieldInfo) -> bool:
+    return not known.is_required() and getattr(target, name) == known.default
 
 
 def value_as_typed(key: str, value: object, target: Target) -> str:
