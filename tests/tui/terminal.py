@@ -66,6 +66,10 @@ class Terminal:
             self.bytes_read += len(data)
             self._stream.feed(data)
 
+    def is_drawing(self, for_s: float) -> bool:
+        """Say whether the program has drawn something, or does within so many seconds."""
+        return bool(select.select([self._ours], [], [], for_s)[0])
+
     def press(self, keys: str) -> None:
         """Type keys, as bytes a terminal would send."""
         os.write(self._ours, keys.encode())
