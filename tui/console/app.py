@@ -40,6 +40,8 @@ if TYPE_CHECKING:
 
 WIDE_COLUMNS, TALL_ROWS = 120, 34
 NOTICES_KEPT = 50
+# Sheets, the list and the entry line of the frame.
+PIECES = 11
 PANELS_WIDE = ("order", "log")
 PANELS_NARROW = ("list", "target", "order", "log")
 
@@ -133,6 +135,12 @@ class Console(App[None]):
         self.paint()
 
     @property
+    def _is_whole(self) -> bool:
+        """Whether the whole frame stands: when it is left it goes piece by piece."""
+        pieces = self.screen_stack[0].query("Sheet, LiveList, Entry") if self.screen_stack else ()
+        return len(pieces) == PIECES
+
+    @property
     def is_wide(self) -> bool:
         """Whether there is room for the panels beside the list."""
         return self.screen_stack[0].has_class("wide")
@@ -181,8 +189,7 @@ class Console(App[None]):
 
     def paint(self) -> None:
         """Show everything as it is now; only what changed is sent."""
-        # When the console is being left its sheets may be gone before its timer.
-        if not (self.screen_stack and self.screen_stack[0].children):
+        if not self._is_whole:
             return
         if self._painting is not None:
             self._clockwork.guarded(self._painting.paint)
@@ -194,7 +201,7 @@ class Console(App[None]):
         self._paint_notices()
 
     def _paint_notices(self) -> None:
-        if not (self.screen_stack and self.screen_stack[0].children):
+        if not self._is_whole:
             return
         sheet = self.sheet("notices")
         rows = max(sheet.size.height, 1)
