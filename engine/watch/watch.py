@@ -95,6 +95,7 @@ class Watch:
         self._is_closed = False
         self._parting: str | None = None
         self._kept_plans: tuple[int, Plans] = (-1, {})
+        self._kept_seen: tuple[object, tuple[TargetNow, ...]] = (None, ())
         self._logbook: Logbook | None = None
 
     # What is known
@@ -132,7 +133,13 @@ class Watch:
             return ()
         now_mjd = self.clock.now_mjd()
         made = decided(rules_from(self._state, now_mjd))
-        return targets_at(self.planner.night, self.plan.outlook, now_mjd, self.plans(), made)
+        night = self.planner.night
+        # Panels ask several times a paint, and until the next minute nothing else has moved.
+        asked = (self.version, night.index_at(now_mjd), made)
+        if self._kept_seen[0] != asked:
+            seen = targets_at(night, self.plan.outlook, now_mjd, self.plans(), made)
+            self._kept_seen = (asked, seen)
+        return self._kept_seen[1]
 
     def next_exposure(self) -> tuple[NextExposure, float] | None:
         """Return what comes next in the run under way and when (UTC MJD); None without a run.

@@ -71,14 +71,15 @@ class Painting:
     def _follow_the_telescope(self) -> None:
         """Put the cursor on the target the telescope was just sent to, or that just came in."""
         state = self._watch.state
-        known = {target.name for target in self._watch.planner.night.targets}
         if state.pointing is not None and state.pointing.n > self._followed_n:
             self._followed_n = state.pointing.n
             self._list.move_to(state.pointing.target)
-        # A target that came in has its row once the order was made anew.
-        if state.added and state.added[-1].n > self._followed_n and state.added[-1].name in known:
-            self._followed_n = state.added[-1].n
-            self._list.move_to(state.added[-1].name)
+        if state.added and state.added[-1].n > self._followed_n:
+            # It has its row once the order was made anew.
+            name = state.added[-1].name
+            if any(target.name == name for target in self._watch.planner.night.targets):
+                self._followed_n = state.added[-1].n
+                self._list.move_to(name)
 
     def paint_foot(self) -> None:
         """Show the keys, the common one with what it does now, and those of the view."""
