@@ -8,7 +8,7 @@ During a leap second UTC has no MJD of its own; it is read as the first second o
 
 from __future__ import annotations
 
-from datetime import UTC, date, datetime, time, timedelta
+from datetime import UTC, date, datetime, time, timedelta, tzinfo
 from zoneinfo import ZoneInfo
 
 MJD_EPOCH = datetime(1858, 11, 17, tzinfo=UTC)
@@ -41,6 +41,11 @@ def iso_from_datetime(moment: datetime) -> str:
     """Return an aware datetime as UTC ``2027-03-14T12:04:33.125Z``, to the millisecond."""
     utc = moment.astimezone(UTC)
     return utc.strftime("%Y-%m-%dT%H:%M:%S.") + f"{utc.microsecond // 1000:03d}Z"
+
+
+def clock_time(mjd: float, zone: tzinfo) -> str:
+    """Return an MJD as a clock of a zone shows it, ``21:04``, to the nearest minute."""
+    return datetime_from_mjd(mjd + 0.5 / MINUTES_PER_DAY).astimezone(zone).strftime("%H:%M")
 
 
 def mjd_from_iso(text: str) -> float:

@@ -6,7 +6,7 @@ from datetime import date
 from zoneinfo import ZoneInfo
 
 from engine.order.problem import Problem
-from engine.times import MINUTES_PER_DAY, datetime_from_mjd
+from engine.times import clock_time, datetime_from_mjd
 
 MONTHS = (
     *("January", "February", "March", "April", "May", "June"),
@@ -16,8 +16,7 @@ MONTHS = (
 
 def local_time(problem: Problem, mjd: float) -> str:
     """Return a moment (UTC MJD) as local time, ``02:10``."""
-    zone = ZoneInfo(problem.night.observatory.site.timezone)
-    return datetime_from_mjd(mjd + 0.5 / MINUTES_PER_DAY).astimezone(zone).strftime("%H:%M")
+    return clock_time(mjd, ZoneInfo(problem.night.observatory.site.timezone))
 
 
 def local_date(problem: Problem, mjd: float) -> str:

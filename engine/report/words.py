@@ -6,7 +6,7 @@ from datetime import UTC, tzinfo
 from zoneinfo import ZoneInfo
 
 from engine.report.night import NightReport
-from engine.times import MINUTES_PER_DAY, datetime_from_mjd
+from engine.times import clock_time
 
 # Field of the almanac and what it is called, in the order of an ordinary night.
 EVENTS = (
@@ -28,8 +28,7 @@ def zone_of(report: NightReport) -> tzinfo:
 
 def clock(report: NightReport, mjd: float) -> str:
     """Return a moment (UTC MJD) as local time to the nearest minute, ``21:04``."""
-    moment = datetime_from_mjd(mjd + 0.5 / MINUTES_PER_DAY)
-    return moment.astimezone(zone_of(report)).strftime("%H:%M")
+    return clock_time(mjd, zone_of(report))
 
 
 def hours(seconds: float) -> str:

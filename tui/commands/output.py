@@ -9,7 +9,8 @@ from collections.abc import Iterable, Sequence
 from datetime import tzinfo
 from typing import Any
 
-from engine.times import datetime_from_mjd, iso_from_mjd
+from engine import times
+from engine.times import iso_from_mjd
 
 
 def print_json(value: Any) -> None:
@@ -35,10 +36,7 @@ def iso_or_none(mjd: float | None) -> str | None:
 
 def clock_time(mjd: float | None, zone: tzinfo) -> str:
     """Return the local time of an MJD as ``21:04``, to the nearest minute; a dash for none."""
-    if mjd is None:
-        return "--:--"
-    half_minute = 0.5 / 1440.0
-    return datetime_from_mjd(mjd + half_minute).astimezone(zone).strftime("%H:%M")
+    return "--:--" if mjd is None else times.clock_time(mjd, zone)
 
 
 def number(value: float | None, form: str = ".2f") -> str:

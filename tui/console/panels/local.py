@@ -7,14 +7,17 @@ from datetime import datetime
 from zoneinfo import ZoneInfo
 
 from engine.order import Visit
-from engine.times import MINUTES_PER_DAY, datetime_from_mjd
+from engine.times import MINUTES_PER_DAY, clock_time, datetime_from_mjd
 from engine.watch import Watch
 
 
 def local(watch: Watch, mjd: float) -> datetime:
     """Return a moment (UTC MJD) in the site's own time."""
-    zone = ZoneInfo(watch.planner.logbook.observatory.site.timezone)
-    return datetime_from_mjd(mjd).astimezone(zone)
+    return datetime_from_mjd(mjd).astimezone(_zone(watch))
+
+
+def _zone(watch: Watch) -> ZoneInfo:
+    return ZoneInfo(watch.planner.logbook.observatory.site.timezone)
 
 
 def ahead(watch: Watch) -> tuple[Visit, ...]:
@@ -24,7 +27,7 @@ def ahead(watch: Watch) -> tuple[Visit, ...]:
 
 def hhmm(watch: Watch, mjd: float) -> str:
     """Return a moment as local hours and minutes, to the nearest minute."""
-    return f"{local(watch, mjd + 0.5 / 1440.0):%H:%M}"
+    return clock_time(mjd, _zone(watch))
 
 
 def whole_hours(watch: Watch, room: int, least_min: float = 60.0) -> list[float]:
