@@ -58,6 +58,14 @@ class Account:
     lost_s: dict[str, float] = field(default_factory=dict)
 
 
+def site_of(header: Header) -> Site | None:
+    """Return where a log's night was; None when its header does not tell."""
+    try:
+        return Site.model_validate(header.observatory.get("site"))
+    except ValueError:
+        return None
+
+
 def dark_spans_of(header: Header) -> tuple[Span, ...] | None:
     """Return the dark spans (UTC MJD) of a log's night; None when its header does not tell."""
     filters = header.observatory.get("filter", [])
@@ -68,8 +76,10 @@ def dark_spans_of(header: Header) -> tuple[Span, ...] | None:
         and isinstance(limit := each.get("maximum_sun_altitude_deg"), int | float)
     ]
     limit_deg = max(limits_deg, default=DARK_SUN_DEG)
+    site = site_of(header)
+    if site is None:
+        return None
     try:
-        site = Site.model_validate(header.observatory.get("site"))
         begin_mjd, end_mjd = night_span_mjd(header.night, site.timezone)
     except (ValueError, OverflowError, KeyError):
         return None

@@ -9,8 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from engine.log import Event, Header, NightState, fold, read_log
-from engine.logbook import Site
-from engine.past.account import dark_spans_of
+from engine.past.account import dark_spans_of, site_of
 from engine.positions import moon, sun
 from engine.times import MINUTES_PER_DAY, night_span_mjd
 
@@ -55,7 +54,7 @@ def open_replay(path: Path) -> Replay:
     )
     begin_mjd, end_mjd = _span(reading.header, events)
     mjd = np.arange(begin_mjd, end_mjd, STEP_MIN / MINUTES_PER_DAY)
-    site = _site(reading.header)
+    site = site_of(reading.header)
     unknown = np.full(mjd.size, np.nan)
     return Replay(
         path=path,
@@ -70,17 +69,10 @@ def open_replay(path: Path) -> Replay:
     )
 
 
-def _site(header: Header) -> Site | None:
-    try:
-        return Site.model_validate(header.observatory.get("site"))
-    except ValueError:
-        return None
-
-
 def _span(header: Header, events: tuple[Event, ...]) -> tuple[float, float]:
     """Return from when to when to show a night: its dark, and what was logged that night."""
     moments = [edge for span in dark_spans_of(header) or () for edge in span]
-    site = _site(header)
+    site = site_of(header)
     begin_mjd, end_mjd = -np.inf, np.inf
     if site is not None and moments:
         begin_mjd, end_mjd = night_span_mjd(header.night, site.timezone)

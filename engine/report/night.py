@@ -27,7 +27,7 @@ from engine.log import (
     read_log,
 )
 from engine.logbook import Observatory, Site
-from engine.past.account import Account, account, dark_spans_of
+from engine.past.account import Account, account, dark_spans_of, site_of
 from engine.positions import Almanac, almanac
 from engine.seeing import SeeingMeasurement, SeeingSummary, summary
 
@@ -134,7 +134,7 @@ def night_report(path: Path) -> NightReport:
     reading = read_log(path)
     stands = effective(reading.events)
     state = fold(reading.events)
-    site, observatory = _site(reading.header), _observatory(reading.header)
+    site, observatory = site_of(reading.header), _observatory(reading.header)
     return NightReport(
         path=path,
         night=reading.header.night,
@@ -217,13 +217,6 @@ def _known(values: Iterable[float | None]) -> list[float]:
 def _median(values: Iterable[float | None]) -> float | None:
     known = _known(values)
     return median(known) if known else None
-
-
-def _site(header: Header) -> Site | None:
-    try:
-        return Site.model_validate(header.observatory.get("site"))
-    except ValueError:
-        return None
 
 
 def _observatory(header: Header) -> Observatory | None:

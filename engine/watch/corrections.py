@@ -20,7 +20,7 @@ from engine.log import (
     title,
 )
 from engine.log.keys import to_values
-from engine.log.state import UNDOABLE
+from engine.log.state import CONDITION_KEYS, UNDOABLE
 from engine.log.values import Value
 from engine.watch.record import Ending, credit_measured, exposure_record
 from engine.watch.watch import Watch
@@ -29,16 +29,7 @@ from engine.watch.watch import Watch
 AMENDABLE: dict[str, tuple[str, ...]] = {
     "exposure": ("outcome", "measured_fwhm_arcsec", "filter", "target", "frame", "why"),
     "note": ("text", "target"),
-    "conditions": (
-        "seeing_arcsec",
-        "cloud_percent",
-        "wind_m_per_s",
-        "humidity_percent",
-        "temperature_c",
-        "dew_point_c",
-        "pressure_hpa",
-        "sky_mag_arcsec2",
-    ),
+    "conditions": CONDITION_KEYS,
     "focus": ("position", "fwhm_arcsec", "temperature_c", "filter"),
     "calibration": ("what", "filter", "seconds", "count", "level_adu"),
     "lost_time": ("cause",),
