@@ -13,6 +13,7 @@ import numpy as np
 
 from engine.order.blocks import TICKS_PER_MIN, Blocks, cut
 from engine.order.construct import TEMPERS, URGENT, VALUE_FIRST, Start, Temper, Turn, greedies
+from engine.order.filling import GAP_MIN, fill
 from engine.order.improve import Effort, Search
 from engine.order.left_out import left_out
 from engine.order.order import Order, PlacedExposures, Visit
@@ -21,7 +22,8 @@ from engine.order.prices import price_of_time
 from engine.order.problem import Problem
 from engine.order.reasons import reason_for
 from engine.order.sequence import Timed
-from engine.order.timeline import GAP_MIN, Stay, Timeline
+from engine.order.stays import Stay
+from engine.order.timeline import Timeline
 from engine.times import MINUTES_PER_DAY
 
 # What keeping the order in force is worth against one made afresh: common practice, no source.
@@ -87,8 +89,7 @@ def retime(problem: Problem, in_force: Order) -> Order | None:
         return None
     if not _begins_as_wanted(kept) or _lacks_pinned(kept):
         return None
-    kept.fill()
-    kept.set_out()
+    _complete(kept)
     return _as_order(problem, kept, begun_s)
 
 
@@ -101,12 +102,9 @@ def refine(problem: Problem, in_force: Order, *, seed: int, budget_ms: float = I
     effort = Effort(until_s=begun_s + budget_ms / 1e3, begun_s=begun_s)
     kept = Timeline(problem)
     kept.repeat(in_force)
-    kept.fill()
-    kept.set_out()
+    _complete(kept)
     blocks = cut(problem)
-    start = _start(problem, blocks)
-    ahead = _turn_ahead(problem, blocks, in_force, start)
-    search = Search(blocks, problem.travel, start, ahead, seed)
+    search = _search_from(problem, blocks, in_force, seed)
     better = _exact(problem, blocks, search.run(effort.with_reserve(RESERVE)))
     return _as_order(problem, better, begun_s) if _is_better(better, kept, CLEAR_GAIN) else in_force
 
@@ -165,11 +163,8 @@ def _carried_on(
     """
     kept = Timeline(problem)
     lost_share = kept.repeat(in_force)
-    kept.fill()
-    kept.set_out()
-    start = _start(problem, blocks)
-    ahead = _turn_ahead(problem, blocks, in_force, start)
-    search = Search(blocks, problem.travel, start, ahead, seed)
+    _complete(kept)
+    search = _search_from(problem, blocks, in_force, seed)
     better = _exact(problem, blocks, search.run(effort.with_reserve(RESERVE), 0.0, HYSTERESIS))
     if _is_better(better, kept, CLEAR_GAIN):
         kept = better
@@ -178,6 +173,19 @@ def _carried_on(
     fresh = _afresh(problem, blocks, effort, seed)
     # Who has just decided something expects the order to change.
     return fresh if _is_better(fresh, kept, CLEAR_GAIN if afresh else KEEPING_BONUS) else kept
+
+
+def _search_from(problem: Problem, blocks: Blocks, in_force: Order, seed: int) -> Search:
+    """Return the search that goes on from the order in force."""
+    start = _start(problem, blocks)
+    ahead = _turn_ahead(problem, blocks, in_force, start)
+    return Search(blocks, problem.travel, start, ahead, seed)
+
+
+def _complete(timeline: Timeline) -> None:
+    """Fill what is free between the stays, and let each set out in time."""
+    fill(timeline)
+    timeline.set_out()
 
 
 def _is_better(one: Timeline, other: Timeline, by_share: float) -> bool:
@@ -286,8 +294,7 @@ def _as_timed(problem: Problem, blocks: Blocks, start: Start, turn: Turn) -> Tim
 def _exact(problem: Problem, blocks: Blocks, timed: Timed) -> Timeline:
     timeline = Timeline(problem)
     timeline.place(blocks, timed)
-    timeline.fill()
-    timeline.set_out()
+    _complete(timeline)
     return timeline
 
 

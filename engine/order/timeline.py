@@ -1,14 +1,15 @@
-"""The exact order: blocks timed to the second, then what is left free filled exposure by exposure.
+"""The exact order: blocks timed to the second, in turn.
 
-Minutes are those of the problem's first column. A stay is one visit in the making. Limits hold at
-the grid's minutes before and after every exposure, and at all between.
+Minutes are those of the problem's first column. What is left free is filled by
+`engine.order.filling`. Limits hold at the grid's minutes before and after every exposure, and at
+all between.
 """
 
 from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass, field, replace
+from dataclasses import replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -20,6 +21,7 @@ from engine.order.pins import pin_worths
 from engine.order.problem import Problem
 from engine.order.repeats import SAMPLED_SHARE, Repeats
 from engine.order.sequence import Timed
+from engine.order.stays import Run, Stay, without_break
 from engine.times import MINUTES_PER_DAY
 
 Floats = NDArray[np.float64]
@@ -30,28 +32,6 @@ PUT_OFF_MIN = 1.0
 WAIT_MIN = 2
 # A pinned target that would be late by less than this is made room for.
 SECONDS_LATE_MIN = 5.0
-# Gaps shorter than this are not worth filling; how often in each, and at which shares of it.
-GAP_MIN, FILLINGS = 0.8, 400
-SHARES = (0.0, 0.05, 0.1, 0.2, 0.35, 0.5, 0.65, 0.8)
-
-
-@dataclass(frozen=True, slots=True)
-class Run:
-    """So many exposures of one line, one after the other; the filter is in when it begins."""
-
-    line: int
-    count: int
-    begin_min: float
-
-
-@dataclass(slots=True)
-class Stay:
-    """One stay on one target: when the way there begins, its runs, and when the last is read."""
-
-    target: int
-    begin_min: float
-    end_min: float
-    runs: list[Run] = field(default_factory=list)
 
 
 class Timeline:
@@ -60,7 +40,6 @@ class Timeline:
     def __init__(self, problem: Problem) -> None:
         self.problem = problem
         self.stays: list[Stay] = []
-        self._tables = _LineTables.of(problem)
         self.left = np.array([line.count for line in problem.lines], dtype=np.int64)
 
     def place(self, blocks: Blocks, timed: Timed) -> None:
@@ -180,16 +159,15 @@ class Timeline:
             arrive_min = max(arrive_min, first_min - problem.lines[parts[0][0]].change_min)
         stay = Stay(target, leave_min, arrive_min)
         for line, count in parts:
-            run = self._run(here, leave_min, line, count, stay.end_min)
+            run = self.run(here, leave_min, line, count, stay.end_min)
             if run is not None:
                 stay.runs.append(run)
                 stay.end_min = run.begin_min + run.count * problem.lines[line].each_min
                 here, leave_min = target, stay.end_min
         if stay.runs and self._long_enough(stay) and self._may_begin(stay, parts):
-            self._take(stay)
-            self._join(len(self.stays), stay)
+            self.put(len(self.stays), stay)
 
-    def _run(
+    def run(
         self, here: int, leave_min: float, line: int, count: int, ready_min: float
     ) -> Run | None:
         """Return a run as soon as a mount that leaves a target can begin it; None if none fits."""
@@ -226,7 +204,7 @@ class Timeline:
         )
         return bool(stay.end_min - stay.runs[0].begin_min >= least - 1e-6)
 
-    def _long_enough_before(self, place: int, stay: Stay) -> bool:
+    def long_enough_at(self, place: int, stay: Stay) -> bool:
         """Say whether a stay put in a place is long enough: only the last may be what is left."""
         if any(each.target == stay.target for each in self.stays[place:]):
             return self._is_still_long_enough(stay)
@@ -240,42 +218,18 @@ class Timeline:
         for run in stay.runs:
             self.left[run.line] += run.count
 
-    def _take(self, stay: Stay) -> None:
+    def put(self, place: int, stay: Stay) -> None:
+        """Put a stay in its place; with a neighbour on the same target it is one."""
         for run in stay.runs:
             self.left[run.line] -= run.count
-
-    def _join(self, place: int, stay: Stay) -> None:
-        """Put a stay in its place; with a neighbour on the same target it is one."""
         self.stays.insert(place, stay)
         for at in (place + 1, place):
             if 0 < at < len(self.stays):
                 before, after = self.stays[at - 1], self.stays[at]
-                if _without_break(before, after):
+                if without_break(before, after):
                     before.runs += after.runs
                     before.end_min = after.end_min
                     del self.stays[at]
-
-    # Filling
-
-    def fill(self) -> None:
-        """Fill every gap with the exposures worth most in it, one run at a time."""
-        if not self.problem.lines:
-            return
-        waiting = [(place, 0) for place in range(len(self.stays), -1, -1)]
-        for _ in range(FILLINGS):
-            if not waiting:
-                return
-            place, tried = waiting.pop()
-            stay = self._best_in_gap(place)
-            if stay is None:
-                continue
-            stays = len(self.stays)
-            self._take(stay)
-            self._join(place, stay)
-            grown = len(self.stays) - stays
-            waiting = [(at + grown if at > place else at, n) for at, n in waiting]
-            waiting += [(place + 1, tried + 1)] if grown > 0 else []
-            waiting += [(place, tried + 1)] if tried < 12 else []
 
     def set_out(self) -> None:
         """Let every stay begin no sooner than the way to its first exposure asks."""
@@ -287,100 +241,6 @@ class Timeline:
             change_min = problem.lines[first.line].change_min
             stay.begin_min = max(leave_min, first.begin_min - change_min - way_min)
             here, leave_min = stay.target, stay.end_min
-
-    def _best_in_gap(self, place: int) -> Stay | None:
-        problem = self.problem
-        before = self.stays[place - 1] if place else None
-        after = self.stays[place] if place < len(self.stays) else None
-        begin_min = before.end_min if before else problem.start_min
-        end_min = after.runs[0].begin_min if after else float(problem.minutes - 1)
-        if end_min - begin_min < GAP_MIN:
-            return None
-        here = before.target if before else problem.pointing
-        left = np.flatnonzero(
-            (self.left > 0) & ~self._tables.repeated & self._usable(begin_min, end_min)
-        )
-        if not left.size:
-            return None
-        tables = self._tables.only(left)
-        at = np.array(int(begin_min))
-        to = problem.travel.between(np.array(here), tables.target, at).astype(float)
-        onward: Floats = np.zeros(len(to))
-        if after is not None:
-            change = problem.lines[after.runs[0].line].change_min
-            way = problem.travel.between(tables.target, np.array(after.target), at)
-            onward = way.astype(float) + change
-        opens_min = max(begin_min, float(self._opens(left, begin_min)) - to.max())
-        moments = opens_min + np.array(SHARES)[None] * (end_min - opens_min)
-        start: Floats = moments + to[:, None] + tables.change[:, None]
-        minute = np.minimum(start.astype(np.int64), problem.minutes - 1)
-        rows = left[:, None]
-        limit: Floats = np.minimum(
-            problem.run_end[rows, minute] + problem.readout_min, end_min - onward[:, None]
-        )
-        fit: Floats = np.floor((limit - start) / tables.each[:, None])
-        fit = np.asarray(np.clip(fit, 0, self.left[left][:, None]), dtype=float)
-        middle = np.minimum(
-            (start + 0.5 * fit * tables.each[:, None]).astype(np.int64), problem.minutes - 1
-        )
-        worth: Floats = np.where(
-            problem.run_end[rows, minute] >= 0, problem.worth[rows, middle], 0.0
-        )
-        worth = worth * fit * tables.seconds[:, None]
-        tries = _Tries(left, worth, start, fit)
-        return self._first_lawful(place, tries, end_min)
-
-    def _usable(self, begin_min: float, end_min: float) -> NDArray[np.bool_]:
-        """Return which lines (L,) may be exposed at some minute of a gap."""
-        begin, end = int(begin_min), int(end_min) + 1
-        return np.asarray((self.problem.run_end[:, begin:end] >= 0).any(axis=1))
-
-    def _opens(self, lines: NDArray[np.int64], begin_min: float) -> int:
-        """Return the first minute of a gap in which one of some lines may be exposed."""
-        usable = (self.problem.run_end[lines, int(begin_min) :] >= 0).any(axis=0)
-        return int(begin_min) + int(np.argmax(usable))
-
-    def _first_lawful(self, place: int, tries: _Tries, end_min: float) -> Stay | None:
-        """Return the best of the tried runs that holds to the second; None when none does."""
-        for flat in np.argsort(-tries.worth, axis=None)[:12]:
-            row, moment = divmod(int(flat), tries.worth.shape[1])
-            if tries.worth[row, moment] <= 0.0:
-                return None
-            line, count = int(tries.line[row]), int(tries.fit[row, moment])
-            stay = self._stay_in_gap(place, line, count, float(tries.start_min[row, moment]))
-            if stay is not None and stay.end_min <= end_min:
-                return stay
-        return None
-
-    def _stay_in_gap(self, place: int, line: int, count: int, start_min: float) -> Stay | None:
-        problem, each = self.problem, self.problem.lines[line]
-        before = self.stays[place - 1] if place else None
-        after = self.stays[place] if place < len(self.stays) else None
-        leave_min = before.end_min if before else problem.start_min
-        here = before.target if before else problem.pointing
-        run = self._run(here, leave_min, line, count, start_min - each.change_min)
-        while run is not None and run.count > 0:
-            end_min = run.begin_min + run.count * each.each_min
-            stay = Stay(each.target, leave_min, end_min, [run])
-            if after is None or self._reaches(end_min, each.target, after):
-                lawful = self._is_one_with(place, stay) or self._long_enough_before(place, stay)
-                return stay if lawful else None
-            run = Run(run.line, run.count - 1, run.begin_min)
-        return None
-
-    def _is_one_with(self, place: int, stay: Stay) -> bool:
-        """Say whether a stay put in a place goes on with a neighbour's without a break."""
-        before = self.stays[place - 1] if place else None
-        after = self.stays[place] if place < len(self.stays) else None
-        return (before is not None and _without_break(before, stay)) or (
-            after is not None and _without_break(stay, after)
-        )
-
-    def _reaches(self, end_min: float, target: int, after: Stay) -> bool:
-        first = after.runs[0]
-        way_min = self.problem.travel.exact_min(target, end_min, after.target, first.begin_min)
-        change_min = self.problem.lines[first.line].change_min
-        return end_min + way_min + change_min <= first.begin_min + 1e-9
 
     # What it is worth
 
@@ -432,51 +292,3 @@ class Timeline:
             if bonus > 0.0 and not self.left[own].any():
                 total += float(bonus)
         return total
-
-
-def _without_break(before: Stay, after: Stay) -> bool:
-    """Say whether two stays are one: a meridian flip or a wait between makes them two."""
-    gap_min = after.runs[0].begin_min - before.end_min
-    return before.target == after.target and gap_min < 1.0
-
-
-@dataclass(frozen=True, slots=True)
-class _Tries:
-    """Runs tried in a gap: lines (R,), and worth, begin and exposures (R, M) of each."""
-
-    line: NDArray[np.int64]
-    worth: Floats
-    start_min: Floats
-    fit: Floats
-
-
-@dataclass(frozen=True, slots=True)
-class _LineTables:
-    """The lines of a problem as columns."""
-
-    target: NDArray[np.int64]
-    change: Floats
-    each: Floats
-    seconds: Floats
-    repeated: NDArray[np.bool_]
-
-    @classmethod
-    def of(cls, problem: Problem) -> _LineTables:
-        lines = problem.lines
-        return cls(
-            np.array([line.target for line in lines], dtype=np.int64),
-            np.array([line.change_min for line in lines]),
-            np.array([line.each_min for line in lines]),
-            np.array([line.seconds for line in lines]),
-            np.array([line.target in problem.repeats for line in lines], dtype=bool),
-        )
-
-    def only(self, rows: NDArray[np.int64]) -> _LineTables:
-        """Return some of the lines."""
-        return _LineTables(
-            self.target[rows],
-            self.change[rows],
-            self.each[rows],
-            self.seconds[rows],
-            self.repeated[rows],
-        )

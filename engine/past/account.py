@@ -62,7 +62,7 @@ def site_of(header: Header) -> Site | None:
     """Return where a log's night was; None when its header does not tell."""
     try:
         return Site.model_validate(header.observatory.get("site"))
-    except ValueError:
+    except (ValueError, OverflowError, KeyError):
         return None
 
 

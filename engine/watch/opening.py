@@ -47,13 +47,14 @@ def open_watch(
     header = Header.of(logbook.observatory, night, observers, f"warmroom {version('warmroom')}")
     log = NightLog.open(folder, header, clock.now_mjd())
     try:
-        added = fold(log.events).added
-        planner = Planner(logbook, night, done_for(logbook, night, added), added=added)
+        state = fold(log.events)
+        done = done_for(logbook, night, state.added)
+        planner = Planner(logbook, night, done, added=state.added)
     except BaseException:
         log.close()
         raise
     worker = LogWorker(log, clock, on_written, on_trouble)
-    return Opened(Watch(planner, worker, clock, log.events), log.path, log.findings)
+    return Opened(Watch(planner, worker, clock, state), log.path, log.findings)
 
 
 def done_for(logbook: Logbook, night: date, added: tuple[TargetAdded, ...]) -> tuple[Taken, ...]:

@@ -23,7 +23,6 @@ from engine.log import (
     OrderProposed,
     Override,
     RunStop,
-    fold,
 )
 from engine.logbook import Logbook
 from engine.night import Plans, TargetNow, targets_at
@@ -78,7 +77,7 @@ class Watch:
     is_read_only = False
 
     def __init__(
-        self, planner: Planner, pen: Pen, clock: Clock, events: tuple[Event, ...] = ()
+        self, planner: Planner, pen: Pen, clock: Clock, state: NightState | None = None
     ) -> None:
         self.planner = planner
         self.clock = clock
@@ -86,7 +85,7 @@ class Watch:
         # Grows with every change of what may be shown, so that a view can tell when to look again.
         self.version = 0
         self._pen = pen
-        self._state = fold(events)
+        self._state = state or NightState()
         self._doubted_n = self._state.exposing.n if self._state.exposing else 0
         # Since when somebody has seen what the camera does: nothing before it is counted unasked.
         self._watched_mjd = clock.now_mjd() - ROUNDING_DAYS

@@ -11,6 +11,7 @@ import pytest
 from engine.order import Problem, propose, upper_limit
 from engine.order.blocks import cut
 from engine.order.construct import TEMPERS
+from engine.order.filling import fill
 from engine.order.propose import plain_order
 from engine.order.sequence import Timed
 from engine.order.timeline import Timeline
@@ -31,7 +32,7 @@ def best_of_all_turns(problem: Problem) -> float:
             for ticks in (np.zeros(size, dtype=int), best_ticks):
                 timeline = Timeline(problem)
                 timeline.place(blocks, Timed(turn, tuple(int(t) for t in ticks), 0.0))
-                timeline.fill()
+                fill(timeline)
                 best = max(best, timeline.value())
     return best
 
