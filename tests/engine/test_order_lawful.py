@@ -8,7 +8,7 @@ import pytest
 from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 
-from engine.order import Rules, Visit, build_problem, propose, upper_limit
+from engine.order import Rules, Visit, propose, upper_limit
 from tests.bench.order.nights import RandomNight, random_night
 from tests.engine.lawful import faults
 
@@ -40,14 +40,7 @@ def test_the_rules_of_the_observer_hold(night: RandomNight) -> None:
     until = free.visits[1].end_mjd + 0.05
     rules = Rules(frozenset({dropped}), {put_off: until}, frozenset({filter_}))
     assert faults(free, night.night, night.outlook(), night.plans, rules) != []
-    problem = build_problem(
-        night.night,
-        night.outlook(),
-        night.plans,
-        rules,
-        from_mjd=float(night.night.mjd[0]),
-        pointing=None,
-    )
+    problem = night.problem(rules=rules)
     order = propose(problem, steps=30)
     assert order.visits
     assert faults(order, night.night, night.outlook(), night.plans, rules) == []

@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
-from engine.order import Order, Rules, build_problem, propose
+from engine.order import Order, Rules, propose
 from engine.times import MINUTES_PER_DAY
 from tests.bench.order.nights import RandomNight, random_night
 from tests.engine.lawful import faults
@@ -15,14 +15,7 @@ SECOND_DAYS = 1.0 / 86400.0
 
 def ordered(night: RandomNight, rules: Rules, before: Order | None = None) -> Order:
     """Return the order of a night under some rules."""
-    problem = build_problem(
-        night.night,
-        night.outlook(),
-        night.plans,
-        rules,
-        from_mjd=float(night.night.mjd[0]),
-        pointing=None,
-    )
+    problem = night.problem(rules=rules)
     return propose(problem, before, steps=40)
 
 

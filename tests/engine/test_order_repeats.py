@@ -9,7 +9,7 @@ import pytest
 
 from engine.logbook import Target
 from engine.night import plans, series_of
-from engine.order import Order, Problem, Rules, build_problem, propose, retime
+from engine.order import Order, Rules, build_problem, propose, retime
 from engine.times import MINUTES_PER_DAY
 from tests.bench.order.nights import RandomNight, random_night, with_series
 from tests.engine.lawful import faults
@@ -24,18 +24,6 @@ class Taken(Took):
     airmass_start: float | None = None
 
 
-def problem_of(night: RandomNight) -> Problem:
-    """Return the whole night as a problem."""
-    return build_problem(
-        night.night,
-        night.outlook(),
-        night.plans,
-        Rules(),
-        from_mjd=float(night.night.mjd[0]),
-        pointing=None,
-    )
-
-
 def visits_of(order: Order, night: RandomNight) -> int:
     """Return how many visits of series an order has."""
     series = {target.name for target in night.night.targets if target.visits > 1}
@@ -46,7 +34,7 @@ def visits_of(order: Order, night: RandomNight) -> int:
 def test_visits_keep_their_gaps(seed: int) -> None:
     """Cold, carried on, and timed anew, by the checker that shares no code with the search."""
     night = with_series(seed, (8, 15, 40)[seed % 3], (0.5, 1.0, 2.0, 4.0)[seed % 4])
-    problem = problem_of(night)
+    problem = night.problem()
     order = propose(problem, steps=40)
     assert faults(order, night.night, night.outlook(), night.plans, Rules()) == []
     again = propose(problem, order, steps=20)
@@ -61,7 +49,7 @@ def test_series_are_not_starved() -> None:
     placed = wanted = 0
     for seed in range(12):
         night = with_series(seed, 12, 0.5)
-        placed += visits_of(propose(problem_of(night), steps=40), night)
+        placed += visits_of(propose(night.problem(), steps=40), night)
         wanted += sum(target.visits for target in night.night.targets if target.visits > 1)
     assert placed > 0.6 * wanted
 
@@ -69,7 +57,7 @@ def test_series_are_not_starved() -> None:
 def test_a_visit_that_was_made_binds_the_next() -> None:
     """From its begin on, not sooner than the least gap and not later than the greatest."""
     night = with_series(3, 15, 1.0, share=1.0)
-    order = propose(problem_of(night), steps=40)
+    order = propose(night.problem(), steps=40)
     first = next(
         visit
         for visit in order.visits
@@ -157,7 +145,7 @@ def test_standards_are_sampled_over_the_airmass() -> None:
         edges = np.linspace(float(reached.min()), float(reached.max()), 5)
         parts = []
         for role in ("science", "standard"):
-            order = propose(problem_of(with_visits(night, index, role)), steps=60)
+            order = propose(with_visits(night, index, role).problem(), steps=60)
             name = night.night.targets[index].name
             masses = np.array([v.airmass_start for v in order.visits if v.target == name])
             parts.append(len(set(np.searchsorted(edges, masses, side="right"))))

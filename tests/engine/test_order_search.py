@@ -8,7 +8,7 @@ from itertools import product
 import numpy as np
 import pytest
 
-from engine.order import NoSolver, Order, Rules, build_problem, propose, upper_limit
+from engine.order import NoSolver, Order, Rules, propose, upper_limit
 from engine.order.blocks import NEVER, cut
 from engine.order.construct import URGENT, VALUE_FIRST, Start, Turn
 from engine.order.improve import Effort, Search
@@ -93,14 +93,7 @@ def test_what_the_observer_wants_first_comes_first(night: RandomNight) -> None:
     """Any target that can be observed may be asked for next."""
     free = propose(night.problem(), steps=30)
     for wanted in {visit.target for visit in free.visits}:
-        problem = build_problem(
-            night.night,
-            night.outlook(),
-            night.plans,
-            Rules(first=wanted),
-            from_mjd=float(night.night.mjd[0]),
-            pointing=None,
-        )
+        problem = night.problem(rules=Rules(first=wanted))
         taken = propose(problem, steps=10)
         assert wanted in {visit.target for visit in taken.visits}
 
@@ -119,14 +112,7 @@ def test_every_target_is_visited_or_left_out_with_a_reason(night: RandomNight) -
 def test_a_night_without_anything_to_do_has_an_empty_order(night: RandomNight) -> None:
     """All dropped: no visit, no value, a limit of nothing."""
     rules = Rules(dropped=frozenset(target.name for target in night.night.targets))
-    problem = build_problem(
-        night.night,
-        night.outlook(),
-        night.plans,
-        rules,
-        from_mjd=float(night.night.mjd[0]),
-        pointing=None,
-    )
+    problem = night.problem(rules=rules)
     order: Order = propose(problem, steps=5)
     assert (order.visits, order.value, upper_limit(problem)) == ((), 0.0, 0.0)
 

@@ -11,10 +11,9 @@ import pytest
 from engine.log import Amendment, Note, fold, read_log
 from engine.rehearsal import NIGHT
 from engine.watch import acts
-from tests.tui.trial import Trial, a_logbook, play
+from tests.tui.trial import SIZES, Trial, a_logbook, play
 from tui.console.views.records import Records
 
-SIZES = [(80, 24), (160, 50)]
 HOSTILE = "\x1b]0;owned\x07[/][@click=app.quit]x[/] \u202eevil\u200b"
 
 
@@ -26,13 +25,7 @@ def folder(tmp_path: Path) -> Path:
 
 async def a_run(trial: Trial) -> None:
     """Take the first target's run to its end, and open the log."""
-    watch = trial.watch
-    acts.point_at(watch, "Sharp One")
-    acts.arrive(watch)
-    acts.start_run(watch, acts.lines_now(watch))
-    for _ in range(30):
-        trial.clock.advance_s(10.0)
-        watch.tick()
+    trial.take_first_run()
     await trial.press("5")
 
 

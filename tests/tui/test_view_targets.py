@@ -8,11 +8,9 @@ import pytest
 
 from engine.log import Note
 from engine.logbook import load_logbook
-from engine.watch import acts
-from tests.tui.trial import TARGETS, Trial, a_logbook, play
+from tests.tui.trial import SIZES, TARGETS, Trial, a_logbook, play
 from tui.console.views.targets_pages import Done, declination_text, right_ascension_text
 
-SIZES = [(80, 24), (160, 50)]
 TWO = (
     TARGETS
     + """
@@ -49,12 +47,7 @@ def test_progress_is_told_by_programme_in_count_and_depth(
 
     async def story(trial: Trial) -> None:
         watch = trial.watch
-        acts.point_at(watch, "Sharp One")
-        acts.arrive(watch)
-        acts.start_run(watch, acts.lines_now(watch))
-        for _ in range(30):
-            trial.clock.advance_s(10.0)
-            watch.tick()
+        trial.take_first_run()
         await trial.press("6")
         rows = trial.text("view").splitlines()
         (heading,) = (row for row in rows if row.startswith(" Trial"))

@@ -14,7 +14,7 @@ from engine.logbook import load_logbook, sample_logbook
 from engine.positions import almanac
 from engine.rehearsal import NIGHT
 from engine.times import MINUTES_PER_DAY
-from engine.watch import Watch, open_watch
+from engine.watch import Watch, acts, open_watch
 from tui.console.app import Console
 
 # High in the evening of the rehearsal's night and off the meridian; the second has a limit that a
@@ -48,6 +48,9 @@ dec = "-49:12:54"
 priority = 1
 exposures = [ { filter = "R", seconds = 900, count = 3 } ]
 """
+
+# The two sizes every view is told at.
+SIZES = [(80, 24), (160, 50)]
 
 Story = Callable[["Trial"], Awaitable[None]]
 
@@ -115,6 +118,15 @@ class Trial:
                 return
             await asyncio.sleep(0.01)
         raise AssertionError("the console never settled")
+
+    def take_first_run(self) -> None:
+        """Take the first target's run to its end, as its keys would."""
+        acts.point_at(self.watch, "Sharp One")
+        acts.arrive(self.watch)
+        acts.start_run(self.watch, acts.lines_now(self.watch))
+        for _ in range(30):
+            self.clock.advance_s(10.0)
+            self.watch.tick()
 
     def text(self, name: str) -> str:
         """Return what a sheet shows, as text."""

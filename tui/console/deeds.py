@@ -9,12 +9,12 @@ from typing import TYPE_CHECKING
 from engine.errors import NotNow
 from engine.log import LOST_CAUSES, Conditions
 from engine.logbook import typed_target
-from engine.logbook.text import one_line
 from engine.watch import Stage, Watch, acts
+from tui.console.asking import ask_and_do, text_of
 from tui.console.panels.local import ahead
 from tui.console.read import moment_in
 from tui.reading import number_between
-from tui.widgets import LiveList, Question
+from tui.widgets import LiveList
 
 if TYPE_CHECKING:
     from tui.console.app import Console
@@ -150,7 +150,7 @@ class Deeds:
 
     def reject(self) -> None:
         """Reject the last exposure that counts, with a reason."""
-        self._ask("why is it rejected", _text(200), lambda why: acts.reject(self._watch, why))
+        self._ask("why is it rejected", text_of(200), lambda why: acts.reject(self._watch, why))
 
     def repeat(self) -> None:
         """Repeat the last exposure."""
@@ -230,7 +230,7 @@ class Deeds:
 
     def note(self) -> None:
         """Type a note."""
-        self._ask("note", _text(2000, least=1), lambda text: acts.note(self._watch, text))
+        self._ask("note", text_of(2000, least=1), lambda text: acts.note(self._watch, text))
 
     def undo(self) -> None:
         """Withdraw the last entry."""
@@ -243,7 +243,7 @@ class Deeds:
         def show(text: str) -> None:
             self._console.find_text = text
 
-        self._ask("show targets with", _text(80), show)
+        self._ask("show targets with", text_of(80), show)
 
     def _ask(
         self,
@@ -252,24 +252,4 @@ class Deeds:
         then: Callable[..., object],
         choices: tuple[tuple[str, str], ...] = (),
     ) -> None:
-        """Ask, then act."""
-
-        def act(value: object) -> None:
-            try:
-                then(value)
-            finally:
-                self._console.after_deed()
-
-        self._console.ask(Question(label, read, act, choices))
-
-
-def _text(length: int, least: int = 0) -> Callable[[str], str]:
-    """Return a reader of one line of text."""
-
-    def read(text: str) -> str:
-        cleaned = one_line(text, length)
-        if len(cleaned) < least:
-            raise ValueError("expected some text; escape leaves")
-        return cleaned
-
-    return read
+        ask_and_do(self._console, label, read, then, choices)

@@ -54,14 +54,19 @@ class RandomNight:
         usual = self.night.observatory.seeing.typical_arcsec
         return self.outlooks.given(usual * np.exp(wander) * seeing_factor)
 
-    def problem(self, seeing_factor: float = 1.0, from_mjd: float | None = None) -> Problem:
+    def problem(
+        self,
+        seeing_factor: float = 1.0,
+        from_mjd: float | None = None,
+        rules: Rules | None = None,
+    ) -> Problem:
         """Return the whole night as a problem, or what is left of it from a moment on."""
         start = self.night.mjd[0] if from_mjd is None else from_mjd
         return build_problem(
             self.night,
             self.outlook(seeing_factor),
             self.plans,
-            Rules(),
+            rules or Rules(),
             from_mjd=float(start),
             pointing=None,
         )

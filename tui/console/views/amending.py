@@ -10,6 +10,7 @@ from engine.log.values import Value
 from engine.logbook.text import nearest, one_line, shown
 from engine.watch import Watch
 from engine.watch.corrections import amendable
+from tui.console.asking import text_of
 from tui.reading import number_between
 
 Reader = Callable[[str], Value]
@@ -88,7 +89,7 @@ def reader_for(watch: Watch, event: Event, key: str) -> Reader:
             return _one_of(tuple(e.name for e in watch.planner.logbook.observatory.filters))
         case "target" if event.kind != "note":
             return _one_of(tuple(each.name for each in watch.planner.night.targets))
-    return _text(1 if KEYS[event.kind][key].is_required else 0)
+    return text_of(LONGEST, least=1 if KEYS[event.kind][key].is_required else 0)
 
 
 def _one_of(known: tuple[str, ...]) -> Reader:
@@ -98,16 +99,6 @@ def _one_of(known: tuple[str, ...]) -> Reader:
             return text
         near = nearest(text, known) or f", expected one of {', '.join(known[:8])}"
         raise ValueError(f"{shown(text)} is none{near}")
-
-    return read
-
-
-def _text(least: int) -> Reader:
-    def read(text: str) -> str:
-        cleaned = one_line(text, LONGEST)
-        if len(cleaned) < least:
-            raise ValueError("expected some text; escape leaves")
-        return cleaned
 
     return read
 

@@ -2,9 +2,11 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING
+from collections.abc import Callable
+from typing import TYPE_CHECKING, Any
 
 from engine.watch import Watch
+from tui.console.asking import ask_and_do
 from tui.paint.spans import Line
 
 if TYPE_CHECKING:
@@ -37,6 +39,17 @@ class View:
     def take_key(self, key: str, character: str | None) -> bool:
         """Take a key that is in no table; return whether it was for this view."""
         return False
+
+    def ask(
+        self,
+        label: str,
+        read: Callable[[str], Any],
+        then: Callable[[Any], object],
+        choices: tuple[tuple[str, str], ...] = (),
+        text: str = "",
+    ) -> None:
+        """Ask in the entry line, act on the answer, and show what that did."""
+        ask_and_do(self.console, label, read, then, choices, text)
 
     def move(self, by: int, unit: str) -> bool:
         """Move this view's own cursor as `LiveList.move`; False to move the console's."""

@@ -2,9 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
 from dataclasses import dataclass
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING
 
 from engine.errors import NotNow
 from engine.log import Amendment, Exposure, effective, title
@@ -306,7 +305,7 @@ class Records(View):
         event = self._entries[n].stands
         if isinstance(event, Exposure) and event.outcome == "good":
             question = f"why is {event.filter} on {one_line(event.target, 30)}, {n}, rejected"
-            self._ask(question, one_line, lambda why: reject_or_restore(self.watch, n, why))
+            self.ask(question, one_line, lambda why: reject_or_restore(self.watch, n, why))
         else:
             reject_or_restore(self.watch, n)
 
@@ -321,7 +320,7 @@ class Records(View):
         if len(choices) == 1:
             self._ask_value(n, choices[0][0])
             return
-        self._ask(f"amend {n}", str, lambda letter: self._ask_value(n, letter), choices)
+        self.ask(f"amend {n}", str, lambda letter: self._ask_value(n, letter), choices)
 
     def _ask_value(self, n: int, letter: str) -> None:
         event = self._entries[n].stands
@@ -329,13 +328,11 @@ class Records(View):
             return
         key = key_of(event, letter)
         before = typed_as(getattr(event, key))
-        self.console.ask(
-            Question(
-                f"{WORDS[key][1]} of {n}",
-                reader_for(self.watch, event, key),
-                lambda value: self._amend(n, key, value),
-                text=before,
-            )
+        self.ask(
+            f"{WORDS[key][1]} of {n}",
+            reader_for(self.watch, event, key),
+            lambda value: self._amend(n, key, value),
+            text=before,
         )
 
     def _amend(self, n: int, key: str, value: Value) -> None:
@@ -343,26 +340,8 @@ class Records(View):
         if event is not None and getattr(event, key) == value:
             self.console.tell("nothing changed", "dim")
             return
-        try:
-            amend(self.watch, n, key, value)
-            self.console.tell(f"entry {n} amended; u takes it back", "now")
-        finally:
-            self.console.after_deed()
-
-    def _ask(
-        self,
-        label: str,
-        read: Callable[[str], Any],
-        then: Callable[[Any], object],
-        choices: tuple[tuple[str, str], ...] = (),
-    ) -> None:
-        def act(value: Any) -> None:
-            try:
-                then(value)
-            finally:
-                self.console.after_deed()
-
-        self.console.ask(Question(label, read, act, choices))
+        amend(self.watch, n, key, value)
+        self.console.tell(f"entry {n} amended; u takes it back", "now")
 
 
 def beside(left: list[Line], right: list[Line], width: int, height: int) -> list[Line]:

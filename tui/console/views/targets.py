@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from pathlib import Path
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING
 
 from engine.errors import LogbookFaults, NotNow
 from engine.log import last_undoable
@@ -25,7 +25,6 @@ from tui.console.views.targets_pages import (
     value_as_typed,
 )
 from tui.paint.spans import BLANK, Line, Span, line, wrapped
-from tui.widgets.entry import Question
 
 if TYPE_CHECKING:
     from tui.console.app import Console
@@ -216,19 +215,19 @@ class Targets(View):
                 raise ValueError(f"a target is called {found} already")
             return found
 
-        self._ask("new target: its name", name, lambda value: self._add_place({"name": value}))
+        self.ask("new target: its name", name, lambda value: self._add_place({"name": value}))
 
     def _add_place(self, values: dict[str, object]) -> None:
         def then(place: tuple[object, object]) -> None:
             self._add_exposures({**values, "ra": place[0], "dec": place[1]})
 
         label = f"where is {one_line(str(values['name']), 20)} (RA Dec)"
-        self._ask(label, typed_place, then)
+        self.ask(label, typed_place, then)
 
     def _add_exposures(self, values: dict[str, object]) -> None:
         logbook = self.watch.planner.logbook
         wheel = " ".join(each.name for each in logbook.observatory.filters)
-        self._ask(
+        self.ask(
             f"exposures, such as V:60x5 ({wheel})",
             lambda text: typed_field("exposures", text, logbook),
             lambda plan: self._add_programme({**values, "exposures": plan}),
@@ -243,7 +242,7 @@ class Targets(View):
             name = str(full["name"])
             self._carry_out(lambda: book.add(self.watch, full), f"{name} is in the logbook")
 
-        self._ask(
+        self.ask(
             "programme; nothing for none",
             lambda text: typed_field("programme", text, logbook),
             then,
@@ -266,7 +265,7 @@ class Targets(View):
                 " then y"
             )
         name = target.name
-        self._ask(f"edit which key of {name}", _key, lambda key: self._edit_key(name, key))
+        self.ask(f"edit which key of {name}", _key, lambda key: self._edit_key(name, key))
 
     def _edit_key(self, name: str, key: str) -> None:
         target = next((e for e in self.watch.planner.night.targets if e.name == name), None)
@@ -281,7 +280,7 @@ class Targets(View):
                 lambda: book.change(self.watch, name, key, value, said), f"{name} is edited"
             )
 
-        self._ask(
+        self.ask(
             f"{key} of {name}", lambda text: typed_field(key, text, logbook), then, text=before
         )
 
@@ -293,7 +292,7 @@ class Targets(View):
         def take_in(path: Path) -> None:
             self._carry_out(lambda: book.take_in(self.watch, path), f"{path.name} came in")
 
-        self._ask("import which file of targets (.csv .ecsv .vot .toml)", _path, take_in)
+        self.ask("import which file of targets (.csv .ecsv .vot .toml)", _path, take_in)
 
     def _read_anew(self) -> None:
         self._carry_out(lambda: book.reload(self.watch), "the logbook's files are read anew")
@@ -311,17 +310,6 @@ class Targets(View):
             self._done = done
             said = f"{said}; u takes it back"
         self.console.tell(said, "good")
-
-    def _ask(
-        self, label: str, read: Callable[[str], Any], then: Callable[[Any], None], text: str = ""
-    ) -> None:
-        def act(value: Any) -> None:
-            try:
-                then(value)
-            finally:
-                self.console.after_deed()
-
-        self.console.ask(Question(label, read, act, text=text))
 
 
 def _key(text: str) -> str:
